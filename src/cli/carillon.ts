@@ -1,0 +1,3 @@
+import { main } from "./main.js";
+
+process.exitCode = await main(process.argv.slice(2));

@@ -1,0 +1,44 @@
+import type { Plan } from "../engine/plan.js";
+import { arrayShape } from "../engine/plan.js";
+import type { Scan } from "../engine/scan.js";
+import { wrap } from "./terminal.js";
+
+/** The plan as text: each stage, its parameters, shape and bytes in and out, physics, and why it is there. */
+export function explain(scan: Scan, plan: Plan, source: string): string {
+  const lines = [
+    `${scan.file}: recipe ${source}, ${plan.stages.length} stages, ${plan.groups} group(s) of ${plan.framesPerGroup} image(s)`,
+    `order of values: flag, environment (CARILLON_...), recipe, default`,
+  ];
+  for (const { stage, params, input, output, physics, bytesIn, bytesOut, workBytes, reason } of plan.stages) {
+    lines.push("", stage.id, wrap(`  why: ${reason}`, 80, "       "));
+    const entries = Object.entries(params as object);
+    if (entries.length)
+      lines.push(wrap(`  parameters: ${entries.map(([k, v]) => `${k}=${text(v)}`).join(", ")}`, 80, "    "));
+    lines.push(
+      `  in:  [${input.axes.join(", ")}] = ${input.shape.join(" x ")} ${input.kind}, ${size(bytesIn)}`,
+    );
+    lines.push(
+      `  out: [${output.axes.join(", ")}] = ${output.shape.join(" x ")} ${output.kind}, ${size(bytesOut)}`,
+    );
+    if (workBytes) lines.push(`  work memory: ${size(workBytes)}`);
+    for (const [name, value] of Object.entries(physics)) lines.push(`  ${name}: ${value}`);
+  }
+  const { axes, shape } = arrayShape(scan.facts, plan.result);
+  lines.push("", `image.npy: [${axes.join(", ")}] = ${shape.join(" x ")} float32`);
+  return lines.join("\n");
+}
+
+function text(value: unknown): string {
+  return typeof value === "object" ? JSON.stringify(value) : String(value);
+}
+
+function size(bytes: number): string {
+  const units = ["B", "kB", "MB", "GB"];
+  let value = bytes;
+  let unit = 0;
+  while (value >= 1000 && unit < units.length - 1) {
+    value /= 1000;
+    unit++;
+  }
+  return `${Number(value.toPrecision(3))} ${units[unit]}`;
+}

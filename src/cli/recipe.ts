@@ -1,0 +1,45 @@
+import { type Command, READ_OPTIONS } from "./command.js";
+
+/** `carillon recipe`: the recipe that `recon` would run, ready to edit. */
+export const recipe: Command = {
+  name: "recipe",
+  usage: "[raw]",
+  summary: "print the default recipe of a raw file, ready to edit",
+  positionals: { raw: "raw-data file in the ISMRMRD standard (HDF5)" },
+  options: {
+    set: {
+      type: "string",
+      array: true,
+      requiresArg: true,
+      nargs: 1,
+      describe: "stage.parameter=value, or stage=off; repeatable",
+    },
+    schema: { type: "boolean", default: false, describe: "print the JSON Schema of recipes instead" },
+    ...READ_OPTIONS,
+  },
+  examples: [
+    ["recipe scan.h5 > my.yaml", "then: carillon recon scan.h5 --recipe my.yaml --out result"],
+    ["recipe --schema", "JSON Schema of recipes"],
+  ],
+  async run(flags, terminal, signal) {
+    if (flags.schema) {
+      const { recipeSchema } = await import("../recipe/schema.js");
+      process.stdout.write(`${JSON.stringify(recipeSchema(), null, 1)}\n`);
+      return;
+    }
+    const { UsageError } = await import("../errors.js");
+    if (flags.raw === undefined)
+      throw new UsageError(
+        { field: "raw" },
+        "no raw file given",
+        "carillon recipe RAW, or carillon recipe --schema",
+      );
+    const { planFile } = await import("./plan-file.js");
+    const { formatRecipe } = await import("../recipe/recipe.js");
+    const { plan, recipe, scan } = await planFile(flags, terminal, signal);
+    terminal.discrepancies(scan.discrepancies);
+    const reasons = new Map(plan.stages.map(({ stage, reason }) => [stage.id, reason]));
+    terminal.result(formatRecipe(recipe, reasons).trimEnd());
+    terminal.document(recipe);
+  },
+};

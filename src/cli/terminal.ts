@@ -1,0 +1,128 @@
+import { CarillonError } from "../errors.js";
+import type { Discrepancy } from "../physics/scan.js";
+
+/** Exit codes of every command (DEVELOPERS.md). */
+export const EXIT = {
+  done: 0,
+  fault: 1,
+  usage: 2,
+  input: 3,
+  partly: 4,
+  output: 5,
+  interrupted: 130,
+} as const;
+
+export interface TerminalOptions {
+  readonly quiet: boolean;
+  readonly json: boolean;
+  readonly color: boolean;
+  readonly debug: boolean;
+}
+
+/** Everything a command says: results to stdout, the rest to stderr; escape bytes and carriage returns only on a terminal. */
+export class Terminal {
+  #bar = false;
+  #lastPercent = 0;
+
+  constructor(readonly options: TerminalOptions) {}
+
+  /** A result, for people; `--json` prints the document instead. */
+  result(text: string): void {
+    if (!this.options.json) process.stdout.write(`${text}\n`);
+  }
+
+  /** The one document of `--json`. */
+  document(value: unknown): void {
+    if (this.options.json) process.stdout.write(`${JSON.stringify(value, null, 1)}\n`);
+  }
+
+  /** A message that is no result. */
+  message(text: string): void {
+    if (this.options.quiet) return;
+    this.#clearBar();
+    process.stderr.write(`${text}\n`);
+  }
+
+  discrepancies(found: readonly Discrepancy[]): void {
+    for (const { severity, message } of found) {
+      const mark = severity === "problem" ? this.#paint("33", "discrepancy") : "note";
+      this.message(wrap(`${mark}: ${message}`, 80, "  "));
+    }
+  }
+
+  /** A bar on a terminal, a line at every quarter elsewhere. */
+  progress(label: string, done: number, total: number): void {
+    if (this.options.quiet) return;
+    const percent = Math.floor((100 * done) / total);
+    if (percent === this.#lastPercent) return;
+    if (process.stderr.isTTY) {
+      const full = Math.floor((30 * done) / total);
+      process.stderr.write(`\r${label} [${"=".repeat(full)}${" ".repeat(30 - full)}] ${percent} %`);
+      this.#bar = true;
+    } else if (Math.floor(percent / 25) > Math.floor(this.#lastPercent / 25)) {
+      process.stderr.write(`${label} ${percent} %\n`);
+    }
+    this.#lastPercent = percent;
+    if (done === total) {
+      this.#clearBar();
+      this.#lastPercent = 0;
+    }
+  }
+
+  /** Say what went wrong, in one line, and return the exit code. */
+  failure(error: unknown): number {
+    this.#clearBar();
+    const known = error instanceof CarillonError;
+    const interrupted = error instanceof Error && error.name === "AbortError";
+    const exitCode = known ? error.exitCode : interrupted ? EXIT.interrupted : EXIT.fault;
+    const message = interrupted ? "interrupted; nothing was written" : firstLine(error);
+    if (this.options.json) {
+      const place = known ? { ...error.place, rule: error.rule, mend: error.mend } : {};
+      this.document({ error: { message, exitCode, ...place } });
+    } else {
+      const prefix = known || interrupted ? "" : "a fault of this program: ";
+      process.stderr.write(`${this.#paint("31", "error")}: ${prefix}${message}\n`);
+      if (!known && !interrupted && !this.options.debug)
+        process.stderr.write("Run again with --debug to see where.\n");
+    }
+    if (this.options.debug && error instanceof Error) process.stderr.write(`${error.stack}\n`);
+    return exitCode;
+  }
+
+  #clearBar(): void {
+    if (!this.#bar) return;
+    process.stderr.write(`\r${" ".repeat(76)}\r`);
+    this.#bar = false;
+  }
+
+  #paint(code: string, text: string): string {
+    return this.options.color ? `\u001b[${code}m${text}\u001b[0m` : text;
+  }
+}
+
+/** Uncaught errors of the HDF5 library print pages: one line, and not a long one. */
+function firstLine(error: unknown): string {
+  const text = error instanceof Error ? error.message : String(error);
+  const line = text.split("\n", 1)[0] ?? "";
+  return line.length > 300 ? `${line.slice(0, 297)}...` : line;
+}
+
+/** Break a line at spaces so that it fits a terminal of `width` columns. */
+export function wrap(text: string, width: number, indent: string): string {
+  const lines: string[] = [];
+  const words = text.trimStart().split(" ");
+  let line = text.slice(0, text.length - text.trimStart().length) + words.shift();
+  for (const word of words) {
+    const next = `${line} ${word}`;
+    if (visibleLength(next) > width) {
+      lines.push(line);
+      line = indent + word;
+    } else line = next;
+  }
+  return [...lines, line].join("\n");
+}
+
+function visibleLength(text: string): number {
+  // biome-ignore lint/suspicious/noControlCharactersInRegex: escape sequences are what is left out
+  return text.replace(/\u001b\[\d+m/g, "").length;
+}

@@ -1,0 +1,38 @@
+/**
+ * Carillon as a library: everything that a command does, a script can do. Asynchronous, typed, and without `process`.
+ * For research only, not for diagnosis or treatment.
+ */
+
+export type { GroupResult } from "./engine/pipeline.js";
+export { type Plan, type PlannedStage, planRecipe } from "./engine/plan.js";
+export type { Save } from "./engine/products.js";
+export { type ReadoutFacts, readoutFacts } from "./engine/readout-facts.js";
+export { type ReconstructOptions, reconstruct } from "./engine/reconstruct.js";
+export { type ReadOptions, readScan, type Scan } from "./engine/scan.js";
+export { CAUTION } from "./engine/sidecar.js";
+export {
+  type WriteOptions,
+  type WrittenReconstruction,
+  writeReconstruction,
+} from "./engine/write-reconstruction.js";
+export { CarillonError, InputError, OutputError, UsageError } from "./errors.js";
+export { createKernels } from "./kernels/create-kernels.js";
+export type { Kernels } from "./kernels/kernels.js";
+export { createPlainKernels } from "./kernels/plain-kernels.js";
+export type { Axis, FrameAxis, SpatialAxis, Xyz } from "./physics/layout.js";
+export type { Discrepancy, Pose, ScanFacts, ScanOverrides, Space } from "./physics/scan.js";
+export { defaultRecipe } from "./recipe/default-recipe.js";
+export {
+  applySetting,
+  formatRecipe,
+  type OutputSettings,
+  outputSettings,
+  type Recipe,
+  readRecipe,
+  scanOverrides,
+} from "./recipe/recipe.js";
+export { recipeSchema } from "./recipe/schema.js";
+export { type SimulateOptions, simulateRaw } from "./simulate/index.js";
+export type { Frame, FrameStage, Layout, ReadoutStage, Stage } from "./stages/stage.js";
+export { VERSION } from "./version.js";
+export { readNpy } from "./writers/npy.js";

@@ -1,0 +1,74 @@
+import type { ScanFacts } from "../physics/scan.js";
+import { runsBackward, type SampleWindow, sampleWindow } from "./place.js";
+import type { ReadoutHead } from "./record.js";
+
+/**
+ * Copy one readout's samples onto the encoded grid in the order of rising k, as the recipe's `scan` asks: turned round
+ * where it ran backward, conjugated, its sign changed, moved to another centre. Samples that were not acquired stay zero.
+ * @param samples [coil, sample] interleaved complex, in time order
+ * @param target [coil, encoded sample], zeroed, from float `at` on
+ * @throws InputError if the samples reach beyond the encoded matrix
+ */
+export function decodeReadout(
+  samples: Float32Array,
+  head: ReadoutHead,
+  scan: ScanFacts,
+  target: Float32Array,
+  at: number,
+  file: string,
+): void {
+  const encoded = scan.encoded.matrix.x;
+  const backward = runsBackward(head, scan.overrides.readoutPolarity);
+  const center = scan.measuredCenter[backward ? "reverse" : "forward"] ?? head.centerSample;
+  const window = sampleWindow(head, encoded, backward, center, file);
+  for (let coil = 0; coil < head.channels; coil++) {
+    const from = 2 * (coil * head.samples + window.first);
+    const to = at + 2 * (coil * encoded + window.encodedStart);
+    copyLine(samples, from, target, to, window);
+  }
+  const { conjugate, alternateSign, recentreMm } = scan.overrides;
+  const length = 2 * head.channels * encoded;
+  const line = target.subarray(at, at + length);
+  if (conjugate) for (let i = 1; i < length; i += 2) line[i] = -line[i]!;
+  if (alternateSign && head.counters.kspace_encode_step_1 % 2 === 1)
+    for (let i = 0; i < length; i++) line[i] = -line[i]!;
+  if (recentreMm.some((mm) => mm !== 0)) recentre(line, head, scan);
+}
+
+function copyLine(
+  samples: Float32Array,
+  from: number,
+  target: Float32Array,
+  to: number,
+  window: SampleWindow,
+): void {
+  const { count, reversed } = window;
+  if (!reversed) {
+    target.set(samples.subarray(from, from + 2 * count), to);
+    return;
+  }
+  for (let j = 0, p = from + 2 * (count - 1), q = to; j < count; j++, p -= 2, q += 2) {
+    target[q] = samples[p]!;
+    target[q + 1] = samples[p + 1]!;
+  }
+}
+
+/** Multiply by exp(+i 2 pi k . r0): the point r0 (mm along read, phase, slice) becomes the centre. */
+function recentre(line: Float32Array, head: ReadoutHead, scan: ScanFacts): void {
+  const { matrix, fovMm } = scan.encoded;
+  const [x, y, z] = scan.overrides.recentreMm;
+  const ky = (head.counters.kspace_encode_step_1 - scan.center.y) / fovMm.y;
+  const kz = (head.counters.kspace_encode_step_2 - scan.center.z) / fovMm.z;
+  const turns = ky * y + (scan.dimensions === 3 ? kz * z : 0);
+  for (let j = 0; j < matrix.x; j++) {
+    const angle = 2 * Math.PI * (((j - Math.floor(matrix.x / 2)) / fovMm.x) * x + turns);
+    const c = Math.cos(angle);
+    const s = Math.sin(angle);
+    for (let p = 2 * j; p < line.length; p += 2 * matrix.x) {
+      const re = line[p]!;
+      const im = line[p + 1]!;
+      line[p] = re * c - im * s;
+      line[p + 1] = re * s + im * c;
+    }
+  }
+}

@@ -1,0 +1,187 @@
+// Stockham passes (decimation in frequency, self-sorting) of radix 2, 3, 4, 5, 7 over points of four lines:
+//   y[q + s (r p + k)] = w^(p k) * sum_j x[q + s (p + m j)] exp(-2 pi i j k / r),  w = exp(-2 pi i / (r m))
+// for p < m, q < s, k < r. Twiddles `w`: rows p = 1 .. m-1 of k = 1 .. r-1, complex (p = 0 turns nothing).
+// Source: van Loan, Computational Frameworks for the Fast Fourier Transform, SIAM 1992, section 1.7.
+
+import { add, mul, POINT, put, putTurned, splat, sub } from "./lanes";
+
+/** Store output k of a butterfly, turned by the complex number at `w` unless this is the row p = 0. */
+// @ts-ignore: decorator
+@inline
+function out(turn: bool, to: usize, re: v128, im: v128, w: usize): void {
+  if (turn) putTurned(to, re, im, splat(w), splat(w + 4));
+  else put(to, re, im);
+}
+
+/** Outputs k and r - k: (re, im) -+ i (qRe, qIm). */
+// @ts-ignore: decorator
+@inline
+function pair(turn: bool, low: usize, high: usize, re: v128, im: v128, qRe: v128, qIm: v128, wLow: usize, wHigh: usize): void {
+  out(turn, low, add(re, qIm), sub(im, qRe), wLow);
+  out(turn, high, sub(re, qIm), add(im, qRe), wHigh);
+}
+
+// @ts-ignore: decorator
+@inline
+function row2(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT;
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    const aRe = v128.load(x), aIm = v128.load(x, 16);
+    const bRe = v128.load(x + jump), bIm = v128.load(x + jump, 16);
+    put(y, add(aRe, bRe), add(aIm, bIm));
+    out(turn, y + step, sub(aRe, bRe), sub(aIm, bIm), w);
+  }
+}
+
+// @ts-ignore: decorator
+@inline
+function row3(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT;
+  const half = f32x4.splat(0.5), sine = f32x4.splat(0.8660254037844386);
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    const aRe = v128.load(x), aIm = v128.load(x, 16);
+    const bRe = v128.load(x + jump), bIm = v128.load(x + jump, 16);
+    const cRe = v128.load(x + 2 * jump), cIm = v128.load(x + 2 * jump, 16);
+    const sRe = add(bRe, cRe), sIm = add(bIm, cIm);
+    put(y, add(aRe, sRe), add(aIm, sIm));
+    pair(
+      turn, y + step, y + 2 * step,
+      sub(aRe, mul(half, sRe)), sub(aIm, mul(half, sIm)),
+      mul(sine, sub(bRe, cRe)), mul(sine, sub(bIm, cIm)), w, w + 8,
+    );
+  }
+}
+
+// @ts-ignore: decorator
+@inline
+function row4(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT;
+  let w1Re = f32x4.splat(0), w1Im = w1Re, w2Re = w1Re, w2Im = w1Re, w3Re = w1Re, w3Im = w1Re;
+  if (turn) {
+    w1Re = splat(w); w1Im = splat(w + 4);
+    w2Re = splat(w + 8); w2Im = splat(w + 12);
+    w3Re = splat(w + 16); w3Im = splat(w + 20);
+  }
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    const aRe = v128.load(x), aIm = v128.load(x, 16);
+    const cRe = v128.load(x + 2 * jump), cIm = v128.load(x + 2 * jump, 16);
+    const sRe = add(aRe, cRe), sIm = add(aIm, cIm), dRe = sub(aRe, cRe), dIm = sub(aIm, cIm);
+    const bRe = v128.load(x + jump), bIm = v128.load(x + jump, 16);
+    const eRe = v128.load(x + 3 * jump), eIm = v128.load(x + 3 * jump, 16);
+    const tRe = add(bRe, eRe), tIm = add(bIm, eIm), uRe = sub(bRe, eRe), uIm = sub(bIm, eIm);
+    put(y, add(sRe, tRe), add(sIm, tIm));
+    if (turn) {
+      putTurned(y + step, add(dRe, uIm), sub(dIm, uRe), w1Re, w1Im);
+      putTurned(y + 2 * step, sub(sRe, tRe), sub(sIm, tIm), w2Re, w2Im);
+      putTurned(y + 3 * step, sub(dRe, uIm), add(dIm, uRe), w3Re, w3Im);
+    } else {
+      put(y + step, add(dRe, uIm), sub(dIm, uRe));
+      put(y + 2 * step, sub(sRe, tRe), sub(sIm, tIm));
+      put(y + 3 * step, sub(dRe, uIm), add(dIm, uRe));
+    }
+  }
+}
+
+// @ts-ignore: decorator
+@inline
+function row5(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT;
+  const c1 = f32x4.splat(0.30901699437494745), c2 = f32x4.splat(-0.8090169943749475);
+  const s1 = f32x4.splat(0.9510565162951535), s2 = f32x4.splat(0.5877852522924731);
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    const bRe = v128.load(x + jump), bIm = v128.load(x + jump, 16);
+    const eRe = v128.load(x + 4 * jump), eIm = v128.load(x + 4 * jump, 16);
+    const t1Re = add(bRe, eRe), t1Im = add(bIm, eIm), d1Re = sub(bRe, eRe), d1Im = sub(bIm, eIm);
+    const cRe = v128.load(x + 2 * jump), cIm = v128.load(x + 2 * jump, 16);
+    const dRe = v128.load(x + 3 * jump), dIm = v128.load(x + 3 * jump, 16);
+    const t2Re = add(cRe, dRe), t2Im = add(cIm, dIm), d2Re = sub(cRe, dRe), d2Im = sub(cIm, dIm);
+    const aRe = v128.load(x), aIm = v128.load(x, 16);
+    put(y, add(aRe, add(t1Re, t2Re)), add(aIm, add(t1Im, t2Im)));
+    pair(
+      turn, y + step, y + 4 * step,
+      add(aRe, add(mul(c1, t1Re), mul(c2, t2Re))), add(aIm, add(mul(c1, t1Im), mul(c2, t2Im))),
+      add(mul(s1, d1Re), mul(s2, d2Re)), add(mul(s1, d1Im), mul(s2, d2Im)), w, w + 24,
+    );
+    pair(
+      turn, y + 2 * step, y + 3 * step,
+      add(aRe, add(mul(c2, t1Re), mul(c1, t2Re))), add(aIm, add(mul(c2, t1Im), mul(c1, t2Im))),
+      sub(mul(s2, d1Re), mul(s1, d2Re)), sub(mul(s2, d1Im), mul(s1, d2Im)), w + 8, w + 16,
+    );
+  }
+}
+
+/** a + c1 t1 + c2 t2 + c3 t3. */
+// @ts-ignore: decorator
+@inline
+function cosines(a: v128, c1: v128, t1: v128, c2: v128, t2: v128, c3: v128, t3: v128): v128 {
+  return add(add(a, mul(c1, t1)), add(mul(c2, t2), mul(c3, t3)));
+}
+
+// @ts-ignore: decorator
+@inline
+function row7(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT;
+  const c1 = f32x4.splat(0.6234898018587336), c2 = f32x4.splat(-0.2225209339563144), c3 = f32x4.splat(-0.9009688679024191);
+  const s1 = f32x4.splat(0.7818314824680298), s2 = f32x4.splat(0.9749279121818236), s3 = f32x4.splat(0.4338837391175581);
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    let lRe = v128.load(x + jump), lIm = v128.load(x + jump, 16);
+    let hRe = v128.load(x + 6 * jump), hIm = v128.load(x + 6 * jump, 16);
+    const t1Re = add(lRe, hRe), t1Im = add(lIm, hIm), d1Re = sub(lRe, hRe), d1Im = sub(lIm, hIm);
+    lRe = v128.load(x + 2 * jump); lIm = v128.load(x + 2 * jump, 16);
+    hRe = v128.load(x + 5 * jump); hIm = v128.load(x + 5 * jump, 16);
+    const t2Re = add(lRe, hRe), t2Im = add(lIm, hIm), d2Re = sub(lRe, hRe), d2Im = sub(lIm, hIm);
+    lRe = v128.load(x + 3 * jump); lIm = v128.load(x + 3 * jump, 16);
+    hRe = v128.load(x + 4 * jump); hIm = v128.load(x + 4 * jump, 16);
+    const t3Re = add(lRe, hRe), t3Im = add(lIm, hIm), d3Re = sub(lRe, hRe), d3Im = sub(lIm, hIm);
+    const aRe = v128.load(x), aIm = v128.load(x, 16);
+    put(y, add(add(aRe, t1Re), add(t2Re, t3Re)), add(add(aIm, t1Im), add(t2Im, t3Im)));
+    pair(
+      turn, y + step, y + 6 * step,
+      cosines(aRe, c1, t1Re, c2, t2Re, c3, t3Re), cosines(aIm, c1, t1Im, c2, t2Im, c3, t3Im),
+      add(mul(s1, d1Re), add(mul(s2, d2Re), mul(s3, d3Re))), add(mul(s1, d1Im), add(mul(s2, d2Im), mul(s3, d3Im))),
+      w, w + 40,
+    );
+    pair(
+      turn, y + 2 * step, y + 5 * step,
+      cosines(aRe, c2, t1Re, c3, t2Re, c1, t3Re), cosines(aIm, c2, t1Im, c3, t2Im, c1, t3Im),
+      sub(mul(s2, d1Re), add(mul(s3, d2Re), mul(s1, d3Re))), sub(mul(s2, d1Im), add(mul(s3, d2Im), mul(s1, d3Im))),
+      w + 8, w + 32,
+    );
+    pair(
+      turn, y + 3 * step, y + 4 * step,
+      cosines(aRe, c3, t1Re, c1, t2Re, c2, t3Re), cosines(aIm, c3, t1Im, c1, t2Im, c2, t3Im),
+      add(sub(mul(s3, d1Re), mul(s1, d2Re)), mul(s2, d3Re)), add(sub(mul(s3, d1Im), mul(s1, d2Im)), mul(s2, d3Im)),
+      w + 16, w + 24,
+    );
+  }
+}
+
+export function pass2(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row2(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 2 * s * POINT; x < last; x += s * POINT, y += 2 * s * POINT, w += 8) row2(true, s, x, y, jump, w);
+}
+
+export function pass3(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row3(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 3 * s * POINT; x < last; x += s * POINT, y += 3 * s * POINT, w += 16) row3(true, s, x, y, jump, w);
+}
+
+export function pass4(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row4(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 4 * s * POINT; x < last; x += s * POINT, y += 4 * s * POINT, w += 24) row4(true, s, x, y, jump, w);
+}
+
+export function pass5(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row5(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 5 * s * POINT; x < last; x += s * POINT, y += 5 * s * POINT, w += 32) row5(true, s, x, y, jump, w);
+}
+
+export function pass7(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row7(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 7 * s * POINT; x < last; x += s * POINT, y += 7 * s * POINT, w += 48) row7(true, s, x, y, jump, w);
+}

@@ -1,0 +1,129 @@
+import { createHash } from "node:crypto";
+import fs from "node:fs";
+import { OutputError } from "../errors.js";
+import type { ByteSink } from "./npy.js";
+
+/** What is known of a finished output; a sidecar states it. */
+export interface OutputRecord {
+  readonly name: string;
+  readonly bytes: number;
+  /** SHA-256 of the whole file, hexadecimal. */
+  readonly sha256: string;
+  /**
+   * SHA-256 of the numbers alone: the array's elements without the header, or a picture's pixels. Compare this one
+   * between runs: compressed bytes differ between zlib builds, the numbers do not.
+   */
+  readonly payloadSha256?: string;
+}
+
+/** One output under its temporary name. Every failure to write is an OutputError that names the final file. */
+export class OutputFile implements ByteSink {
+  readonly temporaryPath: string;
+  readonly #finalPath: string;
+  #descriptor: number | undefined;
+
+  /** Creates the temporary file; it must not exist. */
+  constructor(temporaryPath: string, finalPath: string) {
+    this.temporaryPath = temporaryPath;
+    this.#finalPath = finalPath;
+    this.#descriptor = writing(finalPath, () => fs.openSync(temporaryPath, "wx"));
+  }
+
+  /** Write all of `bytes` at `atBytes`; a gap that no write fills reads as zeros. */
+  write(bytes: NodeJS.ArrayBufferView, atBytes: number): void {
+    const descriptor = this.#open();
+    writing(this.#finalPath, () => {
+      for (let done = 0; done < bytes.byteLength; ) {
+        done += fs.writeSync(descriptor, bytes, done, bytes.byteLength - done, atBytes + done);
+      }
+    });
+  }
+
+  /** Give the file its full length, so that elements which are never written are zero. */
+  extendTo(lengthBytes: number): void {
+    const descriptor = this.#open();
+    writing(this.#finalPath, () => {
+      if (fs.fstatSync(descriptor).size < lengthBytes) fs.ftruncateSync(descriptor, lengthBytes);
+    });
+  }
+
+  /** Bring the bytes to the disk and close. Some file systems report a full disk only here. */
+  finish(): void {
+    const descriptor = this.#open();
+    writing(this.#finalPath, () => fs.fsyncSync(descriptor));
+    this.close();
+  }
+
+  /** Close without any promise about the contents. */
+  close(): void {
+    if (this.#descriptor === undefined) return;
+    const descriptor = this.#descriptor;
+    this.#descriptor = undefined;
+    writing(this.#finalPath, () => fs.closeSync(descriptor));
+  }
+
+  #open(): number {
+    if (this.#descriptor === undefined) throw new Error(`${this.#finalPath} is closed already`);
+    return this.#descriptor;
+  }
+}
+
+/** Run a file operation; a failure becomes an OutputError about `finalPath` that says what the user can do. */
+export function writing<T>(finalPath: string, operation: () => T): T {
+  try {
+    return operation();
+  } catch (cause) {
+    const code = (cause as { code?: unknown }).code; // a system error carries `code`; others are our own fault
+    if (typeof code !== "string") throw cause;
+    const [rule, mend] = REASONS[code] ?? [`could not be written (${code})`, "Choose another folder."];
+    throw new OutputError({ file: finalPath }, rule, mend, { cause });
+  }
+}
+
+const NO_PERMISSION = [
+  "may not be written here",
+  "Choose another folder or change its permissions.",
+] as const;
+const DISK_FULL = [
+  "could not be written: the disk is full",
+  "Free some space or choose another folder.",
+] as const;
+const NOT_A_FOLDER = ["a part of its folder's path is not a folder", "Choose another folder."] as const;
+const REASONS: Readonly<Record<string, readonly [rule: string, mend: string]>> = {
+  ENOSPC: DISK_FULL,
+  EDQUOT: ["could not be written: the disk quota is used up", DISK_FULL[1]],
+  EFBIG: ["is larger than files may be here", "Choose another folder or raise the limit."],
+  EACCES: NO_PERMISSION,
+  EPERM: NO_PERMISSION,
+  EROFS: ["could not be written: the file system is read-only", NO_PERMISSION[1]],
+  ENOTDIR: NOT_A_FOLDER,
+  EEXIST: NOT_A_FOLDER, // what mkdir says of a path that is a file; temporary names are unique
+  ENAMETOOLONG: ["has too long a name", "Choose a shorter name."],
+};
+
+/** SHA-256 of a file, and of it from `payloadStart` on; reads in pieces and lets signals in between them. */
+export async function hashFile(file: string, payloadStart: number | undefined) {
+  const whole = createHash("sha256");
+  const payload = payloadStart === undefined ? undefined : createHash("sha256");
+  const piece = new Uint8Array(4 * 2 ** 20);
+  const handle = await fs.promises.open(file, "r");
+  try {
+    let position = 0;
+    for (;;) {
+      const { bytesRead } = await handle.read(piece, 0, piece.length, position);
+      if (bytesRead === 0) break;
+      const part = piece.subarray(0, bytesRead);
+      whole.update(part);
+      payload?.update(part.subarray(Math.max(0, (payloadStart ?? 0) - position)));
+      position += bytesRead;
+    }
+    return { bytes: position, sha256: whole.digest("hex"), payloadSha256: payload?.digest("hex") };
+  } finally {
+    await handle.close();
+  }
+}
+
+/** SHA-256 of bytes in memory, hexadecimal. */
+export function sha256(bytes: NodeJS.ArrayBufferView): string {
+  return createHash("sha256").update(bytes).digest("hex");
+}
