@@ -14,7 +14,12 @@ const banner = {
 
 await build({
   absWorkingDir: root,
-  entryPoints: { carillon: "src/cli/carillon.ts", index: "src/index.ts" },
+  entryPoints: {
+    carillon: "src/cli/carillon.ts",
+    index: "src/index.ts",
+    worker: "src/engine/worker.ts",
+    "hash-worker": "src/engine/hash-worker.ts",
+  },
   outdir: "dist",
   bundle: true,
   splitting: true,

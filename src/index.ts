@@ -3,11 +3,11 @@
  * For research only, not for diagnosis or treatment.
  */
 
-export type { GroupResult } from "./engine/pipeline.js";
 export { type Plan, type PlannedStage, planRecipe } from "./engine/plan.js";
 export type { Save } from "./engine/products.js";
 export { type ReadoutFacts, readoutFacts } from "./engine/readout-facts.js";
-export { type ReconstructOptions, reconstruct } from "./engine/reconstruct.js";
+export type { GroupResult } from "./engine/reconstruct.js";
+export { type Attempt, type PlannedRecipe, type RunOptions, type RunResult, run } from "./engine/run.js";
 export { type ReadOptions, readScan, type Scan } from "./engine/scan.js";
 export { CAUTION } from "./engine/sidecar.js";
 export {
@@ -16,9 +16,7 @@ export {
   writeReconstruction,
 } from "./engine/write-reconstruction.js";
 export { CarillonError, InputError, OutputError, UsageError } from "./errors.js";
-export { createKernels } from "./kernels/create-kernels.js";
 export type { Kernels } from "./kernels/kernels.js";
-export { createPlainKernels } from "./kernels/plain-kernels.js";
 export type { Axis, FrameAxis, SpatialAxis, Xyz } from "./physics/layout.js";
 export type { Discrepancy, Pose, ScanFacts, ScanOverrides, Space } from "./physics/scan.js";
 export { defaultRecipe } from "./recipe/default-recipe.js";

@@ -1,43 +1,48 @@
 import { readFileSync } from "node:fs";
 import { planRecipe } from "../engine/plan.js";
-import { readScan } from "../engine/scan.js";
-import { InputError, UsageError } from "../errors.js";
-import type { Discrepancy } from "../physics/scan.js";
+import type { Prepared } from "../engine/write-reconstruction.js";
+import { UsageError } from "../errors.js";
+import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
 import { defaultRecipe } from "../recipe/default-recipe.js";
 import { applySetting, outputSettings, type Recipe, readRecipe, scanOverrides } from "../recipe/recipe.js";
 import { type Flags, wholeNumber } from "./command.js";
-import type { Terminal } from "./terminal.js";
+
+/** What the flags ask for, checked as far as it can be without the raw file. */
+export interface Request {
+  readonly overrides: ScanOverrides;
+  /** Where the recipe comes from, for `--explain`. */
+  readonly source: string;
+  /** The recipe worked out for what the scan is, and why each stage of a default one is there. */
+  prepare(facts: ScanFacts): Prepared & { readonly reasons: ReadonlyMap<string, string> };
+}
 
 /**
- * Read a raw file and work out its recipe from the flags: the recipe file or the default one, then every `--set`, then
- * the other flags. Flags come before the environment, the environment before the recipe, the recipe before defaults.
+ * The recipe that the flags ask for: the recipe file or the default one, then every `--set`, then the other flags.
+ * Flags come before the environment, the environment before the recipe, the recipe before defaults.
+ * @throws UsageError for whatever is wrong in them, before a long file is read
  */
-export async function planFile(flags: Flags, terminal: Terminal, signal: AbortSignal) {
+export function requestOf(flags: Flags): Request {
   const file = flags.raw as string;
   const recipeFile = flags.recipe as string | undefined;
   const settings = (flags.set as string[] | undefined) ?? [];
   const given = recipeFile === undefined ? undefined : readRecipe(textOf(recipeFile), recipeFile);
-  const empty: Recipe = { carillon: 1, scan: {}, stages: given?.stages ?? [], outputs: {} };
-  // A wrong setting must fail before a long file is read.
-  const early = withFlags(settings.reduce(applySetting, given ?? empty), flags);
-  const scan = await readScan(file, {
-    overrides: scanOverrides(early),
-    signal,
-    progress: (done, total) => terminal.progress("reading", done, total),
-  });
-  const standard = given ? undefined : defaultRecipe(scan.facts, file);
-  const base = given ?? (standard!.recipe as Recipe);
-  const recipe = withFlags(settings.reduce(applySetting, base), flags);
-  const plan = planRecipe(scan.facts, recipe, standard?.reasons);
-  const strictError = (problem: Discrepancy) =>
-    new InputError({ file }, problem.message, "Leave out --strict to reconstruct all the same");
+  const complete = (base: Recipe) => withFlags(settings.reduce(applySetting, base), flags);
+  const early = complete(given ?? { carillon: 1, scan: {}, stages: [], outputs: {} });
+  outputSettings(early, recipeFile);
   return {
-    scan,
-    plan,
-    recipe,
-    outputs: outputSettings(recipe, recipeFile),
+    overrides: scanOverrides(early),
     source: recipeFile ?? "default",
-    strictError,
+    prepare(facts) {
+      const standard = given ? undefined : defaultRecipe(facts, file);
+      const recipe = complete(given ?? standard!.recipe);
+      const reasons = standard?.reasons ?? new Map<string, string>();
+      return {
+        recipe,
+        plan: planRecipe(facts, recipe, reasons),
+        outputs: outputSettings(recipe, recipeFile),
+        reasons,
+      };
+    },
   };
 }
 

@@ -34,11 +34,14 @@ export const recipe: Command = {
         "no raw file given",
         "carillon recipe RAW, or carillon recipe --schema",
       );
-    const { planFile } = await import("./plan-file.js");
+    const { requestOf } = await import("./plan-file.js");
+    const { readScan } = await import("../engine/scan.js");
     const { formatRecipe } = await import("../recipe/recipe.js");
-    const { plan, recipe, scan } = await planFile(flags, terminal, signal);
+    const request = requestOf(flags);
+    const progress = (done: number, total: number) => terminal.progress("reading", done, total);
+    const scan = await readScan(flags.raw as string, { overrides: request.overrides, signal, progress });
+    const { recipe, reasons } = request.prepare(scan.facts);
     terminal.discrepancies(scan.discrepancies);
-    const reasons = new Map(plan.stages.map(({ stage, reason }) => [stage.id, reason]));
     terminal.result(formatRecipe(recipe, reasons).trimEnd());
     terminal.document(recipe);
   },

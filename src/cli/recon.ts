@@ -1,6 +1,7 @@
-import { SAVES } from "../engine/products.js";
+import { SAVES, type Save } from "../engine/products.js";
 import type { Command, Flags } from "./command.js";
 import { READ_OPTIONS, wholeNumber } from "./command.js";
+import type { Request } from "./plan-file.js";
 import type { Terminal } from "./terminal.js";
 
 /** `carillon recon`: from a raw file to arrays, pictures and a sidecar. */
@@ -39,6 +40,17 @@ export const recon: Command = {
       describe: "fail where header and readouts disagree or lines are missing",
     },
     force: { type: "boolean", default: false, describe: "replace files that exist" },
+    workers: { type: "number", requiresArg: true, describe: "threads that compute (default: the cores)" },
+    memory: {
+      type: "number",
+      requiresArg: true,
+      describe: "most memory for samples, MB (default: a quarter of the machine's)",
+    },
+    transform: {
+      choices: ["simd", "plain"],
+      describe: "transform engine (default: simd where the machine has it)",
+    },
+    timings: { type: "boolean", default: false, describe: "print the time by stage" },
     block: { type: "number", requiresArg: true, hidden: true, describe: "readouts read at a time" },
     ...READ_OPTIONS,
   },
@@ -48,55 +60,77 @@ export const recon: Command = {
     ["recon scan.h5 --explain", "what would be done, and why"],
   ],
   async run(flags, terminal, signal) {
-    const { planFile } = await import("./plan-file.js");
+    const { requestOf } = await import("./plan-file.js");
     const { UsageError } = await import("../errors.js");
     const out = flags.out as string | undefined;
     if (!flags.explain && out === undefined)
       throw new UsageError({ field: "--out" }, "no folder to write into", "Give one: --out FOLDER");
-    const planned = await planFile(flags, terminal, signal);
-    const { scan, plan, recipe, outputs } = planned;
-    if (flags.explain) {
-      const { explain } = await import("./explain.js");
-      terminal.result(explain(scan, plan, planned.source));
-      terminal.document({
-        plan: plan.stages.map(({ stage, ...rest }) => ({ id: stage.id, ...rest })),
-        recipe,
-        outputs,
-      });
-      terminal.discrepancies(scan.discrepancies);
-      return;
-    }
-    terminal.discrepancies(scan.discrepancies);
-    failIfStrict(flags, planned);
+    const request = requestOf(flags);
+    if (flags.explain) return explainOnly(flags, request, terminal, signal);
     const { writeReconstruction } = await import("../engine/write-reconstruction.js");
-    const { createKernels } = await import("../kernels/create-kernels.js");
-    const blockRows = wholeNumber(flags, "block", 1);
-    const written = await writeReconstruction(scan, plan, {
+    const written = await writeReconstruction(flags.raw as string, request.prepare, {
+      ...runOptions(flags),
+      overrides: request.overrides,
       out: out!,
-      recipe,
-      outputs,
-      kernels: createKernels(),
-      save: (flags.save as (typeof SAVES)[number][] | undefined) ?? [],
+      save: (flags.save as Save[] | undefined) ?? [],
       force: flags.force === true,
+      strict: flags.strict === true,
       signal,
       progress: (done, total) => terminal.progress("reconstructing", done, total),
-      ...(blockRows !== undefined && { blockRows }),
     });
+    terminal.discrepancies(written.discrepancies);
     report(written, terminal);
+    if (flags.timings) terminal.result(timingTable(written.timings));
   },
 };
 
-type Planned = Awaited<ReturnType<typeof import("./plan-file.js")["planFile"]>>;
 type Written = Awaited<ReturnType<typeof import("../engine/write-reconstruction.js")["writeReconstruction"]>>;
 
-function failIfStrict(flags: Flags, { scan, strictError }: Planned): void {
-  const problem = scan.discrepancies.find(({ severity }) => severity === "problem");
-  if (flags.strict && problem) throw strictError(problem);
+async function explainOnly(
+  flags: Flags,
+  request: Request,
+  terminal: Terminal,
+  signal: AbortSignal,
+): Promise<void> {
+  const { readScan } = await import("../engine/scan.js");
+  const { explain } = await import("./explain.js");
+  const progress = (done: number, total: number) => terminal.progress("reading", done, total);
+  const scan = await readScan(flags.raw as string, { overrides: request.overrides, signal, progress });
+  const { plan, recipe, outputs } = request.prepare(scan.facts);
+  terminal.discrepancies(scan.discrepancies);
+  terminal.result(explain(scan, plan, request.source));
+  terminal.document({
+    plan: plan.stages.map(({ stage, ...rest }) => ({ id: stage.id, ...rest })),
+    recipe,
+    outputs,
+  });
+}
+
+function runOptions(flags: Flags) {
+  const blockRows = wholeNumber(flags, "block", 1);
+  const workers = wholeNumber(flags, "workers", 1);
+  const memoryMb = wholeNumber(flags, "memory", 1);
+  const transform = flags.transform as "simd" | "plain" | undefined;
+  return {
+    ...(blockRows !== undefined && { blockRows }),
+    ...(workers !== undefined && { workers }),
+    ...(memoryMb !== undefined && { memoryBytes: memoryMb * 1e6 }),
+    ...(transform !== undefined && { transform }),
+  };
+}
+
+/** Seconds by part, the largest first; parts of several threads add up, so the sum can exceed the time that passed. */
+function timingTable(timings: Written["timings"]): string {
+  const rows = Object.entries(timings).sort(([, a], [, b]) => b - a);
+  return [
+    "seconds by part, over all threads:",
+    ...rows.map(([part, s]) => `  ${part.padEnd(20)}${s.toFixed(3)}`),
+  ].join("\n");
 }
 
 function report(written: Written, terminal: Terminal): void {
-  const { files, arrays, facts, discrepancies } = written;
-  terminal.document({ files, arrays, scan: facts, discrepancies });
+  const { files, arrays, facts, discrepancies, transform, timings } = written;
+  terminal.document({ files, arrays, scan: facts, discrepancies, transform, timings });
   for (const file of files) {
     const array = arrays.find((entry) => file.endsWith(`/${entry.file}`) || file === entry.file);
     terminal.result(array ? `${file}  [${array.axes.join(", ")}] = ${array.shape.join(" x ")}` : file);

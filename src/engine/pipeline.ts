@@ -4,66 +4,79 @@ import type { ScanFacts } from "../physics/scan.js";
 import type { Frame, NoiseState, ReadoutLines, Sampling, SideOutput, StageContext } from "../stages/stage.js";
 import { axisLength } from "../stages/stage.js";
 import type { Plan, PlannedStage } from "./plan.js";
-
-/** What became of a group of frames: the result, the channel images where they are wanted, and what stages emitted. */
-export interface GroupResult {
-  readonly result: Frame;
-  readonly coils: Frame | undefined;
-  readonly sideOutputs: readonly SideOutput[];
-}
+import type { Timings } from "./timings.js";
 
 /** Runs a plan's stages on readouts and on groups of frames; the same on the main thread and in a worker. */
 export class Pipeline {
   readonly #plan: Plan;
   readonly #scan: ScanFacts;
   readonly #kernels: Kernels;
-  /** The layout that readouts fill; frames start from it. */
+  readonly #timings: Timings;
   readonly #readoutStages: readonly PlannedStage[];
   readonly #frameStages: readonly PlannedStage[];
 
-  constructor(plan: Plan, scan: ScanFacts, kernels: Kernels) {
+  constructor(plan: Plan, scan: ScanFacts, kernels: Kernels, timings: Timings) {
     this.#plan = plan;
     this.#scan = scan;
     this.#kernels = kernels;
+    this.#timings = timings;
     this.#readoutStages = plan.stages.filter(({ stage }) => stage.kind === "readout");
     this.#frameStages = plan.stages.filter(({ stage }) => stage.kind !== "readout");
   }
 
-  /** The readout stages on a block of lines. The block's memory is the caller's; what comes back is, too. */
+  /** The readout stages on a block of lines. The block's memory stays the caller's; the result's becomes it. */
   runReadouts(block: ReadoutLines): ReadoutLines {
     const context = this.#context([]);
     let lines = block;
     for (const { stage, params } of this.#readoutStages) {
       if (stage.kind !== "readout") continue;
-      const next = named(stage.id, () => stage.run(lines, params, context));
+      const next = this.#step(stage.id, () => stage.run(lines, params, context));
       if (next.data !== lines.data && lines.data !== block.data) context.release(lines.data);
       lines = next;
     }
     return lines;
   }
 
+  /** Turn sums of lines that came more than once into means. @param data the placed layout of a group */
+  average(data: Float32Array, counts: Uint16Array): void {
+    if (this.#scan.overrides.duplicates !== "mean") return;
+    const { placed, framesPerGroup } = this.#plan;
+    const coils = axisLength(placed, "coil");
+    const lines = axisLength(placed, "z") * axisLength(placed, "y");
+    const row = 2 * axisLength(placed, "x");
+    for (let at = 0; at < framesPerGroup * lines; at++) {
+      const count = counts[at]!;
+      if (count < 2) continue;
+      const frame = Math.floor(at / lines);
+      for (let coil = 0; coil < coils; coil++) {
+        const start = ((frame * coils + coil) * lines + (at % lines)) * row;
+        for (let j = start; j < start + row; j++) data[j]! /= count;
+      }
+    }
+  }
+
   /**
-   * The k-space stages to the combination on one group. Takes over `data` and gives its memory back.
+   * The k-space stages to the combination on one group. `data` is worked on in place and stays the caller's; the
+   * result's memory becomes the caller's where it is another.
    * @param data [...together, coil, z, y, x] of the placed layout
-   * @param keepCoils whether the images before the last combination are wanted
+   * @param keepCoils where the images before the last combination are copied to, if they are wanted
    */
-  runGroup(data: Float32Array, sampling: Sampling, keepCoils: boolean): GroupResult {
+  runGroup(
+    data: Float32Array,
+    sampling: Sampling,
+    keepCoils: Float32Array | undefined,
+  ): { result: Frame; sideOutputs: readonly SideOutput[] } {
     const sideOutputs: SideOutput[] = [];
     const context = this.#context(sideOutputs);
     let frame: Frame = { data, layout: this.#plan.placed, sampling, noise: this.#noiseOf(sampling) };
-    let coils: Frame | undefined;
     for (const { stage, params } of this.#frameStages) {
       if (stage.kind === "readout") continue;
-      if (keepCoils && stage.kind === "combine") coils = { ...frame, data: frame.data.slice() };
-      const next = named(stage.id, () => stage.run(frame, params, context));
-      if (next.data !== frame.data) context.release(frame.data);
+      if (stage.kind === "combine") keepCoils?.set(frame.data);
+      const next = this.#step(stage.id, () => stage.run(frame, params, context));
+      if (next.data !== frame.data && frame.data !== data) context.release(frame.data);
       frame = next;
     }
-    return { result: frame, coils, sideOutputs };
-  }
-
-  release(frame: Frame): void {
-    this.#kernels.transform.release(frame.data);
+    return { result: frame, sideOutputs };
   }
 
   /** Noise of a pixel against that of a sample: lines that were averaged have less of it, missing ones none. */
@@ -91,16 +104,16 @@ export class Pipeline {
       emit: (output) => sideOutputs.push(output),
     };
   }
-}
 
-/** Errors that nobody foresaw gain the stage in which they happened. */
-function named<T>(id: string, run: () => T): T {
-  try {
-    return run();
-  } catch (error) {
-    if (error instanceof CarillonError) throw error;
-    throw new Error(`stage ${id}: ${error instanceof Error ? error.message : String(error)}`, {
-      cause: error,
-    });
+  /** Time a stage; errors that nobody foresaw gain the stage in which they happened. */
+  #step<T>(id: string, run: () => T): T {
+    try {
+      return this.#timings.measure(id, run);
+    } catch (error) {
+      if (error instanceof CarillonError) throw error;
+      throw new Error(`stage ${id}: ${error instanceof Error ? error.message : String(error)}`, {
+        cause: error,
+      });
+    }
   }
 }

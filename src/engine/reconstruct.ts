@@ -1,101 +1,232 @@
 import { decodeReadout } from "../ingest/decode.js";
 import { roleOf } from "../ingest/flags.js";
-import { type LinePlace, placeLine } from "../ingest/place.js";
-import { DEFAULT_BLOCK_ROWS, RawFile, type ReadoutBlock } from "../ingest/raw-file.js";
-import type { Kernels } from "../kernels/kernels.js";
-import { FRAME_AXES } from "../physics/layout.js";
-import { FrameStore, type OpenGroup } from "./frame-store.js";
-import { type GroupResult, Pipeline } from "./pipeline.js";
-import { groupOf, type Plan } from "./plan.js";
-import type { Scan } from "./scan.js";
+import { placeLine } from "../ingest/place.js";
+import type { RawFile, ReadoutBlock } from "../ingest/raw-file.js";
+import type { ScanIndex } from "../ingest/scan-index.js";
+import { currentBuffer, type SampleMemory } from "../kernels/sample-memory.js";
+import type { ScanFacts } from "../physics/scan.js";
+import { axisLength, type Frame, floatCount, type SideOutput } from "../stages/stage.js";
+import type { Crew } from "./crew.js";
+import { type Destination, GroupStore, type OpenGroup } from "./group-store.js";
+import { frameAt, type JobReply } from "./jobs.js";
+import type { Plan } from "./plan.js";
+import type { Timings } from "./timings.js";
 
-export interface ReconstructOptions {
-  readonly kernels: Kernels;
-  /** Whether results should hold the channel images before the last combination. */
-  readonly keepCoils?: boolean;
-  readonly blockRows?: number;
-  readonly signal?: AbortSignal;
-  readonly progress?: (done: number, total: number) => void;
+/** What became of a group of frames. Its arrays are valid only while it is used. */
+export interface GroupResult {
+  readonly result: Frame;
+  readonly coils: Frame | undefined;
+  readonly sideOutputs: readonly SideOutput[];
 }
+
+/** All that one pass over a file needs. */
+export interface Pass {
+  readonly raw: RawFile;
+  readonly scan: ScanFacts;
+  readonly plan: Plan;
+  readonly crew: Crew;
+  readonly memory: SampleMemory;
+  readonly budgetBytes: number;
+  readonly timings: Timings;
+  readonly blockRows: number;
+  readonly keepCoils: boolean;
+  /** Readouts of a group. */
+  readonly expected: (group: number) => number;
+  /** Hears every readout of the pass, in the order of the file. */
+  readonly index: ScanIndex | undefined;
+  readonly signal: AbortSignal | undefined;
+  readonly progress: (done: number, total: number) => void;
+}
+
+/** Blocks whose readouts are being processed at a time: what bounds the memory of samples on their way. */
+const BLOCKS_AHEAD = 4;
 
 /**
- * Run a plan over a raw file, block by block, and hand each group's result to `use` as soon as its readouts are
- * complete. The result's memory is valid only inside `use`. Groups come in the order in which the file completes them.
- * @throws InputError for a file that contradicts itself
+ * Read a file block by block, have its readouts processed and placed, and hand each group to `use` once it is finished.
+ * Groups for which memory was lacking are done in further passes.
+ * @throws InputError for a faulty file; Contradiction where readouts are not as `expected`; the signal's reason
  */
-export async function reconstruct(
-  scan: Scan,
-  plan: Plan,
-  options: ReconstructOptions,
+export async function runPasses(
+  pass: Pass,
   use: (group: number, result: GroupResult) => void,
 ): Promise<void> {
-  const { kernels, keepCoils = false, blockRows = DEFAULT_BLOCK_ROWS } = options;
-  const { transform } = kernels;
-  const pipeline = new Pipeline(plan, scan.facts, kernels);
-  const store = new FrameStore(plan, scan.facts, expectedReadouts(scan, plan), (floats) =>
-    transform.allocate(floats),
-  );
-  const finish = (open: OpenGroup) => {
-    const result = pipeline.runGroup(open.data, open.sampling, keepCoils);
-    use(open.group, result);
-    pipeline.release(result.result);
+  const finished = new Set<number>();
+  const useAndNote = (group: number, result: GroupResult) => {
+    use(group, result);
+    finished.add(group);
   };
-  const raw = await RawFile.open(scan.file, scan.group);
-  try {
-    for (let first = 0; first < raw.readouts; first += blockRows) {
-      const count = Math.min(blockRows, raw.readouts - first);
-      raw.readBlock(first, count, (block) => {
-        const places = imageLines(block, scan);
-        if (places.length === 0) return;
-        const { channels, encoded } = scan.facts;
-        const perLine = 2 * channels * encoded.matrix.x;
-        const data = transform.allocate(places.length * perLine);
-        places.forEach(({ row }, i) =>
-          decodeReadout(block.samples(row), block.heads[row]!, scan.facts, data, i * perLine, scan.file),
-        );
-        const lines = pipeline.runReadouts({
-          data,
-          lines: places.length,
-          samples: encoded.matrix.x,
-          coils: channels,
+  let { index } = pass;
+  for (let deferred = 1; deferred > 0; ) {
+    deferred = await new PassRun({ ...pass, index }, new Set(finished), useAndNote).run();
+    index = undefined; // the first pass has heard them all
+  }
+}
+
+class PassRun {
+  readonly #pass: Pass;
+  readonly #store: GroupStore;
+  readonly #use: (group: number, result: GroupResult) => void;
+  /** Blocks are finished in the order of the file, whoever processed them. */
+  #tail: Promise<void> = Promise.resolve();
+  #blocksAhead = 0;
+  readonly #groups = new Set<Promise<void>>();
+  #failure: unknown;
+
+  constructor(pass: Pass, finished: ReadonlySet<number>, use: (group: number, result: GroupResult) => void) {
+    this.#pass = pass;
+    this.#use = use;
+    const { plan, scan, memory, budgetBytes, expected } = pass;
+    this.#store = new GroupStore(plan, scan, memory, budgetBytes, expected, finished);
+  }
+
+  /** Returns the number of groups that must wait for another pass. */
+  async run(): Promise<number> {
+    const { raw, blockRows, signal, progress, timings } = this.#pass;
+    try {
+      for (let first = 0; first < raw.readouts; first += blockRows) {
+        const count = Math.min(blockRows, raw.readouts - first);
+        const start = performance.now();
+        raw.readBlock(first, count, (block) => {
+          timings.add("read", (performance.now() - start) / 1e3);
+          this.#take(block);
         });
-        places.forEach(({ at }, i) => {
-          const complete = store.place(lines, i, at);
-          if (complete) finish(complete);
-        });
-        if (lines.data !== data) transform.release(lines.data);
-        transform.release(data);
-      });
-      options.progress?.(first + count, raw.readouts);
-      // Between blocks the event loop breathes: signals and progress are heard while the library works synchronously.
-      await new Promise((resolve) => setImmediate(resolve));
-      options.signal?.throwIfAborted();
+        progress(first + count, raw.readouts);
+        // Between blocks the event loop breathes: workers, signals and progress are heard while the library is synchronous.
+        await new Promise((resolve) => setImmediate(resolve));
+        signal?.throwIfAborted();
+        while (this.#blocksAhead > BLOCKS_AHEAD) await this.#tail;
+        if (this.#store.isTight) await this.#drain();
+        if (this.#failure) throw this.#failure;
+      }
+      for (const open of this.#store.closeRest()) this.#finishIfPlaced(open);
+      await this.#drain();
+      if (this.#failure) throw this.#failure;
+      return this.#store.deferred.size;
+    } catch (error) {
+      await this.#drain().catch(() => undefined);
+      throw error;
     }
-  } finally {
-    raw.close();
   }
-}
 
-/** The readouts of a block that land in the image, and where; all-zero ones count as not acquired. */
-function imageLines(block: ReadoutBlock, scan: Scan): { row: number; at: LinePlace }[] {
-  const { facts } = scan;
-  const lines: { row: number; at: LinePlace }[] = [];
-  block.heads.forEach((head, row) => {
-    if (head.encodingSpace !== facts.encoding || roleOf(head, facts.calibrationMode) !== "image") return;
-    if (block.samples(row).every((value) => value === 0)) return;
-    lines.push({ row, at: placeLine(head, facts, scan.file) });
-  });
-  return lines;
-}
-
-/** Readouts of each group, from the index. */
-function expectedReadouts(scan: Scan, plan: Plan): Map<number, number> {
-  const { facts, index } = scan;
-  const expected = new Map<number, number>();
-  for (const { counters, readouts } of index.frames.values()) {
-    const frame = FRAME_AXES.reduce((at, axis) => at * facts.lengths[axis] + counters[axis], 0);
-    const { group } = groupOf(facts, plan.together, frame);
-    expected.set(group, (expected.get(group) ?? 0) + readouts);
+  /** Wait for all that is under way. */
+  async #drain(): Promise<void> {
+    await this.#tail;
+    while (this.#groups.size) await Promise.all(this.#groups);
   }
-  return expected;
+
+  /** Index a block, decode its image readouts into sample memory, and have the readout stages run on them. */
+  #take(block: ReadoutBlock): void {
+    const { timings, index, scan, memory } = this.#pass;
+    if (index) timings.measure("index", () => index.add(block));
+    const { lines, touched } = this.#destinations(block);
+    const perLine = 2 * scan.channels * scan.encoded.matrix.x;
+    const samples = lines.length ? memory.allocate(lines.length * perLine) : undefined;
+    if (samples)
+      timings.measure("decode", () => {
+        for (const [i, { row }] of lines.entries())
+          decodeReadout(
+            block.samples(row),
+            block.heads[row]!,
+            scan,
+            samples,
+            i * perLine,
+            this.#pass.raw.file,
+          );
+      });
+    const destinations = lines.map(({ to }) => to);
+    const again = destinations.some((to) => to.again);
+    const job = samples && {
+      kind: "block" as const,
+      samples: { byte: samples.byteOffset, floats: samples.length },
+      lines: lines.length,
+      targets: again ? undefined : Float64Array.from(destinations, (to) => to.byte),
+    };
+    const reply = job ? this.#pass.crew.submit(job) : Promise.resolve(undefined);
+    reply.catch(() => undefined); // heard in the tail
+    this.#blocksAhead++;
+    this.#tail = this.#tail
+      .then(() => reply)
+      .then((done) => {
+        if (done) timings.addAll(done.timings);
+        if (samples && again) this.#placeAgain(samples, destinations);
+        if (samples) memory.release(samples);
+        for (const { open } of destinations) open.placed++;
+        for (const open of touched) this.#finishIfPlaced(open);
+      })
+      .catch((error) => {
+        this.#failure ??= error;
+      })
+      .finally(() => {
+        this.#blocksAhead--;
+      });
+  }
+
+  /** Where the image readouts of a block go; all-zero ones count as not acquired. */
+  #destinations(block: ReadoutBlock) {
+    const { scan, raw } = this.#pass;
+    const lines: { row: number; to: Destination }[] = [];
+    const touched = new Set<OpenGroup>();
+    block.heads.forEach((head, row) => {
+      if (head.encodingSpace !== scan.encoding || roleOf(head, scan.calibrationMode) !== "image") return;
+      const isZero = block.samples(row).every((value) => value === 0);
+      const to = this.#store.arrive(placeLine(head, scan, raw.file), isZero);
+      if (!to) return;
+      touched.add("open" in to ? to.open : to);
+      if ("open" in to) lines.push({ row, to });
+    });
+    return { lines, touched };
+  }
+
+  /** Lines of which some came before: added, or put in their place, in the order of the file. */
+  #placeAgain(samples: Float32Array, destinations: readonly Destination[]): void {
+    const { plan, scan, memory } = this.#pass;
+    const row = 2 * axisLength(plan.placed, "x");
+    const coilStep = axisLength(plan.placed, "z") * axisLength(plan.placed, "y") * row;
+    const whole = new Float32Array(currentBuffer(memory.memory));
+    destinations.forEach(({ byte, again }, line) => {
+      for (let coil = 0; coil < scan.channels; coil++) {
+        const from = (line * scan.channels + coil) * row;
+        const to = byte / 4 + coil * coilStep;
+        if (again && scan.overrides.duplicates === "mean")
+          for (let j = 0; j < row; j++) whole[to + j]! += samples[from + j]!;
+        else whole.set(samples.subarray(from, from + row), to);
+      }
+    });
+  }
+
+  #finishIfPlaced(open: OpenGroup): void {
+    if (!open.complete || open.finishing || open.placed < open.arrived) return;
+    open.finishing = true;
+    const work = this.#runGroup(open)
+      .catch((error) => {
+        this.#failure ??= error;
+      })
+      .finally(() => this.#groups.delete(work));
+    this.#groups.add(work);
+  }
+
+  async #runGroup(open: OpenGroup): Promise<void> {
+    const { plan, memory, keepCoils, crew, timings } = this.#pass;
+    const result = memory.allocate(floatCount(plan.result));
+    const coils = keepCoils ? memory.allocate(floatCount(plan.coils)) : undefined;
+    const span = (array: Float32Array) => ({ byte: array.byteOffset, floats: array.length });
+    const reply: JobReply = await crew.submit({
+      kind: "group",
+      data: span(open.data),
+      counts: open.counts,
+      result: span(result),
+      coils: coils && span(coils),
+    });
+    timings.addAll(reply.timings);
+    timings.measure("write", () =>
+      this.#use(open.group, {
+        result: frameAt(plan, memory.memory, span(result), "result", reply.noise!),
+        coils: coils && frameAt(plan, memory.memory, span(coils), "coils", reply.noise!),
+        sideOutputs: reply.sideOutputs!,
+      }),
+    );
+    memory.release(result);
+    if (coils) memory.release(coils);
+    this.#store.release(open);
+  }
 }

@@ -32,28 +32,42 @@ export interface ReadOptions {
  * @throws InputError naming file, place, value, rule and mend
  */
 export async function readScan(file: string, options: ReadOptions = {}): Promise<Scan> {
-  const overrides: ScanOverrides = { ...DEFAULT_OVERRIDES, ...options.overrides };
-  const group = options.group ?? overrides.group;
-  const chosen = { ...overrides, encoding: options.encoding ?? overrides.encoding ?? 0 };
-  const raw = await RawFile.open(file, group);
+  const overrides = completeOverrides(options);
+  const raw = await RawFile.open(file, overrides.group);
   try {
-    const index = await indexScan(raw, chosen, {
-      blockRows: options.blockRows ?? DEFAULT_BLOCK_ROWS,
-      ...(options.signal && { signal: options.signal }),
-      progress: (done) => options.progress?.(done, raw.readouts),
-    });
-    const facts = scanFacts(file, raw.header, index, chosen);
-    const discrepancies = findDiscrepancies(raw.header, index, facts);
-    return {
-      file,
-      group: raw.group,
-      readouts: raw.readouts,
-      header: raw.header,
-      index,
-      facts,
-      discrepancies,
-    };
+    return await indexRaw(raw, overrides, options);
   } finally {
     raw.close();
   }
+}
+
+/** The overrides with defaults filled in; `group` and `encoding` beside them come first. */
+export function completeOverrides(
+  options: Pick<ReadOptions, "overrides" | "group" | "encoding">,
+): ScanOverrides {
+  const overrides = { ...DEFAULT_OVERRIDES, ...options.overrides };
+  const group = options.group ?? overrides.group;
+  return {
+    ...overrides,
+    ...(group !== undefined && { group }),
+    encoding: options.encoding ?? overrides.encoding ?? 0,
+  };
+}
+
+/** Index an open file as a whole. */
+export async function indexRaw(raw: RawFile, overrides: ScanOverrides, options: ReadOptions): Promise<Scan> {
+  const index = await indexScan(raw, overrides, {
+    blockRows: options.blockRows ?? DEFAULT_BLOCK_ROWS,
+    ...(options.signal && { signal: options.signal }),
+    progress: (done) => options.progress?.(done, raw.readouts),
+  });
+  return scanOf(raw, index, overrides);
+}
+
+/** What a finished index says of a file. */
+export function scanOf(raw: RawFile, index: ScanIndex, overrides: ScanOverrides): Scan {
+  const { file, header, group, readouts } = raw;
+  const facts = scanFacts(file, header, index, overrides);
+  const discrepancies = findDiscrepancies(header, index, facts);
+  return { file, group, readouts, header, index, facts, discrepancies };
 }

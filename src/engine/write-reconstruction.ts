@@ -1,33 +1,31 @@
-import { createHash } from "node:crypto";
-import { createReadStream } from "node:fs";
 import path from "node:path";
-import { DEFAULT_BLOCK_ROWS } from "../ingest/raw-file.js";
+import { InputError } from "../errors.js";
 import type { Kernels } from "../kernels/kernels.js";
-import type { Discrepancy } from "../physics/scan.js";
-import type { OutputSettings, Recipe } from "../recipe/recipe.js";
-import { type Frame, valueCount } from "../stages/stage.js";
-import type { NpyFile } from "../writers/npy.js";
+import type { Discrepancy, ScanFacts } from "../physics/scan.js";
+import type { OutputSettings } from "../recipe/recipe.js";
+import type { Frame } from "../stages/stage.js";
 import { OutputSet } from "../writers/output-set.js";
-import { PictureCollector } from "./pictures.js";
-import type { GroupResult } from "./pipeline.js";
-import { arrayShape, groupFrames, type Plan } from "./plan.js";
-import { productValues } from "./product-values.js";
-import { type Product, productsOf, type Save } from "./products.js";
+import { hashInput, type InputHash } from "./input-hash.js";
+import { ProductWriter } from "./product-writer.js";
+import { productsOf, type Save } from "./products.js";
 import { type ReadoutFacts, readoutFacts } from "./readout-facts.js";
-import { reconstruct } from "./reconstruct.js";
+import type { GroupResult } from "./reconstruct.js";
+import { type Attempt, type PlannedRecipe, type RunOptions, run } from "./run.js";
 import type { Scan } from "./scan.js";
 import { sidecar } from "./sidecar.js";
+import type { Timings } from "./timings.js";
 
-export interface WriteOptions {
+export interface WriteOptions extends RunOptions {
   readonly out: string;
-  readonly recipe: Recipe;
-  readonly outputs: OutputSettings;
-  readonly kernels: Kernels;
   readonly save?: readonly Save[];
   readonly force?: boolean;
-  readonly blockRows?: number;
-  readonly signal?: AbortSignal;
-  readonly progress?: (done: number, total: number) => void;
+  /** Fail where header and readouts disagree or lines are missing. */
+  readonly strict?: boolean;
+}
+
+/** A recipe worked out for a scan, and how its outputs look. */
+export interface Prepared extends PlannedRecipe {
+  readonly outputs: OutputSettings;
 }
 
 /** What a reconstruction wrote and found. */
@@ -42,117 +40,130 @@ export interface WrittenReconstruction {
   }[];
   readonly discrepancies: readonly Discrepancy[];
   readonly facts: ReadoutFacts;
+  readonly transform: Kernels["id"];
+  /** Seconds by part of the work, over all threads. */
+  readonly timings: Readonly<Record<string, number>>;
 }
 
 /**
- * Run a plan and write its arrays, pictures and sidecar into a folder: all of them, or none.
- * @throws UsageError where a file exists; OutputError where one cannot be written; InputError for a faulty file
+ * Reconstruct a file and write its arrays, pictures and sidecar into a folder: all of them, or none.
+ * @param prepare the recipe for what the scan is, worked out
+ * @throws UsageError where a file exists; OutputError where one cannot be written; InputError for a faulty file, or
+ * under `strict` for one with discrepancies
  */
 export async function writeReconstruction(
-  scan: Scan,
-  plan: Plan,
+  file: string,
+  prepare: (facts: ScanFacts) => Prepared,
   options: WriteOptions,
 ): Promise<WrittenReconstruction> {
-  const { save = [], force = false } = options;
-  const products = productsOf(plan, save);
-  const withPicture = options.outputs.pictures ? products.filter(({ picture }) => picture !== undefined) : [];
-  const names = [
-    ...products.map(({ stem }) => `${stem}.npy`),
-    ...withPicture.map(({ stem }) => `${stem}.png`),
-  ];
-  const set = new OutputSet({ folder: options.out, names, sidecar: "image.json", force });
+  let hashing: Promise<InputHash> | undefined;
+  const done = await run(
+    file,
+    { ...options, keepCoils: options.save?.includes("coils") ?? false },
+    prepare,
+    (facts, planned, kernels) => {
+      if (!hashing) {
+        hashing = hashInput(file, options.signal);
+        hashing.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
+      }
+      // `planned` is what `prepare` made.
+      return new Writing(file, facts, planned as Prepared, options, kernels);
+    },
+  );
+  const { attempt, scan, timings } = done;
   try {
-    const hashing = hashInput(scan.file, options.signal);
-    hashing.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
-    const facts = readoutFacts(scan);
-    const writers = products.map((product) => new ProductWriter(set, scan, plan, product, options, facts));
-    const noise = new NoiseRange();
-    await reconstruct(scan, plan, reconstructOptions(options, save), (group, result) => {
-      noise.add(result.result);
-      for (const writer of writers) writer.add(group, result);
+    if (options.strict) failOnProblem(scan);
+    const files = await attempt.finish(scan, await hashing!, timings);
+    return {
+      folder: options.out,
+      files,
+      arrays: attempt.records,
+      discrepancies: scan.discrepancies,
+      facts: readoutFacts(scan),
+      transform: done.kernels,
+      timings: timings.take(),
+    };
+  } finally {
+    attempt.abort();
+  }
+}
+
+function failOnProblem(scan: Scan): void {
+  const problem = scan.discrepancies.find(({ severity }) => severity === "problem");
+  if (problem)
+    throw new InputError(
+      { file: scan.file },
+      problem.message,
+      "Leave out --strict to reconstruct all the same",
+    );
+}
+
+/** The outputs of one attempt. */
+class Writing implements Attempt {
+  readonly #set: OutputSet;
+  readonly #names: readonly string[];
+  readonly #writers: readonly ProductWriter[];
+  readonly #prepared: Prepared;
+  readonly #out: string;
+  readonly #noise = new NoiseRange();
+
+  constructor(file: string, facts: ScanFacts, prepared: Prepared, options: WriteOptions, kernels: Kernels) {
+    const { plan, outputs } = prepared;
+    const products = productsOf(plan, options.save ?? []);
+    const pictured = outputs.pictures ? products.filter(({ picture }) => picture !== undefined) : [];
+    this.#names = [
+      ...products.map(({ stem }) => `${stem}.npy`),
+      ...pictured.map(({ stem }) => `${stem}.png`),
+    ];
+    this.#set = new OutputSet({
+      folder: options.out,
+      names: this.#names,
+      sidecar: "image.json",
+      force: options.force ?? false,
     });
-    const pictures = writers.flatMap((writer) => writer.drawPictures());
-    const outputs = await set.seal();
-    const input = await hashing;
-    const arrays = writers.map((writer) => writer.record);
+    this.#writers = products.map(
+      (product) => new ProductWriter(this.#set, file, facts, plan, outputs, product, kernels),
+    );
+    this.#prepared = prepared;
+    this.#out = options.out;
+  }
+
+  get records() {
+    return this.#writers.map(({ record }) => record);
+  }
+
+  use(group: number, result: GroupResult): void {
+    this.#noise.add(result.result);
+    for (const writer of this.#writers) writer.add(group, result);
+  }
+
+  abort(): void {
+    this.#set.abort();
+  }
+
+  /** Draw the pictures, hash, write the sidecar and rename everything. Returns the paths. */
+  async finish(scan: Scan, input: InputHash, timings: Timings): Promise<string[]> {
+    const pictures = timings.measure("pictures", () =>
+      this.#writers.flatMap((writer) => writer.drawPictures(scan)),
+    );
+    const start = performance.now();
+    const outputs = await this.#set.seal();
+    timings.add("hash outputs", (performance.now() - start) / 1e3);
+    const { plan, recipe } = this.#prepared;
     const text = sidecar({
       scan,
       plan,
-      recipe: options.recipe,
+      recipe,
       inputSha256: input.sha256,
       inputBytes: input.bytes,
       inputName: path.basename(scan.file),
-      noise: noise.range(),
-      arrays,
+      noise: this.#noise.range(),
+      arrays: this.records,
       pictures,
       outputs,
     });
-    set.commit(`${JSON.stringify(text, null, 1)}\n`);
-    const files = [...names, "image.json"].map((name) => path.join(options.out, name));
-    return { folder: options.out, files, arrays, discrepancies: scan.discrepancies, facts };
-  } finally {
-    set.abort();
-  }
-}
-
-function reconstructOptions(options: WriteOptions, save: readonly Save[]) {
-  const { kernels, blockRows = DEFAULT_BLOCK_ROWS, signal, progress } = options;
-  return {
-    kernels,
-    blockRows,
-    keepCoils: save.includes("coils"),
-    ...(signal && { signal }),
-    ...(progress && { progress }),
-  };
-}
-
-/** Writes one product's array frame by frame, and gathers its picture. */
-class ProductWriter {
-  readonly record: {
-    file: string;
-    product: string;
-    dtype: string;
-    axes: readonly string[];
-    shape: readonly number[];
-  };
-  readonly #npy: NpyFile<"<f4" | "<c8">;
-  readonly #picture: PictureCollector | undefined;
-
-  constructor(
-    private readonly set: OutputSet,
-    private readonly scan: Scan,
-    private readonly plan: Plan,
-    private readonly product: Product,
-    private readonly options: WriteOptions,
-    facts: ReadoutFacts,
-  ) {
-    const layout = product.id === "coils" ? plan.coils : plan.result;
-    const { axes, shape } = arrayShape(scan.facts, layout);
-    const file = `${product.stem}.npy`;
-    this.record = { file, product: product.id, dtype: product.dtype, axes, shape };
-    this.#npy = set.createNpy(file, product.dtype, shape);
-    if (options.outputs.pictures && product.picture)
-      this.#picture = new PictureCollector(scan, plan, options.outputs, product, facts);
-  }
-
-  add(group: number, result: GroupResult): void {
-    const image = this.product.id === "coils" ? result.coils! : result.result;
-    const values = productValues(this.product, image, this.options.kernels);
-    const perFrame = valueCount(image.layout) / this.plan.framesPerGroup;
-    const floats = values.length / this.plan.framesPerGroup;
-    groupFrames(this.scan.facts, this.plan, group).forEach((frame, place) => {
-      const part = values.subarray(place * floats, (place + 1) * floats);
-      this.#npy.writeAt(frame * perFrame, part);
-      this.#picture?.add(frame, part);
-    });
-  }
-
-  /** Draw and write the picture; returns what the sidecar says of it. */
-  drawPictures(): object[] {
-    return (this.#picture?.draw() ?? []).map(({ name, png, pixels, record }) => {
-      this.set.write(name, png, pixels);
-      return record;
-    });
+    this.#set.commit(`${JSON.stringify(text, null, 1)}\n`);
+    return [...this.#names, "image.json"].map((name) => path.join(this.#out, name));
   }
 }
 
@@ -171,14 +182,4 @@ class NoiseRange {
   range() {
     return { whitened: this.#whitened, smallest: this.#smallest, largest: this.#largest };
   }
-}
-
-async function hashInput(file: string, signal?: AbortSignal): Promise<{ sha256: string; bytes: number }> {
-  const hash = createHash("sha256");
-  let bytes = 0;
-  for await (const piece of createReadStream(file, { highWaterMark: 1 << 20, ...(signal && { signal }) })) {
-    hash.update(piece as Buffer);
-    bytes += (piece as Buffer).length;
-  }
-  return { sha256: hash.digest("hex"), bytes };
 }

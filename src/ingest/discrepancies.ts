@@ -142,7 +142,8 @@ function checkLines(coverage: Coverage, scan: ScanFacts, problem: Say, remark: S
 
 function checkFrames(index: ScanIndex, scan: ScanFacts, problem: Say): void {
   const expected = FRAME_AXES.reduce((product, axis) => product * scan.lengths[axis], 1);
-  const missing = expected - index.frames.size;
+  const acquired = [...index.frames.values()].filter(({ lines }) => lines.size > 0).length;
+  const missing = expected - acquired;
   if (missing > 0)
     problem("missing-frames", `${missing} of ${expected} images were never acquired; they are zero`);
 }

@@ -31,6 +31,7 @@ export interface FrameLines {
   readonly counters: Readonly<Record<FrameAxis, number>>;
   /** Readouts by line, key `step_2 * 65536 + step_1`; all-zero readouts do not count. */
   readonly lines: Map<number, number>;
+  /** All readouts, the all-zero ones too. */
   readouts: number;
 }
 
@@ -160,20 +161,24 @@ export class ScanIndex {
     const backward = runsBackward(head, this.#overrides.readoutPolarity);
     const total = this.#addEnergy(head, samples, backward);
     this.#addRanges(head, backward);
+    const counters = {} as Record<FrameAxis, number>;
+    for (const axis of FRAME_AXES)
+      counters[axis] = frameCounter(head, axis, this.#overrides.averageOver);
+    const key = FRAME_AXES.map((axis) => counters[axis]).join();
+    let frame = this.frames.get(key);
+    if (!frame) {
+      frame = { counters, lines: new Map(), readouts: 0 };
+      this.frames.set(key, frame);
+    }
+    frame.readouts++;
     if (total === 0) {
       this.allZero++;
       return;
     }
     const step1 = head.counters.kspace_encode_step_1;
     this.lineEnergy[step1] = (this.lineEnergy[step1] ?? 0) + total;
-    const counters = {} as Record<FrameAxis, number>;
-    for (const axis of FRAME_AXES) counters[axis] = frameCounter(head, axis, this.#overrides.averageOver);
-    const key = FRAME_AXES.map((axis) => counters[axis]).join();
-    let frame = this.frames.get(key);
-    if (!frame) this.frames.set(key, (frame = { counters, lines: new Map(), readouts: 0 }));
     const line = head.counters.kspace_encode_step_2 * 65536 + step1;
     frame.lines.set(line, (frame.lines.get(line) ?? 0) + 1);
-    frame.readouts++;
     this.#addNeighbour(key, head, samples);
   }
 

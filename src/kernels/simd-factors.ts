@@ -16,7 +16,7 @@ interface Costed {
 }
 
 /** Time per point of the passes with kernels of their own. */
-const KERNEL_COST: Readonly<Record<number, number>> = { 2: 1.1, 3: 1.5, 4: 1.2, 5: 2.2, 7: 3.2 };
+const KERNEL_COST: Readonly<Record<number, number>> = { 2: 1.1, 3: 1.5, 4: 1.2, 5: 2.2, 7: 3.2, 8: 1.7 };
 /** A direct pass takes this times its radix. */
 const DIRECT_COST = 0.32;
 /** What a convolution takes beside its two transforms. */
@@ -81,6 +81,13 @@ function isSmooth(length: number): boolean {
 export function radices(length: number): number[] {
   const factors: number[] = [];
   let rest = length;
+  const twos = Math.log2(length & -length);
+  const mode = (globalThis as {MODE?: number}).MODE ?? 1;
+  let eights = mode === 0 ? 0 : mode === 1 ? (twos % 2 && twos >= 3 ? 1 : 0) : twos % 3 === 1 ? Math.max(0, (twos - 4) / 3) : Math.floor(twos / 3);
+  for (; eights > 0; eights--) {
+    factors.push(8);
+    rest /= 8;
+  }
   while (rest % 4 === 0) {
     factors.push(4);
     rest /= 4;

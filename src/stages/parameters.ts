@@ -11,8 +11,8 @@ const compiled = new WeakMap<object, ReturnType<Ajv["compile"]>>();
  * @throws UsageError naming the key, its value, the rule, and for an unknown key the nearest valid one
  */
 export function parseBySchema<P>(place: string, schema: object, raw: unknown, file?: string): P {
-  let validate = compiled.get(schema);
-  if (!validate) compiled.set(schema, (validate = ajv.compile(schema)));
+  const validate = compiled.get(schema) ?? ajv.compile(schema);
+  compiled.set(schema, validate);
   const value = structuredClone(raw ?? {});
   if (validate(value)) return value as P;
   throw schemaError(place, schema, validate.errors![0]!, value, file);

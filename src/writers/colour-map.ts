@@ -51,6 +51,8 @@ const BAR_GAP_PX = 20;
 const BAR_WIDTH_PX = 20;
 const STEP_PX = 2;
 const WANTED_PX = 448;
+/** A limit that float32 rounded upward is not exceeded by itself. */
+const ROUNDING = 1 + 1e-6;
 
 /** Red, green and blue (0 to 255) of a value given in shares of the limit; clipped at -1 and 1, grey for NaN. */
 export function divergingColour(share: number): readonly number[] {
@@ -77,7 +79,7 @@ export function signedMapPicture(
   }
   const limit = options.limit ?? roundUp(automaticRange("signed", values).high);
   if (!(limit > 0)) throw new RangeError(`the limit of a signed map must be above 0, not ${limit}`);
-  const beyondLimit = Array.from(values).filter((value) => Math.abs(value) > limit).length;
+  const beyondLimit = Array.from(values).filter((value) => Math.abs(value) > limit * ROUNDING).length;
 
   const size = squareSize(x, y, options.pixelMm, WANTED_PX);
   const barTitle = quantity ? `${quantity} (${unit})` : unit;

@@ -11,7 +11,7 @@ function attempt(program: string, args: readonly string[]): string | undefined {
 
 /** A Python that has h5py and NumPy: $PYTHON, the first on the path, or the system's own. */
 export function pythonWithH5py(): string | undefined {
-  const candidates = [process.env["PYTHON"], "python3", "/usr/bin/python3"];
+  const candidates = [process.env.PYTHON, "python3", "/usr/bin/python3"];
   return candidates.find((python) => python && attempt(python, ["-c", "import h5py, numpy"]) !== undefined);
 }
 

@@ -10,7 +10,7 @@ import {
   PASS_TWIDDLES, PASS_WORDS, PASS_WORK, PLAN_A, PLAN_B, PLAN_CHIRP, PLAN_FILTER, PLAN_KIND, PLAN_LENGTH, PLAN_PASSES,
   PLAN_SUBPLAN, PLAN_WORDS,
 } from "./plan-layout";
-import { pass2, pass3, pass4, pass5, pass7 } from "./radix";
+import { pass2, pass3, pass4, pass5, pass7, pass8 } from "./radix";
 
 /** Transform the points in the plan's scratch buffer A. Returns the buffer (A or B) that holds the result. */
 export function execute(plan: usize): usize {
@@ -38,6 +38,7 @@ function pass(row: usize, x: usize, y: usize): void {
   else if (method == 3) pass3(m, s, x, y, w);
   else if (method == 5) pass5(m, s, x, y, w);
   else if (method == 7) pass7(m, s, x, y, w);
+  else if (method == 8) pass8(m, s, x, y, w);
   else if (method == METHOD_DIRECT) passDirect(r, m, s, x, y, w, word(row, PASS_TABLE), word(row, PASS_WORK));
   else if (method == METHOD_RADER) passRader(r, m, s, x, y, w, row);
 }

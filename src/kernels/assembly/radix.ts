@@ -1,4 +1,4 @@
-// Stockham passes (decimation in frequency, self-sorting) of radix 2, 3, 4, 5, 7 over points of four lines:
+// Stockham passes (decimation in frequency, self-sorting) of radix 2, 3, 4, 5, 7, 8 over points of four lines:
 //   y[q + s (r p + k)] = w^(p k) * sum_j x[q + s (p + m j)] exp(-2 pi i j k / r),  w = exp(-2 pi i / (r m))
 // for p < m, q < s, k < r. Twiddles `w`: rows p = 1 .. m-1 of k = 1 .. r-1, complex (p = 0 turns nothing).
 // Source: van Loan, Computational Frameworks for the Fast Fourier Transform, SIAM 1992, section 1.7.
@@ -156,6 +156,36 @@ function row7(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
   }
 }
 
+// Radix 8: radix 4 of the even and of the odd inputs, the odd ones turned by eighths, then sums and differences.
+// @ts-ignore: decorator
+@inline
+function row8(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
+  const step = s * POINT, eighth = f32x4.splat(0.7071067811865476);
+  for (const end = x + step; x < end; x += POINT, y += POINT) {
+    let aRe = v128.load(x), aIm = v128.load(x, 16), cRe = v128.load(x + 4 * jump), cIm = v128.load(x + 4 * jump, 16);
+    let sRe = add(aRe, cRe), sIm = add(aIm, cIm), dRe = sub(aRe, cRe), dIm = sub(aIm, cIm);
+    let bRe = v128.load(x + 2 * jump), bIm = v128.load(x + 2 * jump, 16), eRe = v128.load(x + 6 * jump), eIm = v128.load(x + 6 * jump, 16);
+    let tRe = add(bRe, eRe), tIm = add(bIm, eIm), uRe = sub(bRe, eRe), uIm = sub(bIm, eIm);
+    const e0Re = add(sRe, tRe), e0Im = add(sIm, tIm), e2Re = sub(sRe, tRe), e2Im = sub(sIm, tIm);
+    const e1Re = add(dRe, uIm), e1Im = sub(dIm, uRe), e3Re = sub(dRe, uIm), e3Im = add(dIm, uRe);
+    aRe = v128.load(x + jump); aIm = v128.load(x + jump, 16); cRe = v128.load(x + 5 * jump); cIm = v128.load(x + 5 * jump, 16);
+    sRe = add(aRe, cRe); sIm = add(aIm, cIm); dRe = sub(aRe, cRe); dIm = sub(aIm, cIm);
+    bRe = v128.load(x + 3 * jump); bIm = v128.load(x + 3 * jump, 16); eRe = v128.load(x + 7 * jump); eIm = v128.load(x + 7 * jump, 16);
+    tRe = add(bRe, eRe); tIm = add(bIm, eIm); uRe = sub(bRe, eRe); uIm = sub(bIm, eIm);
+    const o0Re = add(sRe, tRe), o0Im = add(sIm, tIm), o2Re = sub(sRe, tRe), o2Im = sub(sIm, tIm);
+    put(y, add(e0Re, o0Re), add(e0Im, o0Im));
+    out(turn, y + 4 * step, sub(e0Re, o0Re), sub(e0Im, o0Im), w + 24);
+    pair(turn, y + 2 * step, y + 6 * step, e2Re, e2Im, o2Re, o2Im, w + 8, w + 40);
+    const o1Re = add(dRe, uIm), o1Im = sub(dIm, uRe), o3Re = sub(dRe, uIm), o3Im = add(dIm, uRe);
+    const pRe = mul(eighth, add(o1Re, o1Im)), pIm = mul(eighth, sub(o1Im, o1Re));
+    out(turn, y + step, add(e1Re, pRe), add(e1Im, pIm), w);
+    out(turn, y + 5 * step, sub(e1Re, pRe), sub(e1Im, pIm), w + 32);
+    const qRe = mul(eighth, sub(o3Im, o3Re)), qIm = mul(eighth, add(o3Re, o3Im)); // minus the turned one's imaginary part
+    out(turn, y + 3 * step, add(e3Re, qRe), sub(e3Im, qIm), w + 16);
+    out(turn, y + 7 * step, sub(e3Re, qRe), add(e3Im, qIm), w + 48);
+  }
+}
+
 export function pass2(m: usize, s: usize, x: usize, y: usize, w: usize): void {
   const jump = m * s * POINT, last = x + jump;
   row2(false, s, x, y, jump, w);
@@ -184,4 +214,10 @@ export function pass7(m: usize, s: usize, x: usize, y: usize, w: usize): void {
   const jump = m * s * POINT, last = x + jump;
   row7(false, s, x, y, jump, w);
   for (x += s * POINT, y += 7 * s * POINT; x < last; x += s * POINT, y += 7 * s * POINT, w += 48) row7(true, s, x, y, jump, w);
+}
+
+export function pass8(m: usize, s: usize, x: usize, y: usize, w: usize): void {
+  const jump = m * s * POINT, last = x + jump;
+  row8(false, s, x, y, jump, w);
+  for (x += s * POINT, y += 8 * s * POINT; x < last; x += s * POINT, y += 8 * s * POINT, w += 56) row8(true, s, x, y, jump, w);
 }

@@ -1,0 +1,108 @@
+import { existsSync } from "node:fs";
+import { fileURLToPath } from "node:url";
+import { Worker } from "node:worker_threads";
+import type { SimdPlace } from "../kernels/simd-transform.js";
+import type { ScanFacts } from "../physics/scan.js";
+import type { Recipe } from "../recipe/recipe.js";
+import type { Job, JobReply, JobRunner } from "./jobs.js";
+
+/** What a worker needs to make its own runner. */
+export interface WorkerSetup {
+  readonly place: SimdPlace;
+  readonly facts: ScanFacts;
+  readonly recipe: Recipe;
+}
+
+export type ToWorker = { readonly setup: WorkerSetup } | { readonly id: number; readonly job: Job };
+export type FromWorker = { readonly id: number } & (
+  | { readonly reply: JobReply }
+  | { readonly error: unknown }
+);
+
+/** Jobs that wait at a worker beside the one it does: enough that it never idles while the main thread reads. */
+const AHEAD = 2;
+
+interface Hand {
+  readonly worker: Worker;
+  busy: number;
+}
+
+/**
+ * The threads that do jobs: workers, and the main thread itself, which helps where all of them are busy.
+ * Who does a job changes nothing about its result.
+ */
+export class Crew {
+  readonly #hands: Hand[];
+  readonly #own: JobRunner;
+  readonly #waiting = new Map<
+    number,
+    { resolve(reply: JobReply): void; reject(error: unknown): void; hand: Hand }
+  >();
+  #next = 0;
+  #failure: unknown;
+
+  /** @param workers started before, with `startWorkers`; each gets its setup now */
+  constructor(own: JobRunner, workers: readonly Worker[], setups: readonly WorkerSetup[]) {
+    this.#own = own;
+    this.#hands = workers.map((worker) => ({ worker, busy: 0 }));
+    this.#hands.forEach(({ worker }, i) => {
+      worker.on("message", (message: FromWorker) => this.#hear(message));
+      worker.on("error", (error) => this.#fail(error));
+      worker.postMessage({ setup: setups[i]! } satisfies ToWorker);
+    });
+  }
+
+  /** Have a job done: by the least busy worker, or here and now where none has room. */
+  submit(job: Job): Promise<JobReply> {
+    if (this.#failure) return Promise.reject(this.#failure);
+    const hand = this.#hands.reduce<Hand | undefined>(
+      (best, each) => (each.busy < AHEAD && (!best || each.busy < best.busy) ? each : best),
+      undefined,
+    );
+    if (!hand) return new Promise((resolve) => resolve(this.#own.run(job)));
+    hand.busy++;
+    const id = this.#next++;
+    return new Promise((resolve, reject) => {
+      this.#waiting.set(id, { resolve, reject, hand });
+      hand.worker.postMessage({ id, job } satisfies ToWorker);
+    });
+  }
+
+  #hear(message: FromWorker): void {
+    const entry = this.#waiting.get(message.id);
+    if (!entry) return;
+    this.#waiting.delete(message.id);
+    entry.hand.busy--;
+    if ("reply" in message) entry.resolve(message.reply);
+    else entry.reject(message.error);
+  }
+
+  /** A worker died: nothing that it was to do will ever come. */
+  #fail(error: unknown): void {
+    this.#failure = error;
+    for (const { reject } of this.#waiting.values()) reject(error);
+    this.#waiting.clear();
+  }
+}
+
+/**
+ * Start worker threads early: they load while the HDF5 library does. They wait for their setup, and do not keep the
+ * process alive. None where the bundled worker is missing (the sources are run without a build).
+ */
+export function startWorkers(count: number): Worker[] {
+  const file = workerFile();
+  if (file === undefined) return [];
+  return Array.from({ length: count }, () => {
+    const worker = new Worker(file);
+    worker.unref();
+    return worker;
+  });
+}
+
+/** The bundled worker, beside the bundle that this code is in, or in dist where the sources are run. */
+export function workerFile(name = "worker.js"): string | undefined {
+  const here = fileURLToPath(import.meta.url);
+  const folder = here.endsWith(".ts") ? "../../dist/" : here.includes("/chunks/") ? "../" : "./";
+  const file = fileURLToPath(new URL(folder + name, import.meta.url));
+  return existsSync(file) ? file : undefined;
+}

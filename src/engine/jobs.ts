@@ -1,0 +1,116 @@
+import type { Kernels } from "../kernels/kernels.js";
+import { currentBuffer } from "../kernels/sample-memory.js";
+import type { ScanFacts } from "../physics/scan.js";
+import { axisLength, type Frame, floatCount, type NoiseState, type SideOutput } from "../stages/stage.js";
+import { Pipeline } from "./pipeline.js";
+import type { Plan } from "./plan.js";
+import type { Timings } from "./timings.js";
+
+/** Floats in the shared sample memory, by address: what threads tell each other instead of arrays. */
+export interface Span {
+  readonly byte: number;
+  readonly floats: number;
+}
+
+/** Run the readout stages on a block of decoded readouts. */
+export interface BlockJob {
+  readonly kind: "block";
+  /** [line, coil, encoded sample]. */
+  readonly samples: Span;
+  readonly lines: number;
+  /**
+   * Byte address of each line's row of coil 0 in its group: rows are written there. Undefined where a line comes
+   * again: the rows then go back to the start of `samples`, for the main thread to add in the order of the file.
+   */
+  readonly targets: Float64Array | undefined;
+}
+
+/** Run the other stages on a complete group. */
+export interface GroupJob {
+  readonly kind: "group";
+  readonly data: Span;
+  readonly counts: Uint16Array;
+  readonly result: Span;
+  /** Where the images before the last combination go, if they are wanted. */
+  readonly coils: Span | undefined;
+}
+
+export type Job = BlockJob | GroupJob;
+
+export interface JobReply {
+  /** Of a group job. */
+  readonly noise?: NoiseState;
+  readonly sideOutputs?: readonly SideOutput[];
+  readonly timings: Readonly<Record<string, number>>;
+}
+
+/** Does jobs with one thread's kernels on the shared memory; the same code on the main thread and in workers. */
+export class JobRunner {
+  readonly #plan: Plan;
+  readonly #scan: ScanFacts;
+  readonly #kernels: Kernels;
+  readonly #memory: WebAssembly.Memory;
+  readonly #pipeline: Pipeline;
+  readonly #timings: Timings;
+
+  constructor(plan: Plan, scan: ScanFacts, kernels: Kernels, memory: WebAssembly.Memory, timings: Timings) {
+    this.#plan = plan;
+    this.#scan = scan;
+    this.#kernels = kernels;
+    this.#memory = memory;
+    this.#timings = timings;
+    this.#pipeline = new Pipeline(plan, scan, kernels, timings);
+  }
+
+  run(job: Job): JobReply {
+    const reply = job.kind === "block" ? this.#runBlock(job) : this.#runGroup(job);
+    return { ...reply, timings: this.#timings.take() };
+  }
+
+  #view({ byte, floats }: Span): Float32Array {
+    return new Float32Array(currentBuffer(this.#memory), byte, floats);
+  }
+
+  #runBlock({ samples, lines, targets }: BlockJob): Omit<JobReply, "timings"> {
+    const data = this.#view(samples);
+    const { channels, encoded } = this.#scan;
+    const done = this.#pipeline.runReadouts({ data, lines, samples: encoded.matrix.x, coils: channels });
+    const { placed } = this.#plan;
+    const row = 2 * done.samples;
+    if (!targets) data.set(done.data.subarray(0, lines * channels * row));
+    else {
+      const whole = new Float32Array(currentBuffer(this.#memory));
+      const coilStep = axisLength(placed, "z") * axisLength(placed, "y") * row;
+      for (let line = 0; line < lines; line++)
+        for (let coil = 0; coil < channels; coil++) {
+          const from = (line * channels + coil) * row;
+          whole.set(done.data.subarray(from, from + row), targets[line]! / 4 + coil * coilStep);
+        }
+    }
+    if (done.data !== data) this.#kernels.transform.release(done.data);
+    return {};
+  }
+
+  #runGroup(job: GroupJob): Omit<JobReply, "timings"> {
+    const data = this.#view(job.data);
+    this.#pipeline.average(data, job.counts);
+    const keep = job.coils && this.#view(job.coils);
+    const { result, sideOutputs } = this.#pipeline.runGroup(data, { counts: job.counts }, keep);
+    this.#view(job.result).set(result.data);
+    if (result.data.byteOffset !== data.byteOffset) this.#kernels.transform.release(result.data);
+    return { noise: result.noise, sideOutputs };
+  }
+}
+
+/** A group's result as the main thread sees it: layouts from the plan, values in the shared memory. */
+export function frameAt(
+  plan: Plan,
+  memory: WebAssembly.Memory,
+  span: Span,
+  which: "result" | "coils",
+  noise: NoiseState,
+): Frame {
+  const layout = plan[which];
+  const data = new Float32Array(currentBuffer(memory), span.byte, floatCount(layout));
+  return { data, layout, sampling: undefined, noise };
+}

@@ -1,0 +1,205 @@
+import { statSync } from "node:fs";
+import { availableParallelism, totalmem } from "node:os";
+import type { Worker } from "node:worker_threads";
+import { InputError } from "../errors.js";
+import { DEFAULT_BLOCK_ROWS, RawFile } from "../ingest/raw-file.js";
+import { ScanIndex } from "../ingest/scan-index.js";
+import type { Kernels } from "../kernels/kernels.js";
+import { createPlainKernels } from "../kernels/plain-kernels.js";
+import { SampleMemory } from "../kernels/sample-memory.js";
+import { createSimdKernels } from "../kernels/simd-kernels.js";
+import { simdSupported } from "../kernels/simd-module.js";
+import { createSimdPlace } from "../kernels/simd-place.js";
+import { FRAME_AXES, SPATIAL_AXES } from "../physics/layout.js";
+import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
+import type { Recipe } from "../recipe/recipe.js";
+import { axisLength } from "../stages/stage.js";
+import { Crew, startWorkers, type WorkerSetup } from "./crew.js";
+import { JobRunner } from "./jobs.js";
+import { groupOf, type Plan } from "./plan.js";
+import { Contradiction, confirmPreview, previewReadouts, previewScan } from "./preview.js";
+import { type GroupResult, type Pass, runPasses } from "./reconstruct.js";
+import { completeOverrides, indexRaw, type ReadOptions, type Scan, scanOf } from "./scan.js";
+import { Timings } from "./timings.js";
+
+/** How a reconstruction is carried out; none of it changes a result. */
+export interface RunOptions extends ReadOptions {
+  /** Threads that compute. Default: the cores of the machine. */
+  readonly workers?: number;
+  /** Most memory for samples. Default: a quarter of the machine's. */
+  readonly memoryBytes?: number;
+  /** Default: SIMD where the machine has it, else plain. The two agree to rounding, not to the bit. */
+  readonly transform?: "simd" | "plain";
+  /** Whether the images before the last combination are wanted. */
+  readonly keepCoils?: boolean;
+}
+
+export interface PlannedRecipe {
+  readonly plan: Plan;
+  readonly recipe: Recipe;
+}
+
+/** Takes the results of one attempt. An attempt that the file contradicts is aborted, and another begun. */
+export interface Attempt {
+  use(group: number, result: GroupResult): void;
+  abort(): void;
+}
+
+export interface RunResult<A extends Attempt> extends PlannedRecipe {
+  readonly attempt: A;
+  readonly scan: Scan;
+  readonly kernels: Kernels["id"];
+  readonly timings: Timings;
+}
+
+/** Below this many bytes a file is done before a worker has started. */
+const WORTH_WORKERS_BYTES = 24e6;
+
+/**
+ * Reconstruct a file: in one pass where its header tells what its readouts will be, else after indexing it.
+ * @param prepare the recipe for what the scan is, worked out
+ * @param begin where results go; called again if the first attempt is contradicted
+ * @throws InputError, UsageError; the signal's reason when aborted
+ */
+export async function run<A extends Attempt>(
+  file: string,
+  options: RunOptions,
+  prepare: (facts: ScanFacts) => PlannedRecipe,
+  begin: (facts: ScanFacts, planned: PlannedRecipe, kernels: Kernels) => A,
+): Promise<RunResult<A>> {
+  const overrides = completeOverrides(options);
+  const hands = new Hands(file, options);
+  const raw = await RawFile.open(file, overrides.group).catch((error) => {
+    hands.dismiss();
+    throw error;
+  });
+  try {
+    const foreseen = previewScan(raw, overrides, options.blockRows ?? DEFAULT_BLOCK_ROWS);
+    if (foreseen) {
+      const result = await attemptRun(raw, { foreseen, overrides }, options, hands, prepare, begin);
+      if (result) return result;
+    }
+    const scan = await indexRaw(raw, overrides, options);
+    return (await attemptRun(raw, { scan, overrides }, options, hands, prepare, begin))!;
+  } finally {
+    raw.close();
+    hands.dismiss();
+  }
+}
+
+interface Knowledge {
+  readonly overrides: ScanOverrides;
+  /** What the header lets expect, to be confirmed by the pass itself; or what an earlier pass found. */
+  readonly foreseen?: ScanFacts;
+  readonly scan?: Scan;
+}
+
+/** One attempt; undefined where the file contradicts what was foreseen. */
+async function attemptRun<A extends Attempt>(
+  raw: RawFile,
+  { foreseen, scan, overrides }: Knowledge,
+  options: RunOptions,
+  hands: Hands,
+  prepare: (facts: ScanFacts) => PlannedRecipe,
+  begin: (facts: ScanFacts, planned: PlannedRecipe, kernels: Kernels) => A,
+): Promise<RunResult<A> | undefined> {
+  const facts = scan?.facts ?? foreseen!;
+  const planned = prepare(facts);
+  const { plan, recipe } = planned;
+  const { memory, kernels, crew, timings } = hands.setUp(plan, facts, recipe);
+  const attempt = begin(facts, planned, kernels);
+  const index = scan ? undefined : new ScanIndex(raw.file, raw.header, overrides);
+  const pass: Pass = {
+    raw,
+    scan: facts,
+    plan,
+    crew,
+    memory,
+    timings,
+    index,
+    blockRows: options.blockRows ?? DEFAULT_BLOCK_ROWS,
+    keepCoils: options.keepCoils ?? false,
+    budgetBytes: options.memoryBytes ?? totalmem() / 4,
+    expected: scan ? countedReadouts(scan, plan) : () => previewReadouts(facts, raw, plan.framesPerGroup),
+    signal: options.signal,
+    progress: options.progress ?? (() => undefined),
+  };
+  try {
+    await runPasses(pass, (group, result) => attempt.use(group, result));
+    const found = scan ?? scanOf(raw, index!, overrides);
+    if (foreseen) confirmPreview(foreseen, found.facts);
+    return { attempt, scan: found, plan, recipe, kernels: kernels.id, timings };
+  } catch (error) {
+    attempt.abort();
+    // A counter beyond what was foreseen is an InputError only if the whole index says so too.
+    if (foreseen && (error instanceof Contradiction || error instanceof InputError)) return undefined;
+    throw error;
+  }
+}
+
+/** Readouts of each group, from the index. */
+function countedReadouts({ facts, index }: Scan, plan: Plan): (group: number) => number {
+  const counted = new Map<number, number>();
+  for (const { counters, readouts } of index.frames.values()) {
+    const frame = FRAME_AXES.reduce((at, axis) => at * facts.lengths[axis] + counters[axis], 0);
+    const { group } = groupOf(facts, plan.together, frame);
+    counted.set(group, (counted.get(group) ?? 0) + readouts);
+  }
+  return (group) => counted.get(group) ?? 0;
+}
+
+/** The threads of a run. Workers start with it, so that they load while the HDF5 library does. */
+class Hands {
+  readonly #useSimd: boolean;
+  readonly #blockRows: number;
+  #workers: Worker[];
+
+  constructor(file: string, options: RunOptions) {
+    this.#useSimd = options.transform !== "plain" && simdSupported();
+    this.#blockRows = options.blockRows ?? DEFAULT_BLOCK_ROWS;
+    const count = (options.workers ?? availableParallelism()) - 1; // the main thread is one of them
+    const bytes = statSync(file, { throwIfNoEntry: false })?.size ?? 0;
+    this.#workers = this.#useSimd && bytes >= WORTH_WORKERS_BYTES ? startWorkers(count) : [];
+  }
+
+  /** Memory, kernels and crew for one attempt. */
+  setUp(plan: Plan, facts: ScanFacts, recipe: Recipe) {
+    const memory = new SampleMemory();
+    const kernels = this.#useSimd ? createSimdKernels(memory) : createPlainKernels();
+    const timings = new Timings();
+    const own = new JobRunner(plan, facts, kernels, memory.memory, new Timings());
+    const work = { lengths: transformLengths(plan), channels: facts.channels };
+    const setups = this.#workers.map((): WorkerSetup => {
+      const place = createSimdPlace(memory, work, workspaceBytes(plan, this.#blockRows));
+      return { place, facts, recipe };
+    });
+    return { memory, kernels, timings, crew: new Crew(own, this.#workers, setups) };
+  }
+
+  dismiss(): void {
+    for (const worker of this.#workers) void worker.terminate();
+    this.#workers = [];
+  }
+}
+
+/** Every length that a stage of the plan may transform. */
+function transformLengths(plan: Plan): Set<number> {
+  const lengths = new Set<number>();
+  for (const { input, output } of plan.stages)
+    for (const axis of SPATIAL_AXES) {
+      lengths.add(axisLength(input, axis));
+      lengths.add(axisLength(output, axis));
+      // fit-matrix transforms what its crop leaves
+      lengths.add(Math.round((axisLength(input, axis) * output.fovMm[axis]) / input.fovMm[axis]));
+    }
+  return lengths;
+}
+
+/** Memory that one thread's stages take at most. */
+function workspaceBytes(plan: Plan, blockRows: number): number {
+  const lines = axisLength(plan.placed, "coil") * axisLength(plan.placed, "x") * blockRows * 8;
+  const groups = plan.stages
+    .filter(({ stage }) => stage.kind !== "readout")
+    .map(({ bytesIn, bytesOut, workBytes }) => bytesIn + bytesOut + workBytes);
+  return Math.max(lines, ...groups);
+}

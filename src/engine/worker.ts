@@ -1,0 +1,30 @@
+import { parentPort } from "node:worker_threads";
+import { createSimdKernels } from "../kernels/simd-kernels.js";
+import type { FromWorker, ToWorker } from "./crew.js";
+import { JobRunner } from "./jobs.js";
+import { planRecipe } from "./plan.js";
+import { Timings } from "./timings.js";
+
+/** A worker thread: gets its setup once, then jobs; it works on the shared memory and answers with what is not in it. */
+const port = parentPort!;
+let runner: JobRunner | undefined;
+
+port.on("message", (message: ToWorker) => {
+  if ("setup" in message) {
+    const { place, facts, recipe } = message.setup;
+    runner = new JobRunner(
+      planRecipe(facts, recipe),
+      facts,
+      createSimdKernels(place),
+      place.memory,
+      new Timings(),
+    );
+    return;
+  }
+  const { id, job } = message;
+  try {
+    port.postMessage({ id, reply: runner!.run(job) } satisfies FromWorker);
+  } catch (error) {
+    port.postMessage({ id, error } satisfies FromWorker);
+  }
+});
