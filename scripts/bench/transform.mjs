@@ -1,7 +1,7 @@
 // Speed of the SIMD transform against scipy.fft (complex64, one thread each), 2-D, several images at a time:
 //   node scripts/bench/transform.mjs [python]
-// The two take turns; a figure is the median of the turns. GFLOP/s counts 5 n log2(n) operations a transform. Ours is
-// centred and scaled besides, image by image, columns first: in place, and from one array to another.
+// The two take turns; a figure is the median of the turns. GFLOP/s counts 5 n log2(n) operations a transform. In place,
+// and from one array to another; ours is centred besides, and works image by image, columns first.
 import { spawn } from "node:child_process";
 import { createInterface } from "node:readline";
 import { fileURLToPath } from "node:url";
@@ -41,7 +41,7 @@ const answers = createInterface({ input: python.stdout })[Symbol.asyncIterator](
 
 async function scipySeconds(height, width, repeats) {
   python.stdin.write(`${height} ${width} ${IMAGES} ${repeats}\n`);
-  return Number((await answers.next()).value);
+  return (await answers.next()).value.split(" ").map(Number);
 }
 
 function simdSeconds(source, target, height, width, repeats) {
@@ -74,7 +74,8 @@ function simdSeconds(source, target, height, width, repeats) {
 
 const median = (list) => list.sort((a, b) => a - b)[Math.floor(list.length / 2)];
 
-console.log("size      scipy  in place  (ratio)  to another  (ratio)   GFLOP/s, medians");
+console.log("GFLOP/s    in place             to another array");
+console.log("size       scipy   ours ratio   scipy   ours ratio");
 for (const [height, width] of SIZES) {
   const source = engine.allocate(2 * IMAGES * height * width);
   const target = engine.allocate(source.length);
@@ -84,19 +85,22 @@ for (const [height, width] of SIZES) {
     });
   fill();
   const repeats = Math.max(1, Math.round(SECONDS_A_TURN / simdSeconds(source, target, height, width, 3)));
-  const seconds = { scipy: [], inside: [], across: [] };
+  const turns = { theirsInside: [], theirsAcross: [], inside: [], across: [] };
   for (let turn = 0; turn < TURNS; turn++) {
-    seconds.scipy.push(await scipySeconds(height, width, repeats));
-    seconds.inside.push(simdSeconds(source, source, height, width, repeats));
-    seconds.across.push(simdSeconds(source, target, height, width, repeats));
+    const [inside, across] = await scipySeconds(height, width, repeats);
+    turns.theirsInside.push(inside);
+    turns.theirsAcross.push(across);
+    fill(); // unitary, but rounding would still drift
+    turns.inside.push(simdSeconds(source, source, height, width, repeats));
+    turns.across.push(simdSeconds(source, target, height, width, repeats));
   }
-  const [scipy, inside, across] = [seconds.scipy, seconds.inside, seconds.across].map(median);
   const gflops = (time) =>
-    ((5 * IMAGES * height * width * Math.log2(height * width)) / time / 1e9).toFixed(1).padStart(5);
-  const ratio = (time) => `(${(scipy / time).toFixed(2)})`;
-  console.log(
-    `${height}x${width}   ${gflops(scipy)}    ${gflops(inside)}   ${ratio(inside)}      ${gflops(across)}   ${ratio(across)}`,
-  );
+    ((5 * IMAGES * height * width * Math.log2(height * width)) / time / 1e9).toFixed(1).padStart(7);
+  const columns = (theirs, ours) =>
+    `${gflops(theirs)}${gflops(ours)}${(theirs / ours).toFixed(2).padStart(6)}`;
+  const inside = columns(median(turns.theirsInside), median(turns.inside));
+  const across = columns(median(turns.theirsAcross), median(turns.across));
+  console.log(`${`${height}x${width}`.padEnd(9)}${inside} ${across}`);
   engine.release(source);
   engine.release(target);
 }

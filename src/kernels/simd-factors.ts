@@ -77,14 +77,12 @@ function isSmooth(length: number): boolean {
   return rest === 1;
 }
 
-/** Factors of `length` in the order of the passes: at most one 2, then 4s, then odd primes, rising. */
+/** Factors of `length` in the order of the passes: at most one 2 or 8, then 4s, then odd primes, rising. */
 export function radices(length: number): number[] {
   const factors: number[] = [];
   let rest = length;
-  const twos = Math.log2(length & -length);
-  const mode = (globalThis as {MODE?: number}).MODE ?? 1;
-  let eights = mode === 0 ? 0 : mode === 1 ? (twos % 2 && twos >= 3 ? 1 : 0) : twos % 3 === 1 ? Math.max(0, (twos - 4) / 3) : Math.floor(twos / 3);
-  for (; eights > 0; eights--) {
+  // An 8 in place of a 2 and a 4 saves a pass; all the twos in 8s are not faster, for want of registers.
+  if (Math.log2(length & -length) % 2 === 1 && rest % 8 === 0) {
     factors.push(8);
     rest /= 8;
   }
