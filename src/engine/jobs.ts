@@ -77,15 +77,19 @@ export class JobRunner {
     const done = this.#pipeline.runReadouts({ data, lines, samples: encoded.matrix.x, coils: channels });
     const { placed } = this.#plan;
     const row = 2 * done.samples;
-    if (!targets) data.set(done.data.subarray(0, lines * channels * row));
+    // Rows are copied within the whole memory: a view for each would be thousands of objects a block.
+    const whole = new Float32Array(currentBuffer(this.#memory));
+    const from = done.data.buffer === whole.buffer ? done.data.byteOffset / 4 : undefined;
+    const put = (to: number, start: number, floats: number) => {
+      if (from === undefined) whole.set(done.data.subarray(start, start + floats), to);
+      else whole.copyWithin(to, from + start, from + start + floats);
+    };
+    if (!targets) put(samples.byte / 4, 0, lines * channels * row);
     else {
-      const whole = new Float32Array(currentBuffer(this.#memory));
       const coilStep = axisLength(placed, "z") * axisLength(placed, "y") * row;
       for (let line = 0; line < lines; line++)
-        for (let coil = 0; coil < channels; coil++) {
-          const from = (line * channels + coil) * row;
-          whole.set(done.data.subarray(from, from + row), targets[line]! / 4 + coil * coilStep);
-        }
+        for (let coil = 0; coil < channels; coil++)
+          put(targets[line]! / 4 + coil * coilStep, (line * channels + coil) * row, row);
     }
     if (done.data !== data) this.#kernels.transform.release(done.data);
     return {};

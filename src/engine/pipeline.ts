@@ -99,7 +99,7 @@ export class Pipeline {
     return {
       scan: this.#scan,
       kernels: this.#kernels,
-      allocate: (floats) => transform.allocate(floats),
+      allocate: (floats) => transform.allocate(floats, false),
       release: (data) => transform.release(data),
       emit: (output) => sideOutputs.push(output),
     };

@@ -40,16 +40,18 @@ export class ProductWriter {
       this.#picture = new PictureCollector(file, facts, plan, outputs, product);
   }
 
-  add(group: number, result: GroupResult): void {
+  /** Write a group's images; they must not change before the promise settles. */
+  async add(group: number, result: GroupResult): Promise<void> {
     const image = this.product.id === "coils" ? result.coils! : result.result;
     const values = productValues(this.product, image, this.kernels);
     const perFrame = valueCount(image.layout) / this.plan.framesPerGroup;
     const floats = values.length / this.plan.framesPerGroup;
-    groupFrames(this.facts, this.plan, group).forEach((frame, place) => {
+    const writes = groupFrames(this.facts, this.plan, group).map((frame, place) => {
       const part = values.subarray(place * floats, (place + 1) * floats);
-      this.#npy.writeAt(frame * perFrame, part);
       this.#picture?.add(frame, part);
+      return this.#npy.writeAt(frame * perFrame, part);
     });
+    await Promise.all(writes);
   }
 
   /** Draw and write the picture; returns what the sidecar says of it. */

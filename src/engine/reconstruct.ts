@@ -48,11 +48,11 @@ const BLOCKS_AHEAD = 4;
  */
 export async function runPasses(
   pass: Pass,
-  use: (group: number, result: GroupResult) => void,
+  use: (group: number, result: GroupResult) => Promise<void>,
 ): Promise<void> {
   const finished = new Set<number>();
-  const useAndNote = (group: number, result: GroupResult) => {
-    use(group, result);
+  const useAndNote = async (group: number, result: GroupResult) => {
+    await use(group, result);
     finished.add(group);
   };
   let { index } = pass;
@@ -65,14 +65,14 @@ export async function runPasses(
 class PassRun {
   readonly #pass: Pass;
   readonly #store: GroupStore;
-  readonly #use: (group: number, result: GroupResult) => void;
+  readonly #use: (group: number, result: GroupResult) => Promise<void>;
   /** Blocks are finished in the order of the file, whoever processed them. */
   #tail: Promise<void> = Promise.resolve();
   #blocksAhead = 0;
   readonly #groups = new Set<Promise<void>>();
   #failure: unknown;
 
-  constructor(pass: Pass, finished: ReadonlySet<number>, use: (group: number, result: GroupResult) => void) {
+  constructor(pass: Pass, finished: ReadonlySet<number>, use: (group: number, result: GroupResult) => Promise<void>) {
     this.#pass = pass;
     this.#use = use;
     const { plan, scan, memory, budgetBytes, expected } = pass;
@@ -120,7 +120,7 @@ class PassRun {
     if (index) timings.measure("index", () => index.add(block));
     const { lines, touched } = this.#destinations(block);
     const perLine = 2 * scan.channels * scan.encoded.matrix.x;
-    const samples = lines.length ? memory.allocate(lines.length * perLine) : undefined;
+    const samples = lines.length ? memory.allocate(lines.length * perLine, false) : undefined;
     if (samples)
       timings.measure("decode", () => {
         for (const [i, { row }] of lines.entries())
@@ -207,8 +207,8 @@ class PassRun {
 
   async #runGroup(open: OpenGroup): Promise<void> {
     const { plan, memory, keepCoils, crew, timings } = this.#pass;
-    const result = memory.allocate(floatCount(plan.result));
-    const coils = keepCoils ? memory.allocate(floatCount(plan.coils)) : undefined;
+    const result = memory.allocate(floatCount(plan.result), false);
+    const coils = keepCoils ? memory.allocate(floatCount(plan.coils), false) : undefined;
     const span = (array: Float32Array) => ({ byte: array.byteOffset, floats: array.length });
     const reply: JobReply = await crew.submit({
       kind: "group",
@@ -218,13 +218,13 @@ class PassRun {
       coils: coils && span(coils),
     });
     timings.addAll(reply.timings);
-    timings.measure("write", () =>
-      this.#use(open.group, {
-        result: frameAt(plan, memory.memory, span(result), "result", reply.noise!),
-        coils: coils && frameAt(plan, memory.memory, span(coils), "coils", reply.noise!),
-        sideOutputs: reply.sideOutputs!,
-      }),
-    );
+    const start = performance.now();
+    await this.#use(open.group, {
+      result: frameAt(plan, memory.memory, span(result), "result", reply.noise!),
+      coils: coils && frameAt(plan, memory.memory, span(coils), "coils", reply.noise!),
+      sideOutputs: reply.sideOutputs!,
+    });
+    timings.add("write", (performance.now() - start) / 1e3);
     memory.release(result);
     if (coils) memory.release(coils);
     this.#store.release(open);

@@ -41,7 +41,8 @@ export interface PlannedRecipe {
 
 /** Takes the results of one attempt. An attempt that the file contradicts is aborted, and another begun. */
 export interface Attempt {
-  use(group: number, result: GroupResult): void;
+  /** The result's arrays may be reused once the promise has settled. */
+  use(group: number, result: GroupResult): Promise<void>;
   abort(): void;
 }
 

@@ -4,8 +4,9 @@ import type { Kernels } from "../kernels/kernels.js";
 import type { Discrepancy, ScanFacts } from "../physics/scan.js";
 import type { OutputSettings } from "../recipe/recipe.js";
 import type { Frame } from "../stages/stage.js";
+import type { FileHashes } from "../writers/output-file.js";
 import { OutputSet } from "../writers/output-set.js";
-import { hashInput, type InputHash } from "./input-hash.js";
+import { Hasher } from "./hasher.js";
 import { ProductWriter } from "./product-writer.js";
 import { productsOf, type Save } from "./products.js";
 import { type ReadoutFacts, readoutFacts } from "./readout-facts.js";
@@ -56,35 +57,35 @@ export async function writeReconstruction(
   prepare: (facts: ScanFacts) => Prepared,
   options: WriteOptions,
 ): Promise<WrittenReconstruction> {
-  let hashing: Promise<InputHash> | undefined;
-  const done = await run(
-    file,
-    { ...options, keepCoils: options.save?.includes("coils") ?? false },
-    prepare,
-    (facts, planned, kernels) => {
-      if (!hashing) {
-        hashing = hashInput(file, options.signal);
-        hashing.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
+  const hasher = new Hasher(file);
+  let input: Promise<FileHashes> | undefined;
+  let attempt: Writing | undefined;
+  try {
+    const runOptions = { ...options, keepCoils: options.save?.includes("coils") ?? false };
+    const done = await run(file, runOptions, prepare, (facts, planned, kernels) => {
+      if (!input) {
+        input = hasher.hash(file);
+        input.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
       }
       // `planned` is what `prepare` made.
-      return new Writing(file, facts, planned as Prepared, options, kernels);
-    },
-  );
-  const { attempt, scan, timings } = done;
-  try {
+      attempt = new Writing(file, facts, planned as Prepared, options, kernels, hasher);
+      return attempt;
+    });
+    const { scan, timings } = done;
     if (options.strict) failOnProblem(scan);
-    const files = await attempt.finish(scan, await hashing!, timings);
+    const files = await done.attempt.finish(scan, input!, timings);
     return {
       folder: options.out,
       files,
-      arrays: attempt.records,
+      arrays: done.attempt.records,
       discrepancies: scan.discrepancies,
       facts: readoutFacts(scan),
       transform: done.kernels,
       timings: timings.take(),
     };
   } finally {
-    attempt.abort();
+    attempt?.abort();
+    hasher.dismiss();
   }
 }
 
@@ -107,7 +108,14 @@ class Writing implements Attempt {
   readonly #out: string;
   readonly #noise = new NoiseRange();
 
-  constructor(file: string, facts: ScanFacts, prepared: Prepared, options: WriteOptions, kernels: Kernels) {
+  constructor(
+    file: string,
+    facts: ScanFacts,
+    prepared: Prepared,
+    options: WriteOptions,
+    kernels: Kernels,
+    hasher: Hasher,
+  ) {
     const { plan, outputs } = prepared;
     const products = productsOf(plan, options.save ?? []);
     const pictured = outputs.pictures ? products.filter(({ picture }) => picture !== undefined) : [];
@@ -120,6 +128,7 @@ class Writing implements Attempt {
       names: this.#names,
       sidecar: "image.json",
       force: options.force ?? false,
+      hasher: (path, payloadStart) => hasher.hash(path, payloadStart),
     });
     this.#writers = products.map(
       (product) => new ProductWriter(this.#set, file, facts, plan, outputs, product, kernels),
@@ -132,9 +141,9 @@ class Writing implements Attempt {
     return this.#writers.map(({ record }) => record);
   }
 
-  use(group: number, result: GroupResult): void {
+  async use(group: number, result: GroupResult): Promise<void> {
     this.#noise.add(result.result);
-    for (const writer of this.#writers) writer.add(group, result);
+    await Promise.all(this.#writers.map((writer) => writer.add(group, result)));
   }
 
   abort(): void {
@@ -142,13 +151,16 @@ class Writing implements Attempt {
   }
 
   /** Draw the pictures, hash, write the sidecar and rename everything. Returns the paths. */
-  async finish(scan: Scan, input: InputHash, timings: Timings): Promise<string[]> {
+  async finish(scan: Scan, hashing: Promise<FileHashes>, timings: Timings): Promise<string[]> {
+    // Arrays are hashed while the pictures are drawn.
+    for (const { record } of this.#writers) this.#set.sealOne(record.file).catch(() => undefined); // awaited by seal
     const pictures = timings.measure("pictures", () =>
       this.#writers.flatMap((writer) => writer.drawPictures(scan)),
     );
     const start = performance.now();
     const outputs = await this.#set.seal();
-    timings.add("hash outputs", (performance.now() - start) / 1e3);
+    const input = await hashing;
+    timings.add("wait for hashes", (performance.now() - start) / 1e3);
     const { plan, recipe } = this.#prepared;
     const text = sidecar({
       scan,

@@ -4,9 +4,9 @@ import type { ReadoutHead } from "./record.js";
 
 /**
  * Copy one readout's samples onto the encoded grid in the order of rising k, as the recipe's `scan` asks: turned round
- * where it ran backward, conjugated, its sign changed, moved to another centre. Samples that were not acquired stay zero.
+ * where it ran backward, conjugated, its sign changed, moved to another centre. Samples that were not acquired are zero.
  * @param samples [coil, sample] interleaved complex, in time order
- * @param target [coil, encoded sample], zeroed, from float `at` on
+ * @param target [coil, encoded sample], from float `at` on
  * @throws InputError if the samples reach beyond the encoded matrix
  */
 export function decodeReadout(
@@ -21,13 +21,11 @@ export function decodeReadout(
   const backward = runsBackward(head, scan.overrides.readoutPolarity);
   const center = scan.measuredCenter[backward ? "reverse" : "forward"] ?? head.centerSample;
   const window = sampleWindow(head, encoded, backward, center, file);
-  for (let coil = 0; coil < head.channels; coil++) {
-    const from = 2 * (coil * head.samples + window.first);
-    const to = at + 2 * (coil * encoded + window.encodedStart);
-    copyLine(samples, from, target, to, window);
-  }
-  const { conjugate, alternateSign, recentreMm } = scan.overrides;
   const length = 2 * head.channels * encoded;
+  const isWhole = window.count === encoded && head.samples === encoded;
+  if (isWhole && !backward) target.set(samples, at);
+  else copyLines(samples, head, window, target.subarray(at, at + length), encoded);
+  const { conjugate, alternateSign, recentreMm } = scan.overrides;
   const line = target.subarray(at, at + length);
   if (conjugate) for (let i = 1; i < length; i += 2) line[i] = -line[i]!;
   if (alternateSign && head.counters.kspace_encode_step_1 % 2 === 1)
@@ -35,21 +33,23 @@ export function decodeReadout(
   if (recentreMm.some((mm) => mm !== 0)) recentre(line, head, scan);
 }
 
-function copyLine(
+function copyLines(
   samples: Float32Array,
-  from: number,
+  head: ReadoutHead,
+  { first, count, encodedStart, reversed }: SampleWindow,
   target: Float32Array,
-  to: number,
-  window: SampleWindow,
+  encoded: number,
 ): void {
-  const { count, reversed } = window;
-  if (!reversed) {
-    target.set(samples.subarray(from, from + 2 * count), to);
-    return;
-  }
-  for (let j = 0, p = from + 2 * (count - 1), q = to; j < count; j++, p -= 2, q += 2) {
-    target[q] = samples[p]!;
-    target[q + 1] = samples[p + 1]!;
+  if (count < encoded) target.fill(0);
+  for (let coil = 0; coil < head.channels; coil++) {
+    const from = 2 * (coil * head.samples + first);
+    const to = 2 * (coil * encoded + encodedStart);
+    if (!reversed) target.set(samples.subarray(from, from + 2 * count), to);
+    else
+      for (let j = 0, p = from + 2 * (count - 1), q = to; j < count; j++, p -= 2, q += 2) {
+        target[q] = samples[p]!;
+        target[q + 1] = samples[p + 1]!;
+      }
   }
 }
 

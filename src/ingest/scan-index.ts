@@ -202,14 +202,7 @@ export class ScanIndex {
     if (evidence.stated !== head.centerSample || evidence.samples !== n) evidence.uniform = false;
     evidence.below = Math.max(evidence.below, below);
     evidence.above = Math.max(evidence.above, above);
-    const { energy } = evidence;
-    let total = 0;
-    for (let c = 0; c < head.channels; c++)
-      for (let j = first, p = 2 * (c * n + first); j < last; j++, p += 2) {
-        const value = samples[p]! * samples[p]! + samples[p + 1]! * samples[p + 1]!;
-        energy[j]! += value;
-        total += value;
-      }
+    const total = addEnergy(evidence.energy, samples, head.channels, n, first, last);
     if (!Number.isFinite(total)) this.#notFinite(head, samples);
     return total;
   }
@@ -281,6 +274,27 @@ export class ScanIndex {
       "The file is damaged or was exported wrongly: export it again",
     );
   }
+}
+
+/** energy[j] += |s|^2 over the channels, for samples first .. last - 1; returns what was added in all. */
+function addEnergy(
+  energy: Float64Array,
+  samples: Float32Array,
+  channels: number,
+  n: number,
+  first: number,
+  last: number,
+): number {
+  let total = 0;
+  for (let c = 0; c < channels; c++)
+    for (let j = first, p = 2 * (c * n + first); j < last; j++, p += 2) {
+      const re = samples[p]!;
+      const im = samples[p + 1]!;
+      const value = re * re + im * im;
+      energy[j]! += value;
+      total += value;
+    }
+  return total;
 }
 
 function samePose(a: Pose, b: ReadoutHead): boolean {

@@ -22,8 +22,8 @@ export function isBufferOf(memory: WebAssembly.Memory, buffer: ArrayBufferLike):
 
 /** Where arrays for the kernels come from. */
 export interface SampleSource {
-  /** Zeroed floats. */
-  allocate(floats: number): Float32Array;
+  /** @param zeroed whether every float must be 0; else they may hold anything (default: zeroed) */
+  allocate(floats: number, zeroed?: boolean): Float32Array;
   /** Give back what `allocate` gave. */
   release(array: Float32Array): void;
 }
@@ -49,7 +49,7 @@ export class SampleMemory implements SampleSource {
   }
 
   /** @throws RangeError when the memory's maximum leaves no room, or the system gives no more */
-  allocate(floats: number): Float32Array {
+  allocate(floats: number, zeroed = true): Float32Array {
     const top = this.blocks.top;
     const start = this.blocks.take(4 * floats);
     if (start === undefined) {
@@ -61,7 +61,7 @@ export class SampleMemory implements SampleSource {
     const lacking = this.blocks.top - this.memory.buffer.byteLength;
     if (lacking > 0) this.memory.grow(Math.ceil(lacking / PAGE_BYTES));
     const array = new Float32Array(currentBuffer(this.memory), start, floats);
-    return start >= top ? array : array.fill(0); // what was never handed out is zero already
+    return start >= top || !zeroed ? array : array.fill(0); // what was never handed out is zero already
   }
 
   /** @throws RangeError for an array that `allocate` did not give, or that was given back before */
@@ -89,11 +89,12 @@ export class SamplePart implements SampleSource {
     this.blocks = new BlockList(startByte, startByte + bytes);
   }
 
-  allocate(floats: number): Float32Array {
+  allocate(floats: number, zeroed = true): Float32Array {
     const start = this.blocks.take(4 * floats);
     // The kernels take any array; one outside the memory costs them a copy.
     if (start === undefined) return new Float32Array(floats);
-    return new Float32Array(currentBuffer(this.memory), start, floats).fill(0);
+    const array = new Float32Array(currentBuffer(this.memory), start, floats);
+    return zeroed ? array.fill(0) : array;
   }
 
   /** @throws RangeError for a part of the memory that `allocate` did not give, or that was given back before */

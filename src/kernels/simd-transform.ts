@@ -42,8 +42,8 @@ export class SimdEngine implements TransformEngine {
     instance.region.onEmptied(() => this.book.clear());
   }
 
-  allocate(floats: number): Float32Array {
-    return this.samples.allocate(floats);
+  allocate(floats: number, zeroed?: boolean): Float32Array {
+    return this.samples.allocate(floats, zeroed);
   }
 
   release(array: Float32Array): void {

@@ -24,8 +24,11 @@ export interface AxisTransform {
 
 export interface TransformEngine {
   readonly id: "plain" | "simd";
-  /** Floats that this engine can transform fastest; zeroed. */
-  allocate(floats: number): Float32Array;
+  /**
+   * Floats that this engine can transform fastest.
+   * @param zeroed whether every float must be 0; else they may hold anything (default: zeroed)
+   */
+  allocate(floats: number, zeroed?: boolean): Float32Array;
   /** Give back what `allocate` gave. */
   release(array: Float32Array): void;
   transformAxis(job: AxisTransform): void;

@@ -69,7 +69,7 @@ export interface SideOutput {
 export interface StageContext {
   readonly scan: ScanFacts;
   readonly kernels: Kernels;
-  /** Zeroed memory for samples; what a stage takes and does not return it must give back. */
+  /** Memory for samples, holding anything; what a stage takes and does not return it must give back. */
   allocate(floats: number): Float32Array;
   release(data: Float32Array): void;
   emit(output: SideOutput): void;

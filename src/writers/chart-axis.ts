@@ -23,6 +23,9 @@ export interface PlacedAxis {
   place(value: number): number;
 }
 
+/** Smaller numbers are shown as 0: nearer to it, doubles lose their digits. */
+const LEAST = 1e-290;
+
 /** Label and unit as they stand beside the axis. */
 export function axisTitle(axis: Pick<Axis, "label" | "unit">): string {
   return axis.unit ? `${axis.label} (${axis.unit})` : axis.label;
@@ -34,19 +37,23 @@ export function axisTitle(axis: Pick<Axis, "label" | "unit">): string {
  */
 export function axisDomain(axis: Axis, values: Iterable<number>, isTight: boolean): [number, number] {
   if (axis.domain) return [axis.domain[0], axis.domain[1]];
+  const isLog = axis.scale === "log";
   let low = Infinity;
   let high = -Infinity;
   for (const value of values) {
-    if (!Number.isFinite(value) || (axis.scale === "log" && value <= 0)) continue;
+    if (!Number.isFinite(value) || (isLog && value < LEAST)) continue;
     low = Math.min(low, value);
     high = Math.max(high, value);
   }
-  if (low > high) return axis.scale === "log" ? [1, 10] : [0, 1];
-  if (axis.scale === "log") {
-    if (low === high) return [low / 2, high * 2];
+  if (low > high) return isLog ? [1, 10] : [0, 1];
+  const size = Math.max(Math.abs(low), Math.abs(high));
+  const isNarrow = high - low <= 1e-9 * size; // doubles leave no room for ticks
+  if (isLog) {
+    if (isNarrow) return [low / 2, high * 2];
     return isTight ? [low, high] : (scaleLog([low, high], [0, 1]).nice().domain() as [number, number]);
   }
-  if (low === high) return low === 0 ? [-1, 1] : [low - Math.abs(low) / 2, high + Math.abs(high) / 2];
+  if (size < LEAST) return [-1, 1];
+  if (isNarrow) return [low - size / 2, high + size / 2];
   if (isTight) return [low, high];
   const from = low > 0 && low < high / 2 ? 0 : low;
   return scaleLinear([from, high], [0, 1]).nice(5).domain() as [number, number]; // two ends in, two ends out

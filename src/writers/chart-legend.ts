@@ -1,6 +1,6 @@
 import { CAP_SHARE, type Mark } from "./drawing.js";
 import { flow } from "./flow.js";
-import { CAP_ROWS, textSteps } from "./font.js";
+import { CAP_ROWS, fitText, textSteps } from "./font.js";
 
 /** How a series is drawn: told apart by colour and, without colour, by its dashes. */
 export interface SeriesStyle {
@@ -24,6 +24,8 @@ export function seriesStyle(index: number): SeriesStyle {
 }
 
 const TEXT_PT = 7;
+/** One grid step of the font. */
+const STEP_PT = (TEXT_PT * CAP_SHARE) / CAP_ROWS;
 const SAMPLE_PT = 16;
 const LINE_PT = 10;
 const GAP_PT = 10;
@@ -67,11 +69,19 @@ export function chartLegend(
       });
     }
     const at = [start + SAMPLE_PT + 4, baseline] as const;
-    return [...sample, { kind: "text", text: name, at, anchor: "start", sizePt: TEXT_PT, colour: "#222222" }];
+    return [
+      ...sample,
+      { kind: "text", text: shown(name, widthPt), at, anchor: "start", sizePt: TEXT_PT, colour: "#222222" },
+    ];
   });
 }
 
 function places(series: readonly Entry[], widthPt: number) {
-  const widths = series.map(({ name }) => SAMPLE_PT + 4 + (textSteps(name) * TEXT_PT * CAP_SHARE) / CAP_ROWS);
+  const widths = series.map(({ name }) => SAMPLE_PT + 4 + textSteps(shown(name, widthPt)) * STEP_PT);
   return flow(widths, GAP_PT, widthPt);
+}
+
+/** A name, cut where it is wider than the whole legend. */
+function shown(name: string, widthPt: number): string {
+  return fitText(name, (widthPt - SAMPLE_PT - 4) / STEP_PT);
 }

@@ -13,12 +13,12 @@ const SPACE_ADVANCE = 4;
 
 /** Each entry: the character, then its 9 rows from the top, a row as one base-32 digit whose high bit is at the left. */
 const PACKED = [
-  "!ggggg0g00 \"kk0000000 #aavavaa00 $4fke5u400 %h22488h00 &ciiclid00 'gg0000000 (48ggg8400 )g84448g00",
+  "!ggggg0g00 \"kk0000000 #aavavaa00 $4fke5u400 %pp248jj00 &ciiclid00 'gg0000000 (48ggg8400 )g84448g00",
   "*0level000 +044v44000 ,00000088g -000u00000 .000000g00 /122488g00 0ehhhhhe00 14c4444e00 2eh1248v00",
   "3eh161he00 426aiv2200 5vgu11he00 668guhhe00 7v12244400 8ehhehhe00 9ehhf12c00 :00g000g00 ;00800088g",
   "<248g84200 =00v0v0000 >g84248g00 ?eh1240400 @ehnlnge00 Aehhvhhh00 Buhhuhhu00 Cehggghe00 Duhhhhhu00",
   "Evgguggv00 Fvgguggg00 Gehgnhhe00 Hhhhvhhh00 Is88888s00 J1111hhe00 Khikokih00 Lggggggv00 Mhrllhhh00",
-  "Nhpllljh00 Ovhhhhhv00 Puhhuggg00 Qehhhlid00 Ruhhukih00 Sehge1he00 Tv44444400 Uhhhhhhe00 Vhhhhha400",
+  "Nhpllljh00 Oehhhhhe00 Puhhuggg00 Qehhhlid00 Ruhhukih00 Sehge1he00 Tv44444400 Uhhhhhhe00 Vhhhhha400",
   "Whhhllrh00 Xhha4ahh00 Yhha444400 Zv1248gv00 [sgggggs00 \\gg8844200 ]s44444s00 ^4ah000000 _000000v00",
   "a00e1fhf00 bgguhhhu00 c00eggge00 d11fhhhf00 e00ehvge00 f68u888800 g00fhhhf1e hgguhhhh00 ig0ggggg00",
   "j40444444o kggikoki00 lgggggg800 m00qllll00 n00uhhhh00 o00ehhhe00 p00uhhhugg q00fhhhf11 r00moggg00",

@@ -25,6 +25,7 @@ export type NpyArray = {
 /** Where arrays are written at byte positions; `OutputFile` of an output set is one. */
 export interface ByteSink {
   write(bytes: NodeJS.ArrayBufferView, atBytes: number): void;
+  writeSoon(bytes: NodeJS.ArrayBufferView, atBytes: number): Promise<void>;
 }
 
 const MAGIC = "\x93NUMPY";
@@ -92,17 +93,22 @@ export class NpyFile<D extends NpyDtype> {
   }
 
   /**
-   * Write `data` so that its first element lies at `elementOffset` in C order.
+   * Write `data` in the background so that its first element lies at `elementOffset` in C order. `data` must not
+   * change before the promise settles.
    * @throws RangeError where the data would not fit the shape, or hold a part of an element
    */
-  writeAt(elementOffset: number, data: NpyData[D]): void {
+  async writeAt(elementOffset: number, data: NpyData[D]): Promise<void> {
+    await this.#sink.writeSoon(data, this.#byteOffset(elementOffset, data));
+  }
+
+  #byteOffset(elementOffset: number, data: NpyData[D]): number {
     const itemBytes = npyItemBytes(this.dtype);
     const elements = data.byteLength / itemBytes;
     const total = elementCount(this.shape);
     if (!Number.isInteger(elements) || elementOffset < 0 || elementOffset + elements > total) {
       throw new RangeError(`${elements} elements at ${elementOffset} do not fit [${this.shape}]`);
     }
-    this.#sink.write(data, this.headerBytes + elementOffset * itemBytes);
+    return this.headerBytes + elementOffset * itemBytes;
   }
 }
 

@@ -21,6 +21,10 @@ export class OutputFile implements ByteSink {
   readonly temporaryPath: string;
   readonly #finalPath: string;
   #descriptor: number | undefined;
+  /** Writes in the background that have not settled. */
+  #underWay = 0;
+  /** Set where the file was closed before they settled: the last of them closes it. */
+  #closeLater = false;
 
   /** Creates the temporary file; it must not exist. */
   constructor(temporaryPath: string, finalPath: string) {
@@ -39,6 +43,37 @@ export class OutputFile implements ByteSink {
     });
   }
 
+  /**
+   * The same in the background. `bytes` must not change, and the file not be closed, before the promise settles.
+   * Two writes under way must not overlap.
+   */
+  async writeSoon(bytes: NodeJS.ArrayBufferView, atBytes: number): Promise<void> {
+    const descriptor = this.#open();
+    this.#underWay += 1;
+    try {
+      for (let done = 0; done < bytes.byteLength; ) {
+        done += await this.#writePart(descriptor, bytes, done, atBytes);
+      }
+    } finally {
+      this.#underWay -= 1;
+      if (this.#underWay === 0 && this.#closeLater) fs.closeSync(descriptor);
+    }
+  }
+
+  /** One write of the bytes from `done` on; resolves to how many were written. */
+  async #writePart(descriptor: number, bytes: NodeJS.ArrayBufferView, done: number, atBytes: number) {
+    if (this.#closeLater) throw new Error(`${this.#finalPath} was closed while it was written`);
+    const written = await new Promise<{ fault: unknown; count: number }>((resolve) => {
+      fs.write(descriptor, bytes, done, bytes.byteLength - done, atBytes + done, (fault, count) =>
+        resolve({ fault, count }),
+      );
+    });
+    return writing(this.#finalPath, () => {
+      if (written.fault) throw written.fault;
+      return written.count;
+    });
+  }
+
   /** Give the file its full length, so that elements which are never written are zero. */
   extendTo(lengthBytes: number): void {
     const descriptor = this.#open();
@@ -47,19 +82,14 @@ export class OutputFile implements ByteSink {
     });
   }
 
-  /** Bring the bytes to the disk and close. Some file systems report a full disk only here. */
-  finish(): void {
-    const descriptor = this.#open();
-    writing(this.#finalPath, () => fs.fsyncSync(descriptor));
-    this.close();
-  }
-
-  /** Close without any promise about the contents. */
+  /** Close. Some file systems report a full disk only here. */
   close(): void {
     if (this.#descriptor === undefined) return;
     const descriptor = this.#descriptor;
     this.#descriptor = undefined;
-    writing(this.#finalPath, () => fs.closeSync(descriptor));
+    // the number of a closed file is given to the next one opened, which a write under way would then reach
+    this.#closeLater = this.#underWay > 0;
+    if (!this.#closeLater) writing(this.#finalPath, () => fs.closeSync(descriptor));
   }
 
   #open(): number {
@@ -101,8 +131,15 @@ const REASONS: Readonly<Record<string, readonly [rule: string, mend: string]>> =
   ENAMETOOLONG: ["has too long a name", "Choose a shorter name."],
 };
 
+/** SHA-256 and size of a file; SHA-256 of a part of it where that was asked for. */
+export interface FileHashes {
+  readonly bytes: number;
+  readonly sha256: string;
+  readonly payloadSha256: string | undefined;
+}
+
 /** SHA-256 of a file, and of it from `payloadStart` on; reads in pieces and lets signals in between them. */
-export async function hashFile(file: string, payloadStart: number | undefined) {
+export async function hashFile(file: string, payloadStart: number | undefined): Promise<FileHashes> {
   const whole = createHash("sha256");
   const payload = payloadStart === undefined ? undefined : createHash("sha256");
   const piece = new Uint8Array(4 * 2 ** 20);

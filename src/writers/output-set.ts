@@ -14,6 +14,8 @@ export interface OutputSetOptions {
   readonly sidecar?: string;
   /** Replace files that exist. */
   readonly force?: boolean;
+  /** Computes the hashes. Default: this thread. */
+  readonly hasher?: typeof hashFile;
 }
 
 /** Temporary files that a set of this process holds now: one with our process id but not here is a leftover. */
@@ -34,6 +36,8 @@ export class OutputSet {
   readonly #files = new Map<string, OutputFile>();
   readonly #payloadStarts = new Map<string, number>();
   readonly #records = new Map<string, OutputRecord>();
+  readonly #sealing = new Map<string, Promise<void>>();
+  readonly #hasher: typeof hashFile;
   /** Folders that this set made, deepest first. */
   readonly #madeFolders: readonly string[];
   #over = false;
@@ -44,6 +48,7 @@ export class OutputSet {
     this.#names = options.names;
     this.#sidecar = options.sidecar;
     this.#force = options.force ?? false;
+    this.#hasher = options.hasher ?? hashFile;
     const all = this.#allNames();
     for (const name of all) {
       if (name !== path.basename(name) || name === "") throw new Error(`${name} is not a plain file name`);
@@ -68,28 +73,39 @@ export class OutputSet {
     const data = typeof bytes === "string" ? Buffer.from(bytes, "utf8") : bytes;
     const file = this.#create(name);
     file.write(data, 0);
-    file.finish();
+    file.close();
     const payloadHash = payload ? { payloadSha256: sha256(payload) } : {};
     this.#records.set(name, { name, bytes: data.byteLength, sha256: sha256(data), ...payloadHash });
   }
 
-  /** Bring all outputs to the disk. Resolves to their records, in the order of `names`, for the sidecar to state. */
+  /** Close all outputs and hash what was not hashed yet. Resolves to their records, in the order of `names`. */
   async seal(): Promise<OutputRecord[]> {
-    for (const [name, file] of this.#files) {
-      if (this.#records.has(name)) continue;
-      file.finish();
-      const hashes = await hashFile(file.temporaryPath, this.#payloadStarts.get(name)).catch((fault) => {
-        if (!this.#over) throw fault; // else the abort took the file away
-      });
-      if (!hashes || this.#over) throw new Error("the output set was aborted while it was sealed");
-      const { payloadSha256, ...whole } = hashes;
-      this.#records.set(name, { name, ...whole, ...(payloadSha256 ? { payloadSha256 } : {}) });
-    }
+    await Promise.all([...this.#files.keys()].map((name) => this.sealOne(name)));
     return this.#names.map((name) => {
       const record = this.#records.get(name);
       if (!record) throw new Error(`output ${name} was never written`);
       return record;
     });
+  }
+
+  /** Close one output and hash it, in the background; nothing more can be written to it. */
+  async sealOne(name: string): Promise<void> {
+    if (this.#records.has(name)) return;
+    const sealing = this.#sealing.get(name) ?? this.#hash(name);
+    this.#sealing.set(name, sealing);
+    await sealing;
+  }
+
+  async #hash(name: string): Promise<void> {
+    const file = this.#files.get(name);
+    if (!file) throw new Error(`output ${name} was never written`);
+    file.close();
+    const hashes = await this.#hasher(file.temporaryPath, this.#payloadStarts.get(name)).catch((fault) => {
+      if (!this.#over) throw fault; // else the abort took the file away
+    });
+    if (!hashes || this.#over) throw new Error("the output set was aborted while it was sealed");
+    const { payloadSha256, ...whole } = hashes;
+    this.#records.set(name, { name, ...whole, ...(payloadSha256 ? { payloadSha256 } : {}) });
   }
 
   /**

@@ -2,8 +2,9 @@ import fc from "fast-check";
 import { XMLValidator } from "fast-xml-parser";
 import { PNG } from "pngjs";
 import { describe, expect, test } from "vitest";
-import { type Chart, chartDrawing, chartPng, chartSvg, textWidth } from "../../src/writers/chart.js";
+import { type Chart, chartDrawing, chartPng, chartSvg } from "../../src/writers/chart.js";
 import { axisDomain, placeAxis, tickLabel, ticksThatFit } from "../../src/writers/chart-axis.js";
+import { textWidth } from "../../src/writers/chart-frame.js";
 import { clipLine } from "../../src/writers/clip.js";
 import type { Mark } from "../../src/writers/drawing.js";
 import { dashes } from "../../src/writers/drawing-raster.js";
@@ -38,28 +39,31 @@ function boxOf({ text, at: [x, y], anchor, sizePt, isVertical }: Text) {
 }
 
 describe("the layout", () => {
-  const magnitude = fc.tuple(fc.double({ min: -1, max: 1, noNaN: true }), fc.integer({ min: -8, max: 8 }));
-  const number = magnitude.map(([mantissa, power]) => mantissa * 10 ** power);
+  // thousandths times a power of ten: also 0, negative numbers, and spans that need an exponent
+  const number = fc
+    .tuple(fc.integer({ min: -9999, max: 9999 }), fc.integer({ min: -9, max: 6 }))
+    .map(([thousandths, power]) => (thousandths / 1000) * 10 ** power);
   const anyChart = fc
     .record({
       points: fc.array(fc.tuple(number, number), { minLength: 0, maxLength: 6 }),
       xScale: fc.constantFrom("linear" as const, "log" as const),
       yScale: fc.constantFrom("linear" as const, "log" as const),
-      names: fc.array(fc.constantFrom("water", "fat", "a rather long name of a series"), {
+      names: fc.array(fc.constantFrom("water", "fat", "a rather long name of a series", "long ".repeat(30)), {
         minLength: 1,
         maxLength: 5,
       }),
       perX: fc.constantFrom(undefined, 203.5, -0.01),
       widthMm: fc.constantFrom(85, 120, 170),
+      label: fc.constantFrom("signal", "a label that is longer than its axis ".repeat(3)),
     })
-    .map(({ points, xScale, yScale, names, perX, widthMm }): Chart => {
+    .map(({ points, xScale, yScale, names, perX, widthMm, label }): Chart => {
       const x = points.map(([value]) => value);
       const y = points.map(([, value]) => value);
       return {
-        title: "any chart",
+        title: `any ${label}`,
         widthMm,
-        x: { label: "position", unit: "mm", scale: xScale },
-        y: { label: "signal", scale: yScale },
+        x: { label, unit: "mm", scale: xScale },
+        y: { label, scale: yScale },
         ...(perX && xScale === "linear" && { top: { label: "frequency", unit: "Hz", perX } }),
         series: names.map((name) => ({ name, x, y, mark: "both" as const })),
       };
@@ -154,7 +158,7 @@ describe("PNG", () => {
 
   test("knows its title and its size on paper", () => {
     const { png } = chartPng(CHART, 300);
-    expect(pngTexts(png)["Title"]).toBe(CHART.title);
+    expect(pngTexts(png).Title).toBe(CHART.title);
     const physical = pngChunks(png).find((chunk) => chunk.type === "pHYs");
     expect(physical?.data.readUInt32BE(0)).toBe(11811); // 300 pixels an inch / 0.0254 m
     expect(pngChunks(png)[0]?.data.readUInt32BE(0)).toBe(1004); // 85 mm at 300 an inch, 1003.9, to whole pixels
@@ -177,6 +181,10 @@ describe("axes", () => {
     expect(axisDomain({ label }, [3, Number.NaN, 97], true)).toEqual([3, 97]);
     expect(axisDomain({ label }, [5, 5], true)).toEqual([2.5, 7.5]);
     expect(axisDomain({ label }, [], true)).toEqual([0, 1]);
+    // spans that doubles cannot divide into ticks
+    const [low, high] = axisDomain({ label }, [1, 1 + 2 ** -52], true);
+    expect([low, high].map((end) => end.toFixed(9))).toEqual(["0.500000000", "1.500000000"]);
+    expect(axisDomain({ label }, [0, 5e-324], false)).toEqual([-1, 1]);
     expect(axisDomain({ label, scale: "log" }, [-3, 0, 0.2, 70], false)).toEqual([0.1, 100]);
     expect(axisDomain({ label, domain: [-80, 5] }, [1], false)).toEqual([-80, 5]);
   });
@@ -202,7 +210,7 @@ describe("clipping", () => {
 
   test("cuts at the sides, in closed form", () => {
     expect(clipLine([[-5, 5], [5, 5]], box)).toEqual([[[0, 5], [5, 5]]]); // biome-ignore format: one line
-    expect(clipLine([[-5, -10], [20, 15]], box)).toEqual([[[5, 0], [10, 5]]].map((piece) => piece)); // biome-ignore format: one line
+    expect(clipLine([[-5, -10], [20, 15]], box)).toEqual([[[5, 0], [10, 5]]]); // biome-ignore format: one line
     expect(clipLine([[-5, 12], [5, 12]], box)).toEqual([]); // biome-ignore format: one line
   });
 

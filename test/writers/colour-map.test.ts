@@ -72,7 +72,7 @@ test("the limit, if not given, is a round number above nearly all values; those 
 });
 
 test("an outline is drawn where the mask ends, and nowhere else", () => {
-  const mask = new Uint8Array(30).fill(1, 12, 14); // [5, 6]
+  const mask = new Uint8Array(30).fill(1, 13, 15); // [5, 6]: two pixels of the middle line, away from the edge
   const plain = signedMapPicture(new Float32Array(30), 5, 6, OPTIONS).picture;
   const outlined = signedMapPicture(new Float32Array(30), 5, 6, { ...OPTIONS, outlineMask: mask }).picture;
   const ink = [34, 34, 34];

@@ -1,9 +1,10 @@
 import { spawn, spawnSync } from "node:child_process";
-import { createHash } from "node:crypto";
+import { createHash, pbkdf2 } from "node:crypto";
 import { once } from "node:events";
 import fs from "node:fs";
 import os from "node:os";
 import path from "node:path";
+import { promisify } from "node:util";
 import { buildSync } from "esbuild";
 import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, test } from "vitest";
 import { OutputError, UsageError } from "../../src/errors.js";
@@ -25,7 +26,7 @@ async function writeSet(text: string, force = false) {
   const set = new OutputSet({ folder, force, ...SET });
   set.write("picture.png", text);
   const npy = set.createNpy("image.npy", "<i4", [2, 3]);
-  npy.writeAt(3, Int32Array.of(4, 5, 6));
+  await npy.writeAt(3, Int32Array.of(4, 5, 6));
   const records = await set.seal();
   set.commit(`{"text":"${text}"}`);
   return records;
@@ -174,7 +175,7 @@ test("the same arrays give the same payload hash, whatever the order of writing"
     // biome-ignore format: two rows
     const set = new OutputSet({ folder, names: ["a.npy"] });
     const npy = set.createNpy("a.npy", "<c8", [3, 5]);
-    for (const row of order) npy.writeAt(5 * row, new Float32Array(10).fill(row));
+    for (const row of order) await npy.writeAt(5 * row, new Float32Array(10).fill(row));
     hashes.push((await set.seal())[0]?.payloadSha256);
     set.abort();
   }
@@ -186,7 +187,7 @@ test("a payload that spans several read pieces is hashed without its header", as
   const count = 3 * 2 ** 19 + 7; // 12 MiB of float64 and a bit: more than two pieces of 4 MiB
   const values = Float64Array.from({ length: count }, (_, i) => i);
   const set = new OutputSet({ folder, names: ["a.npy"] });
-  set.createNpy("a.npy", "<f8", [count]).writeAt(0, values);
+  await set.createNpy("a.npy", "<f8", [count]).writeAt(0, values);
   const [record] = await set.seal();
   set.abort();
   expect(record?.payloadSha256).toBe(createHash("sha256").update(values).digest("hex"));
@@ -219,6 +220,22 @@ describe("misuse is our own fault, not an output error", () => {
     await expect(sealing).rejects.toThrow("aborted");
     expect(fs.readdirSync(root)).toEqual([]);
   });
+});
+
+test("an abort while a write is under way reaches no file that is opened afterwards", async () => {
+  const set = new OutputSet({ folder, names: ["a.npy"] });
+  const npy = set.createNpy("a.npy", "<f4", [4]);
+  // four keep all threads of the pool busy, so that the write has not begun when the set is aborted
+  const busy = Array.from({ length: 4 }, () => promisify(pbkdf2)("a", "b", 100000, 64, "sha512"));
+  const written = npy.writeAt(0, new Float32Array(4).fill(7));
+  set.abort();
+  const other = path.join(root, "other");
+  const descriptor = fs.openSync(other, "w");
+  fs.writeSync(descriptor, "x".repeat(200));
+  await Promise.allSettled([written, ...busy]);
+  fs.closeSync(descriptor);
+  expect(fs.readFileSync(other, "latin1")).toBe("x".repeat(200));
+  expect(fs.readdirSync(root)).toEqual(["other"]);
 });
 
 describe("an output that cannot be written is an OutputError that names the file", () => {
