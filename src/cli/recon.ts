@@ -61,6 +61,9 @@ export const recon: Command = {
   ],
   async run(flags, terminal, signal) {
     const { requestOf } = await import("./plan-file.js");
+    // The library compiles while the rest loads; what goes wrong there is heard when the file is opened.
+    const { loadHdf5 } = await import("../ingest/hdf5.js");
+    loadHdf5().catch(() => undefined);
     const { UsageError } = await import("../errors.js");
     const out = flags.out as string | undefined;
     if (!flags.explain && out === undefined)

@@ -68,7 +68,8 @@ class PassRun {
   readonly #use: (group: number, result: GroupResult) => Promise<void>;
   /** Blocks are finished in the order of the file, whoever processed them. */
   #tail: Promise<void> = Promise.resolve();
-  #blocksAhead = 0;
+  /** The ends of the blocks on their way, the oldest first. */
+  readonly #blocks: Promise<void>[] = [];
   readonly #groups = new Set<Promise<void>>();
   #failure: unknown;
 
@@ -94,7 +95,7 @@ class PassRun {
         // Between blocks the event loop breathes: workers, signals and progress are heard while the library is synchronous.
         await new Promise((resolve) => setImmediate(resolve));
         signal?.throwIfAborted();
-        while (this.#blocksAhead > BLOCKS_AHEAD) await this.#tail;
+        if (this.#blocks.length > BLOCKS_AHEAD) await this.#blocks.shift();
         if (this.#store.isTight) await this.#drain();
         if (this.#failure) throw this.#failure;
       }
@@ -143,7 +144,6 @@ class PassRun {
     };
     const reply = job ? this.#pass.crew.submit(job) : Promise.resolve(undefined);
     reply.catch(() => undefined); // heard in the tail
-    this.#blocksAhead++;
     this.#tail = this.#tail
       .then(() => reply)
       .then((done) => {
@@ -155,10 +155,8 @@ class PassRun {
       })
       .catch((error) => {
         this.#failure ??= error;
-      })
-      .finally(() => {
-        this.#blocksAhead--;
       });
+    this.#blocks.push(this.#tail);
   }
 
   /** Where the image readouts of a block go; all-zero ones count as not acquired. */

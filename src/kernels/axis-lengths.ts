@@ -14,11 +14,11 @@ export interface AxisLengths {
 export function axisLengths(job: AxisTransform): AxisLengths {
   const { source, target, outer, inner, length } = job;
   const { inputLength = length, outputLength = length } = job;
-  const counts = { outer, inner, length, inputLength, outputLength };
-  for (const [name, count] of Object.entries(counts)) {
-    if (!Number.isInteger(count) || count < 1)
-      throw new RangeError(`${name} is ${count}; must be a whole number >= 1`);
-  }
+  requireCount("outer", outer);
+  requireCount("inner", inner);
+  requireCount("length", length);
+  requireCount("inputLength", inputLength);
+  requireCount("outputLength", outputLength);
   if (inputLength > length)
     throw new RangeError(`inputLength ${inputLength} exceeds the transform's length ${length}`);
   if (outputLength > length)
@@ -29,6 +29,11 @@ export function axisLengths(job: AxisTransform): AxisLengths {
     throw new RangeError(`in place needs equal lengths; input has ${inputLength}, output ${outputLength}`);
   }
   return { inputLength, outputLength };
+}
+
+function requireCount(name: string, count: number): void {
+  if (!Number.isInteger(count) || count < 1)
+    throw new RangeError(`${name} is ${count}; must be a whole number >= 1`);
 }
 
 function requireFloats(name: string, array: Float32Array, floats: number): void {

@@ -45,30 +45,29 @@ export interface SimdExports {
   rootSumOfSquares(x: number, y: number, outer: number, channels: number, inner: number): void;
 }
 
-let bytes: Uint8Array | undefined;
 let compiled: WebAssembly.Module | undefined;
 
 /** Whether this JavaScript engine runs the module: WebAssembly with 128-bit SIMD and shared memory. */
 export function simdSupported(): boolean {
-  return (
-    typeof WebAssembly === "object" &&
-    typeof SharedArrayBuffer === "function" &&
-    WebAssembly.validate(moduleBytes())
-  );
+  if (typeof WebAssembly !== "object" || typeof SharedArrayBuffer !== "function") return false;
+  try {
+    simdModule();
+    return true;
+  } catch {
+    return false; // a CompileError: the module uses instructions that this engine does not know
+  }
 }
 
-/** The compiled module: made once a thread; a worker can be sent it instead. */
+/** The module, compiled once a thread; a worker can be sent it instead. */
 export function simdModule(): WebAssembly.Module {
-  compiled ??= new WebAssembly.Module(moduleBytes());
+  compiled ??= new WebAssembly.Module(decoded(KERNELS_WASM));
   return compiled;
 }
 
-function moduleBytes(): Uint8Array {
-  if (!bytes) {
-    const text = atob(KERNELS_WASM);
-    bytes = new Uint8Array(text.length);
-    for (let i = 0; i < text.length; i++) bytes[i] = text.charCodeAt(i);
-  }
+function decoded(base64: string): Uint8Array {
+  const text = atob(base64);
+  const bytes = new Uint8Array(text.length);
+  for (let i = 0; i < text.length; i++) bytes[i] = text.charCodeAt(i);
   return bytes;
 }
 

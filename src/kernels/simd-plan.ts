@@ -56,11 +56,7 @@ export class PlanBook {
     }
     const scratch = this.scratch(length);
     const head = [L.KIND_PASSES, length, scratch.a, scratch.b, passes.length, 0, 0, scratch.gap];
-    return plan(
-      this.putWords([...head, ...rows.flat()]),
-      scratch,
-      passes.length % 2 === 1,
-    );
+    return plan(this.putWords([...head, ...rows.flat()]), scratch, passes.length % 2 === 1);
   }
 
   private passRow({ radix, method }: PassChoice, groups: number, run: number): number[] {

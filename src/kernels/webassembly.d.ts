@@ -19,5 +19,4 @@ declare namespace WebAssembly {
     constructor(module: Module, imports: Record<string, Record<string, unknown>>);
     readonly exports: Readonly<Record<string, unknown>>;
   }
-  function validate(bytes: Uint8Array): boolean;
 }

@@ -9,7 +9,7 @@ import {
   type WindowSpec,
   windowGrid,
 } from "../kernels/window.js";
-import type { SpatialAxis } from "../physics/layout.js";
+import { SPATIAL_AXES, type SpatialAxis } from "../physics/layout.js";
 import { toKSpace } from "./domain.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type Frame, type FrameStage, type Layout } from "./stage.js";
@@ -85,8 +85,8 @@ export const apodize: FrameStage<Params> = {
     if (params.window.name === "none" && params.shape === "separable") return frame;
     const axes = usedAxes(frame.layout, params);
     const ready = toKSpace(frame, axes, context);
-    const grid = fullGrid(ready.layout, axes, params);
-    context.kernels.multiplyGrid(ready.data, ready.data, Float32Array.from(grid));
+    const grid = gridFor(ready.layout, axes, params);
+    context.kernels.multiplyGrid(ready.data, ready.data, grid);
     return { ...ready, noise: { ...ready.noise, gain: ready.noise.gain * sampledNoiseFactor(ready, grid) } };
   },
 };
@@ -103,6 +103,26 @@ function windowAxes(layout: Layout, axes: readonly SpatialAxis[]): WindowAxis[] 
     firstSample: layout.acquired[axis].first,
     lastSample: layout.acquired[axis].last,
   }));
+}
+
+/** The grid that these parameters gave last, with the layout that it is for: the groups of a scan share one. */
+const lastGrids = new WeakMap<Params, { layout: Layout; grid: Float32Array }>();
+
+function gridFor(layout: Layout, axes: readonly SpatialAxis[], params: Params): Float32Array {
+  const last = lastGrids.get(params);
+  if (last && sameGrid(last.layout, layout)) return last.grid;
+  const grid = Float32Array.from(fullGrid(layout, axes, params));
+  lastGrids.set(params, { layout, grid });
+  return grid;
+}
+
+function sameGrid(a: Layout, b: Layout): boolean {
+  return SPATIAL_AXES.every(
+    (axis) =>
+      axisLength(a, axis) === axisLength(b, axis) &&
+      a.acquired[axis].first === b.acquired[axis].first &&
+      a.acquired[axis].last === b.acquired[axis].last,
+  );
 }
 
 /** The window over [z, y, x], 1 along the axes that it does not cover. */
@@ -127,7 +147,7 @@ function fullGrid(layout: Layout, axes: readonly SpatialAxis[], params: Params):
 }
 
 /** Change of the noise's standard deviation: acquired samples count, each with the variance of its average. */
-function sampledNoiseFactor(frame: Frame, grid: Float64Array): number {
+function sampledNoiseFactor(frame: Frame, grid: Float32Array): number {
   const { layout, sampling } = frame;
   const x = axisLength(layout, "x");
   const { first, last } = layout.acquired.x;

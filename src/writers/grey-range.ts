@@ -35,13 +35,17 @@ export function automaticRange(kind: ValueKind, values: ArrayLike<number>): Grey
   return { low: kind === "signed" ? -high : 0, high, rule };
 }
 
-/** Magnitudes of the finite values. */
+/** Percentiles of so many pixels, evenly spaced, are good enough to choose a grey range by. */
+const ENOUGH_PIXELS = 1 << 17;
+
+/** Magnitudes of the finite values, of every n-th where there are very many. */
 function finiteSizes(values: ArrayLike<number>): Float32Array {
-  const sizes = new Float32Array(values.length);
+  const step = Math.ceil(values.length / ENOUGH_PIXELS);
+  const sizes = new Float32Array(Math.ceil(values.length / step));
   let count = 0;
-  for (let i = 0; i < values.length; i++) {
-    const size = Math.abs(values[i] ?? Number.NaN);
-    if (Number.isFinite(size)) sizes[count++] = size;
+  for (let i = 0; i < values.length; i += step) {
+    const size = Math.abs(values[i]!);
+    if (size < Number.POSITIVE_INFINITY) sizes[count++] = size;
   }
   return sizes.subarray(0, count);
 }

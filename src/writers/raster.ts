@@ -33,7 +33,8 @@ export class Raster {
   fillBox(left: number, top: number, width: number, height: number, levels: Levels): void {
     const { x0, x1, y0, y1 } = this.#inside(left, top, left + width, top + height);
     for (let y = y0; y < y1; y++) {
-      for (let x = x0; x < x1; x++) this.#blend(x, y, levels, 1);
+      if (this.channels === 1) this.pixels.fill(levels[0] ?? 0, y * this.width + x0, y * this.width + x1);
+      else for (let x = x0; x < x1; x++) this.#blend(x, y, levels, 1);
     }
   }
 
