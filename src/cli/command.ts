@@ -1,56 +1,84 @@
-import type { Options } from "yargs";
-import { UsageError } from "../errors.js";
-import { Terminal } from "./terminal.js";
+import type { Terminal } from "./terminal.js";
 
-/** Values of a command's flags after parsing; each command knows its own. */
+/** Values of a command's flags and arguments, checked; each command knows its own. */
 export type Flags = Readonly<Record<string, unknown>>;
+
+/** Where the value of each flag comes from: `flag`, the name of the environment variable, or `default`. */
+export type Origins = Readonly<Record<string, string>>;
+
+/** One flag: its type, and what help says of it. */
+export interface Option {
+  readonly type: "text" | "number" | "whole" | "switch";
+  readonly describe: string;
+  /** What help and usage call the value: FOLDER, MM. */
+  readonly value?: string;
+  readonly choices?: readonly string[];
+  /** Least value of a whole number. */
+  readonly least?: number;
+  /** The flag may be given more than once; its value is a list. */
+  readonly repeatable?: boolean;
+  readonly required?: boolean;
+  readonly fallback?: string | number;
+  /** What help says of the default where it is no fixed value. */
+  readonly byDefault?: string;
+  readonly hidden?: boolean;
+}
+
+export interface Argument {
+  readonly name: string;
+  readonly describe: string;
+  readonly required: boolean;
+}
 
 export interface Command {
   readonly name: string;
-  /** Positional arguments as help shows them, such as `<raw>`. */
+  /** What follows the name in the first line of help: `RAW --out FOLDER [flags]`. */
   readonly usage: string;
   readonly summary: string;
-  readonly positionals: Readonly<Record<string, string>>;
-  readonly options: Readonly<Record<string, Options>>;
+  readonly arguments: readonly Argument[];
+  readonly options: Readonly<Record<string, Option>>;
   readonly examples: readonly (readonly [command: string, description: string])[];
-  run(flags: Flags, terminal: Terminal, signal: AbortSignal): Promise<void>;
+  /** More for help, such as the stages that a recipe may name. */
+  readonly notes?: () => Promise<string>;
+  run(flags: Flags, terminal: Terminal, signal: AbortSignal, origins: Origins): Promise<void>;
 }
 
 /** Flags that every command has. */
-export const COMMON_OPTIONS: Readonly<Record<string, Options>> = {
-  quiet: { type: "boolean", default: false, describe: "no progress and no discrepancies; errors remain" },
-  json: { type: "boolean", default: false, describe: "one JSON document on stdout, errors included" },
-  color: { type: "boolean", describe: "colours (default: on a terminal, unless NO_COLOR is set)" },
-  debug: { type: "boolean", default: false, describe: "show where in the program an error arose" },
+export const COMMON_OPTIONS: Readonly<Record<string, Option>> = {
+  json: { type: "switch", describe: "one JSON document on stdout, errors included" },
+  quiet: { type: "switch", describe: "no progress and no discrepancies; errors remain" },
+  color: {
+    type: "switch",
+    describe: "colours; --no-color for none",
+    byDefault: "on a terminal without NO_COLOR",
+  },
+  debug: { type: "switch", describe: "with an error, show where in the program it arose" },
 };
 
 /** Flags of every command that reads a raw file. */
-export const READ_OPTIONS: Readonly<Record<string, Options>> = {
-  group: { type: "string", requiresArg: true, describe: "raw group of the file, where there are several" },
-  encoding: { type: "number", requiresArg: true, describe: "encoding of the header, from 0 (default 0)" },
+export const READ_OPTIONS: Readonly<Record<string, Option>> = {
+  group: { type: "text", value: "NAME", describe: "raw group of the file, where there are several" },
+  encoding: {
+    type: "whole",
+    least: 0,
+    value: "N",
+    describe: "encoding of the header, from 0",
+    byDefault: "0",
+  },
 };
+
+/** The argument of every command that reads a raw file. */
+export const RAW_ARGUMENT: Argument = {
+  name: "raw",
+  describe: "raw-data file in the ISMRMRD standard (HDF5)",
+  required: true,
+};
+
+export function optionsOf(command: Command): Readonly<Record<string, Option>> {
+  return { ...command.options, ...COMMON_OPTIONS };
+}
 
 /** The environment may give any flag as CARILLON_FLAG; a flag on the command line comes first. */
 export function environmentName(option: string): string {
   return `CARILLON_${option.toUpperCase().replaceAll("-", "_")}`;
-}
-
-export function terminalFor(flags: Flags): Terminal {
-  const noColor = process.env.NO_COLOR !== undefined && process.env.NO_COLOR !== "";
-  const color = flags.color === undefined ? !noColor && process.stderr.isTTY === true : flags.color === true;
-  return new Terminal({
-    quiet: flags.quiet === true,
-    json: flags.json === true,
-    color,
-    debug: flags.debug === true,
-  });
-}
-
-/** A whole number from a flag. @throws UsageError */
-export function wholeNumber(flags: Flags, name: string, least: number): number | undefined {
-  const value = flags[name];
-  if (value === undefined) return undefined;
-  if (typeof value !== "number" || !Number.isInteger(value) || value < least)
-    throw new UsageError({ field: `--${name}`, value }, `must be a whole number of at least ${least}`, "");
-  return value;
 }

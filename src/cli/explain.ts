@@ -1,13 +1,18 @@
 import type { Plan } from "../engine/plan.js";
 import { arrayShape } from "../engine/plan.js";
 import type { Scan } from "../engine/scan.js";
-import { wrap } from "./terminal.js";
+import type { Flags, Origins } from "./command.js";
+import { counted, wrap } from "./text.js";
 
 /** The plan as text: each stage, its parameters, shape and bytes in and out, physics, and why it is there. */
-export function explain(scan: Scan, plan: Plan, source: string): string {
+export function explain(scan: Scan, plan: Plan, source: string, flags: Flags, origins: Origins): string {
+  const given = Object.entries(origins).filter(([, from]) => from !== "default");
+  const settings = given.map(([name, from]) => `${name}=${text(flags[name])} (${from})`);
   const lines = [
-    `${scan.file}: recipe ${source}, ${plan.stages.length} stages, ${plan.groups} group(s) of ${plan.framesPerGroup} image(s)`,
-    `order of values: flag, environment (CARILLON_...), recipe, default`,
+    `${scan.file}: recipe ${source}, ${counted(plan.stages.length, "stage")}, ` +
+      `${counted(plan.groups, "group")} of ${counted(plan.framesPerGroup, "image")}`,
+    wrap(`settings: ${settings.join(", ")}`, 80, "  "),
+    "order of values: flag, environment (CARILLON_...), recipe, default",
   ];
   for (const { stage, params, input, output, physics, bytesIn, bytesOut, workBytes, reason } of plan.stages) {
     lines.push("", stage.id, wrap(`  why: ${reason}`, 80, "       "));

@@ -1,7 +1,7 @@
 import { readoutFacts } from "../engine/readout-facts.js";
 import type { Scan } from "../engine/scan.js";
 import { SPATIAL_AXES, type Xyz } from "../physics/layout.js";
-import { wrap } from "./terminal.js";
+import { wrap } from "./text.js";
 
 /** What a scan holds, as a table of 80 columns. */
 export function inspectTable(scan: Scan): string {
@@ -30,13 +30,13 @@ export function inspectTable(scan: Scan): string {
     ["dwell time", `${number(f.dwellSeconds * 1e6)} us`],
     [
       "receiver bandwidth",
-      `${number(f.bandwidthHz * 1e-3)} kHz, ${number(f.bandwidthPerPixelHz)} Hz per pixel`,
+      `${rounded(f.bandwidthHz * 1e-3)} kHz, ${rounded(f.bandwidthPerPixelHz)} Hz per pixel`,
     ],
-    ["readout duration", `${number(f.readoutDurationSeconds * 1e3)} ms`],
-    ["readout gradient", `${number(f.readoutGradientTPerM * 1e3)} mT/m`],
+    ["readout duration", `${rounded(f.readoutDurationSeconds * 1e3)} ms`],
+    ["readout gradient", `${rounded(f.readoutGradientTPerM * 1e3)} mT/m`],
     [
       "fat-water shift",
-      `${number(f.fatWaterShift.pixels)} px, ${number(f.fatWaterShift.mm)} mm (${f.fatWaterShift.ppm} ppm, ${number(f.fatWaterShift.hz)} Hz)`,
+      `${rounded(f.fatWaterShift.pixels)} px, ${rounded(f.fatWaterShift.mm)} mm (${f.fatWaterShift.ppm} ppm, ${rounded(f.fatWaterShift.hz)} Hz)`,
     ],
     [
       "readouts",
@@ -87,9 +87,15 @@ function perAxis(values: Xyz, show: (value: number) => string): string {
 }
 
 function percent(value: number): string {
-  return `${number(100 * value)} %`;
+  return `${rounded(100 * value)} %`;
 }
 
+/** A number that was worked out. */
+function rounded(value: number): string {
+  return String(Number(value.toPrecision(4)));
+}
+
+/** A number that the file states. */
 function number(value: number): string {
   return String(Number(value.toPrecision(6)));
 }

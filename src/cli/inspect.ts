@@ -1,11 +1,11 @@
-import { type Command, READ_OPTIONS } from "./command.js";
+import { type Command, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
 
 /** `carillon inspect`: what a raw file holds, and where header and readouts disagree. */
 export const inspect: Command = {
   name: "inspect",
-  usage: "<raw>",
+  usage: "RAW [flags]",
   summary: "what a raw file holds, and where header and readouts disagree",
-  positionals: { raw: "raw-data file in the ISMRMRD standard (HDF5)" },
+  arguments: [RAW_ARGUMENT],
   options: { ...READ_OPTIONS },
   examples: [
     ["inspect scan.h5", "as a table"],
@@ -26,7 +26,7 @@ export const inspect: Command = {
     if (flags.encoding === undefined)
       for (const other of [...first.index.otherEncodings].sort((a, b) => a - b))
         scans.push(await readScan(file, { ...where, encoding: other }));
-    for (const scan of scans) terminal.result(inspectTable(scan));
+    terminal.result(scans.map(inspectTable).join("\n\n"));
     terminal.document({
       file,
       group: first.group,

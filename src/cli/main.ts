@@ -1,156 +1,114 @@
-import yargs, { type Options } from "yargs";
-import { CarillonError, UsageError } from "../errors.js";
-import { nearest } from "../stages/nearest.js";
+import { OutputError } from "../errors.js";
 import { VERSION } from "../version.js";
-import { COMMON_OPTIONS, type Command, environmentName, type Flags, terminalFor } from "./command.js";
+import type { Command } from "./command.js";
 import { COMMANDS } from "./commands.js";
-import { EXIT } from "./terminal.js";
+import { briefHelp, commandHelp, programHelp } from "./help.js";
+import { IncompleteError, type Invocation, parseCommandLine, switchSet } from "./parse.js";
+import { EXIT, Terminal } from "./terminal.js";
 
-const CAUTION = "For research only, not for diagnosis or treatment.";
+/** How long a command that was told to stop has to clean up. */
+const CLEANING_MILLISECONDS = 1200;
 
 /** Parse the command line, run the command, and return the exit code. */
 export async function main(argv: readonly string[]): Promise<number> {
-  const abort = new AbortController();
-  const interrupt = () => abort.abort();
-  process.once("SIGINT", interrupt);
-  process.once("SIGTERM", interrupt);
-  quietOnClosedPipe();
-  // Errors of the command line itself must honour --json and --debug before anything is parsed.
-  const plain = terminalFor({
-    json: argv.includes("--json"),
-    debug: argv.includes("--debug"),
-    ...colorFlag(argv),
-  });
-  let chosen: { command: Command; flags: Flags } | undefined;
+  const terminal = terminalFor(argv);
+  muteLibraries(terminal);
+  const stray = strayFault();
   try {
-    const parser = commandLine((command, flags) => {
-      chosen = { command, flags };
-    });
-    const help = await parsed(parser, argv);
-    if (help !== undefined) {
-      process.stdout.write(`${help}\n`);
-      return EXIT.done;
-    }
-    if (!chosen) throw new UsageError({}, "no command given", "See: carillon --help");
-    checkNumbers(chosen.command, chosen.flags);
-    await chosen.command.run(chosen.flags, terminalFor(chosen.flags), abort.signal);
+    const invocation = parseCommandLine(argv, process.env, COMMANDS);
+    if (invocation.kind === "run") await runCommand(invocation, terminal, stray);
+    else
+      process.stdout.write(`${invocation.kind === "version" ? VERSION : await help(invocation.command)}\n`);
+    await Promise.race([written(process.stdout), stray]);
     return EXIT.done;
   } catch (error) {
-    return (chosen ? terminalFor(chosen.flags) : plain).failure(error);
+    process.exitCode = terminal.failure(error); // at once: a closed pipe ends the process with it
+    if (error instanceof IncompleteError)
+      terminal.help(error.command ? briefHelp(error.command) : programHelp(COMMANDS));
+    await Promise.all([written(process.stdout), written(process.stderr)]);
+    // What is still under way (a library that loads, a thread that hashes), a failed command has no use for.
+    process.exit();
   }
 }
 
-function commandLine(choose: (command: Command, flags: Flags) => void) {
-  let parser = yargs()
-    .locale("en")
-    .scriptName("carillon")
-    .usage(`$0 <command>\n\nRaw MR k-space to images whose pixels can be trusted. ${CAUTION}`)
-    .version(VERSION)
-    .help()
-    .alias("help", "h")
-    .wrap(80)
-    .strict()
-    .recommendCommands()
-    .demandCommand(1, "no command given; see: carillon --help")
-    .parserConfiguration({ "duplicate-arguments-array": true, "boolean-negation": true })
-    .exitProcess(false)
-    .fail((message, error) => {
-      throw error ?? new UsageError({}, message, "");
-    });
-  for (const command of COMMANDS) {
-    const options: Record<string, Options> = { ...command.options, ...COMMON_OPTIONS };
-    parser = parser.command({
-      command: `${command.name} ${command.usage}`.trim(),
-      describe: command.summary,
-      builder: (inner) => {
-        for (const [name, describe] of Object.entries(command.positionals))
-          inner.positional(name, { type: "string", describe });
-        for (const [example, describe] of command.examples) inner.example(`$0 ${example}`, describe);
-        return inner.options(options).check((flags) => checkRepeats(flags, options));
-      },
-      handler: (flags) => choose(command, withEnvironment(flags, options)),
-    });
-  }
-  return parser;
+function help(command: Command | undefined): Promise<string> | string {
+  return command ? commandHelp(command) : programHelp(COMMANDS);
 }
 
-/** Resolves to the text of --help or --version, or undefined where a command was chosen. */
-async function parsed(
-  parser: ReturnType<typeof commandLine>,
-  argv: readonly string[],
-): Promise<string | undefined> {
-  let output: string | undefined;
-  let failure: unknown;
-  await parser.parseAsync([...argv], {}, (error: unknown, _flags: unknown, text: string) => {
-    failure = error ?? undefined;
-    if (text) output = text;
+/**
+ * Run a command. An interrupt, or a fault that arises outside its flow, makes it clean up and stop; one that does not
+ * stop is left to the end of the process.
+ */
+async function runCommand(
+  { command, flags, origins }: Invocation & { readonly kind: "run" },
+  terminal: Terminal,
+  stray: Promise<never>,
+): Promise<void> {
+  const abort = new AbortController();
+  const { signal } = abort;
+  process.once("SIGINT", () => abort.abort());
+  process.once("SIGTERM", () => abort.abort());
+  let over = false;
+  let timer: NodeJS.Timeout | undefined;
+  const late = new Promise<never>((_, reject) => {
+    signal.addEventListener("abort", () => {
+      if (!over) timer = setTimeout(() => reject(signal.reason), CLEANING_MILLISECONDS);
+    });
   });
-  if (failure) throw clearer(failure);
-  return output;
-}
-
-/** Errors of the parser become ours, with a suggestion where a flag is mistyped. */
-function clearer(error: unknown): unknown {
-  if (error instanceof CarillonError && !/^Unknown argument/.test(error.rule)) return error;
-  const text = error instanceof Error ? error.message : String(error);
-  const unknown = /Unknown arguments?: (.*?)\.?$/.exec(text)?.[1]?.split(", ")[0];
-  if (unknown === undefined)
-    return error instanceof CarillonError ? error : new UsageError({}, text.split("\n")[0]!, "");
-  const known = [
-    ...new Set([...COMMANDS.flatMap(({ options }) => Object.keys(options)), ...Object.keys(COMMON_OPTIONS)]),
-  ];
-  const guess = nearest(unknown, known);
-  const flag = unknown.length === 1 ? `-${unknown}` : `--${unknown}`;
-  return new UsageError(
-    { field: flag },
-    "no such flag or argument",
-    guess ? `Did you mean --${guess}?` : "See --help of the command",
-  );
-}
-
-function checkRepeats(flags: Flags, options: Readonly<Record<string, Options>>): true {
-  for (const [name, value] of Object.entries(flags))
-    if (Array.isArray(value) && options[name] && !options[name].array)
-      throw new UsageError(
-        { field: `--${name}`, value: value.join(", ") },
-        "is given more than once",
-        "Give it once",
-      );
-  return true;
-}
-
-function checkNumbers(command: Command, flags: Flags): void {
-  for (const [name, { type }] of Object.entries(command.options)) {
-    const values = [flags[name]].flat();
-    if (type === "number" && values.some((value) => value !== undefined && !Number.isFinite(value)))
-      throw new UsageError({ field: `--${name}` }, "must be a number", "");
-  }
-}
-
-/** Flags that the command line does not give, from CARILLON_... variables; other variables are not looked at. */
-function withEnvironment(flags: Flags, options: Readonly<Record<string, Options>>): Flags {
-  const merged: Record<string, unknown> = { ...flags };
-  for (const [name, { type, array, default: fallback }] of Object.entries(options)) {
-    const text = process.env[environmentName(name)];
-    if (text === undefined || text === "" || (flags[name] !== undefined && flags[name] !== fallback))
-      continue;
-    const value =
-      type === "number" ? Number(text) : type === "boolean" ? !/^(0|false|no|off)$/i.test(text) : text;
-    if (type === "number" && !Number.isFinite(value as number))
-      throw new UsageError({ field: environmentName(name), value: text }, "must be a number", "");
-    merged[name] = array ? text.split(",") : value;
-  }
-  return merged;
-}
-
-function colorFlag(argv: readonly string[]): Flags {
-  return argv.includes("--no-color") ? { color: false } : {};
-}
-
-/** `carillon inspect RAW | head` ends quietly when the reader has seen enough. */
-function quietOnClosedPipe(): void {
-  process.stdout.on("error", (error: NodeJS.ErrnoException) => {
-    if (error.code === "EPIPE") process.exit(process.exitCode ?? 0);
+  const running = command.run(flags, terminal, signal, origins).finally(() => {
+    over = true;
+    clearTimeout(timer);
+  });
+  try {
+    await Promise.race([running, stray, late]);
+  } catch (error) {
+    if (!over) abort.abort();
+    if (!over) await Promise.race([running, late]).catch(() => undefined); // the first fault is the one to report
     throw error;
+  }
+}
+
+function terminalFor(argv: readonly string[]): Terminal {
+  const set = (name: string) => switchSet(name, argv, process.env);
+  const colorful = process.stderr.isTTY === true && !process.env.NO_COLOR;
+  return new Terminal({
+    quiet: set("quiet") ?? false,
+    json: set("json") ?? false,
+    color: set("color") ?? colorful,
+    debug: set("debug") ?? false,
   });
+}
+
+/** The HDF5 library prints warnings about damaged text through the console; they are for --debug. */
+function muteLibraries({ options }: Terminal): void {
+  const say = (...words: unknown[]) => {
+    if (options.debug) process.stderr.write(`${words.join(" ").slice(0, 300)}\n`);
+  };
+  Object.assign(console, { log: say, info: say, warn: say, error: say });
+}
+
+/**
+ * Rejects with what nobody else hears: exceptions outside any promise, rejections that nobody awaits, streams that
+ * fail. Node itself would print the source line, and with the HDF5 library that is megabytes.
+ */
+function strayFault(): Promise<never> {
+  const fault = new Promise<never>((_, reject) => {
+    process.on("uncaughtException", reject);
+    process.on("unhandledRejection", reject);
+    process.stdout.on("error", (error: NodeJS.ErrnoException) => {
+      // `carillon inspect RAW | head` ends quietly when the reader has seen enough.
+      if (error.code === "EPIPE") process.exit();
+      reject(
+        new OutputError({ file: "stdout" }, `could not be written (${error.code})`, "", { cause: error }),
+      );
+    });
+    process.stderr.on("error", () => undefined); // there is no place left to say so
+  });
+  fault.catch(() => undefined); // only a command that runs awaits it
+  return fault;
+}
+
+/** Resolves when all that was written to a stream has gone out, and a fault of it has been heard. */
+function written(stream: NodeJS.WriteStream): Promise<void> {
+  return new Promise((resolve) => stream.write("", () => setImmediate(resolve)));
 }

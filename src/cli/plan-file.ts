@@ -3,9 +3,9 @@ import { planRecipe } from "../engine/plan.js";
 import type { Prepared } from "../engine/write-reconstruction.js";
 import { UsageError } from "../errors.js";
 import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
-import { defaultRecipe } from "../recipe/default-recipe.js";
+import { defaultRecipe, refuseUnsupported } from "../recipe/default-recipe.js";
 import { applySetting, outputSettings, type Recipe, readRecipe, scanOverrides } from "../recipe/recipe.js";
-import { type Flags, wholeNumber } from "./command.js";
+import type { Flags } from "./command.js";
 
 /** What the flags ask for, checked as far as it can be without the raw file. */
 export interface Request {
@@ -33,6 +33,7 @@ export function requestOf(flags: Flags): Request {
     overrides: scanOverrides(early),
     source: recipeFile ?? "default",
     prepare(facts) {
+      refuseUnsupported(facts, file);
       const standard = given ? undefined : defaultRecipe(facts, file);
       const recipe = complete(given ?? standard!.recipe);
       const reasons = standard?.reasons ?? new Map<string, string>();
@@ -50,7 +51,6 @@ export function requestOf(flags: Flags): Request {
 function withFlags(recipe: Recipe, flags: Flags): Recipe {
   const entries = (names: readonly string[]) =>
     Object.fromEntries(names.filter((name) => flags[name] !== undefined).map((name) => [name, flags[name]]));
-  wholeNumber(flags, "encoding", 0);
   return {
     ...recipe,
     scan: { ...recipe.scan, ...entries(["group", "encoding"]) },

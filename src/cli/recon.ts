@@ -1,75 +1,73 @@
 import { SAVES, type Save } from "../engine/products.js";
-import type { Command, Flags } from "./command.js";
-import { READ_OPTIONS, wholeNumber } from "./command.js";
+import { type Command, type Flags, type Origins, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
 import type { Request } from "./plan-file.js";
+import { SET_OPTION, stageNotes } from "./stage-notes.js";
 import type { Terminal } from "./terminal.js";
+import { counted } from "./text.js";
 
 /** `carillon recon`: from a raw file to arrays, pictures and a sidecar. */
 export const recon: Command = {
   name: "recon",
-  usage: "<raw>",
+  usage: "RAW --out FOLDER [flags]",
   summary: "reconstruct a raw file: arrays, pictures, sidecar",
-  positionals: { raw: "raw-data file in the ISMRMRD standard (HDF5)" },
+  arguments: [RAW_ARGUMENT],
   options: {
-    out: { type: "string", requiresArg: true, describe: "folder to write into; made if it is missing" },
+    out: { type: "text", value: "FOLDER", describe: "folder to write into; made if it is missing" },
+    force: { type: "switch", describe: "replace files that exist" },
+    save: { type: "text", value: "WHAT", choices: SAVES, repeatable: true, describe: "also write" },
     recipe: {
-      type: "string",
-      requiresArg: true,
-      describe: "recipe to run (default: the one that suits the file)",
+      type: "text",
+      value: "FILE",
+      describe: "recipe to run",
+      byDefault: "the one that suits the file",
     },
-    set: {
-      type: "string",
-      array: true,
-      requiresArg: true,
-      nargs: 1,
-      describe: "stage.parameter=value, or stage=off; repeatable",
+    set: SET_OPTION,
+    explain: { type: "switch", describe: "print the plan and stop; needs no --out" },
+    strict: { type: "switch", describe: "fail where header and readouts disagree or lines are missing" },
+    "grey-low": { type: "number", value: "V", describe: "value shown black in image.png" },
+    "grey-high": { type: "number", value: "V", describe: "value shown white in image.png" },
+    ...READ_OPTIONS,
+    workers: {
+      type: "whole",
+      least: 1,
+      value: "N",
+      describe: "threads that compute",
+      byDefault: "the cores",
     },
-    save: {
-      choices: SAVES,
-      array: true,
-      requiresArg: true,
-      nargs: 1,
-      describe: "also write this; repeatable",
-    },
-    "grey-low": { type: "number", requiresArg: true, describe: "value shown black in image.png" },
-    "grey-high": { type: "number", requiresArg: true, describe: "value shown white in image.png" },
-    explain: { type: "boolean", default: false, describe: "print the plan and stop" },
-    strict: {
-      type: "boolean",
-      default: false,
-      describe: "fail where header and readouts disagree or lines are missing",
-    },
-    force: { type: "boolean", default: false, describe: "replace files that exist" },
-    workers: { type: "number", requiresArg: true, describe: "threads that compute (default: the cores)" },
     memory: {
-      type: "number",
-      requiresArg: true,
-      describe: "most memory for samples, MB (default: a quarter of the machine's)",
+      type: "whole",
+      least: 1,
+      value: "MB",
+      describe: "most memory for samples",
+      byDefault: "a quarter of the machine's",
     },
     transform: {
+      type: "text",
+      value: "NAME",
       choices: ["simd", "plain"],
-      describe: "transform engine (default: simd where the machine has it)",
+      describe: "transform engine",
+      byDefault: "simd where the machine has it",
     },
-    timings: { type: "boolean", default: false, describe: "print the time by stage" },
-    block: { type: "number", requiresArg: true, hidden: true, describe: "readouts read at a time" },
-    ...READ_OPTIONS,
+    timings: { type: "switch", describe: "print the time by part of the work" },
+    block: { type: "whole", least: 1, value: "N", hidden: true, describe: "readouts read at a time" },
   },
   examples: [
     ["recon scan.h5 --out result", "image.npy, image.png and image.json in result/"],
-    ["recon scan.h5 --out result --set apodize.window=hann", "the same with a Hann window"],
+    ["recon scan.h5 --out hann --set apodize.window=hann", "the same with a Hann window"],
     ["recon scan.h5 --explain", "what would be done, and why"],
   ],
-  async run(flags, terminal, signal) {
-    const { requestOf } = await import("./plan-file.js");
+  notes: stageNotes,
+  async run(flags, terminal, signal, origins) {
     // The library compiles while the rest loads; what goes wrong there is heard when the file is opened.
     const { loadHdf5 } = await import("../ingest/hdf5.js");
     loadHdf5().catch(() => undefined);
+    const { requestOf } = await import("./plan-file.js");
     const { UsageError } = await import("../errors.js");
     const out = flags.out as string | undefined;
     if (!flags.explain && out === undefined)
       throw new UsageError({ field: "--out" }, "no folder to write into", "Give one: --out FOLDER");
     const request = requestOf(flags);
-    if (flags.explain) return explainOnly(flags, request, terminal, signal);
+    if (flags.explain) return explainOnly(flags, origins, request, terminal, signal);
     const { writeReconstruction } = await import("../engine/write-reconstruction.js");
     const written = await writeReconstruction(flags.raw as string, request.prepare, {
       ...runOptions(flags),
@@ -91,6 +89,7 @@ type Written = Awaited<ReturnType<typeof import("../engine/write-reconstruction.
 
 async function explainOnly(
   flags: Flags,
+  origins: Origins,
   request: Request,
   terminal: Terminal,
   signal: AbortSignal,
@@ -101,8 +100,11 @@ async function explainOnly(
   const scan = await readScan(flags.raw as string, { overrides: request.overrides, signal, progress });
   const { plan, recipe, outputs } = request.prepare(scan.facts);
   terminal.discrepancies(scan.discrepancies);
-  terminal.result(explain(scan, plan, request.source));
+  terminal.result(explain(scan, plan, request.source, flags, origins));
   terminal.document({
+    settings: Object.fromEntries(
+      Object.entries(origins).map(([name, from]) => [name, { value: flags[name] ?? null, from }]),
+    ),
     plan: plan.stages.map(({ stage, ...rest }) => ({ id: stage.id, ...rest })),
     recipe,
     outputs,
@@ -110,9 +112,8 @@ async function explainOnly(
 }
 
 function runOptions(flags: Flags) {
-  const blockRows = wholeNumber(flags, "block", 1);
-  const workers = wholeNumber(flags, "workers", 1);
-  const memoryMb = wholeNumber(flags, "memory", 1);
+  // The parser has checked each type.
+  const [blockRows, workers, memoryMb] = [flags.block, flags.workers, flags.memory] as (number | undefined)[];
   const transform = flags.transform as "simd" | "plain" | undefined;
   return {
     ...(blockRows !== undefined && { blockRows }),
@@ -143,12 +144,13 @@ function report(written: Written, terminal: Terminal): void {
     ? `, ${facts.lines.missing} of ${facts.lines.expected} lines missing (zero)`
     : "";
   terminal.result(
-    `${facts.channels} channel(s), ${facts.slices} slice(s), ${facts.echoes} echo(es)${missing}`,
+    `${counted(facts.channels, "channel")}, ${counted(facts.slices, "slice")}, ` +
+      `${counted(facts.echoes, "echo", "echoes")}${missing}`,
   );
   terminal.result(
     `${perPixel.toPrecision(4)} Hz per pixel: fat lies ${fat.pixels.toFixed(2)} px (${fat.mm.toFixed(2)} mm) from water along x`,
   );
   const problems = discrepancies.filter(({ severity }) => severity === "problem").length;
-  if (problems) terminal.result(`${problems} discrepancies; see the sidecar`);
+  if (problems) terminal.result(`${counted(problems, "discrepancy", "discrepancies")}: see image.json`);
   terminal.result("For research only, not for diagnosis or treatment.");
 }

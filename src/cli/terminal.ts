@@ -1,5 +1,6 @@
 import { CarillonError } from "../errors.js";
 import type { Discrepancy } from "../physics/scan.js";
+import { wrap } from "./text.js";
 
 /** Exit codes of every command (DEVELOPERS.md). */
 export const EXIT = {
@@ -28,7 +29,7 @@ export class Terminal {
 
   /** A result, for people; `--json` prints the document instead. */
   result(text: string): void {
-    if (!this.options.json) process.stdout.write(`${text}\n`);
+    if (!this.options.json) process.stdout.write(`${printable(text)}\n`);
   }
 
   /** The one document of `--json`. */
@@ -46,7 +47,7 @@ export class Terminal {
   discrepancies(found: readonly Discrepancy[]): void {
     for (const { severity, message } of found) {
       const mark = severity === "problem" ? this.#paint("33", "discrepancy") : "note";
-      this.message(wrap(`${mark}: ${message}`, 80, "  "));
+      this.message(wrap(`${mark}: ${printable(message)}`, 80, "  "));
     }
   }
 
@@ -69,6 +70,11 @@ export class Terminal {
     }
   }
 
+  /** What somebody needs whose command line is incomplete. */
+  help(text: string): void {
+    if (!this.options.json) process.stderr.write(`\n${text}\n`);
+  }
+
   /** Say what went wrong, in one line, and return the exit code. */
   failure(error: unknown): number {
     this.#clearBar();
@@ -85,7 +91,7 @@ export class Terminal {
       if (!known && !interrupted && !this.options.debug)
         process.stderr.write("Run again with --debug to see where.\n");
     }
-    if (this.options.debug && error instanceof Error) process.stderr.write(`${error.stack}\n`);
+    if (this.options.debug) process.stderr.write(`${printable(stackOf(error))}\n`);
     return exitCode;
   }
 
@@ -100,29 +106,24 @@ export class Terminal {
   }
 }
 
+/** Where an error arose, and the one behind it; bounded, because those of the HDF5 library can be pages. */
+function stackOf(error: unknown): string {
+  if (!(error instanceof Error)) return String(error).slice(0, 4000);
+  const own = (error.stack ?? error.message).slice(0, 4000);
+  return error.cause === undefined ? own : `${own}\ncaused by: ${stackOf(error.cause)}`;
+}
+
 /** Uncaught errors of the HDF5 library print pages: one line, and not a long one. */
 function firstLine(error: unknown): string {
   const text = error instanceof Error ? error.message : String(error);
-  const line = text.split("\n", 1)[0] ?? "";
-  return line.length > 300 ? `${line.slice(0, 297)}...` : line;
+  const line = printable(text.split("\n", 1)[0] ?? "");
+  return line.length > LONGEST_MESSAGE ? `${line.slice(0, LONGEST_MESSAGE - 3)}...` : line;
 }
 
-/** Break a line at spaces so that it fits a terminal of `width` columns. */
-export function wrap(text: string, width: number, indent: string): string {
-  const lines: string[] = [];
-  const words = text.trimStart().split(" ");
-  let line = text.slice(0, text.length - text.trimStart().length) + words.shift();
-  for (const word of words) {
-    const next = `${line} ${word}`;
-    if (visibleLength(next) > width) {
-      lines.push(line);
-      line = indent + word;
-    } else line = next;
-  }
-  return [...lines, line].join("\n");
-}
+const LONGEST_MESSAGE = 500;
 
-function visibleLength(text: string): number {
-  // biome-ignore lint/suspicious/noControlCharactersInRegex: escape sequences are what is left out
-  return text.replace(/\u001b\[\d+m/g, "").length;
+/** Names and header text come from files of others: what would command the terminal is shown as a question mark. */
+function printable(text: string): string {
+  // biome-ignore lint/suspicious/noControlCharactersInRegex: control characters are what must not get through
+  return text.replace(/[\u0000-\u0009\u000b-\u001f\u007f-\u009f]/g, "?");
 }

@@ -122,9 +122,9 @@ export class GroupStore {
     if (this.#memory.usedBytes + 4 * floats > this.#budgetBytes) {
       if (this.#open.size === 0 && this.#closed.size === this.#finishedBefore.size)
         throw new UsageError(
-          { field: "--memory", value: `${Math.floor(this.#budgetBytes / 1e6)} MB` },
-          `one image needs ${Math.ceil((4 * floats) / 1e6)} MB of samples beside the blocks that are read`,
-          "Allow more memory, or fewer --workers",
+          { field: "--memory" },
+          `too little: one image needs ${Math.ceil((4 * floats) / 1e6)} MB of samples beside the blocks that are read`,
+          "Allow more memory",
         );
       this.#deferred.add(group);
       return undefined;

@@ -120,7 +120,8 @@ async function attemptRun<A extends Attempt>(
     index,
     blockRows: options.blockRows ?? DEFAULT_BLOCK_ROWS,
     keepCoils: options.keepCoils ?? false,
-    budgetBytes: options.memoryBytes ?? totalmem() / 4,
+    // What plans and workers have taken already is not for samples.
+    budgetBytes: memory.usedBytes + (options.memoryBytes ?? totalmem() / 4),
     expected: scan ? countedReadouts(scan, plan) : () => previewReadouts(facts, raw, plan.framesPerGroup),
     signal: options.signal,
     progress: options.progress ?? (() => undefined),

@@ -73,7 +73,7 @@ export async function writeReconstruction(
     });
     const { scan, timings } = done;
     if (options.strict) failOnProblem(scan);
-    const files = await done.attempt.finish(scan, input!, timings);
+    const files = await done.attempt.finish(scan, input!, timings, options.signal);
     return {
       folder: options.out,
       files,
@@ -151,15 +151,19 @@ class Writing implements Attempt {
   }
 
   /** Draw the pictures, hash, write the sidecar and rename everything. Returns the paths. */
-  async finish(scan: Scan, hashing: Promise<FileHashes>, timings: Timings): Promise<string[]> {
+  async finish(
+    scan: Scan,
+    hashing: Promise<FileHashes>,
+    timings: Timings,
+    signal: AbortSignal | undefined,
+  ): Promise<string[]> {
     // Arrays are hashed while the pictures are drawn.
     for (const { record } of this.#writers) this.#set.sealOne(record.file).catch(() => undefined); // awaited by seal
     const pictures = timings.measure("pictures", () =>
       this.#writers.flatMap((writer) => writer.drawPictures(scan)),
     );
     const start = performance.now();
-    const outputs = await this.#set.seal();
-    const input = await hashing;
+    const [outputs, input] = await unlessAborted(Promise.all([this.#set.seal(), hashing]), signal);
     timings.add("wait for hashes", (performance.now() - start) / 1e3);
     const { plan, recipe } = this.#prepared;
     const text = sidecar({
@@ -177,6 +181,17 @@ class Writing implements Attempt {
     this.#set.commit(`${JSON.stringify(text, null, 1)}\n`);
     return [...this.#names, "image.json"].map((name) => path.join(this.#out, name));
   }
+}
+
+/** What `work` resolves to, or the signal's reason as soon as it is aborted: hashes of large files take seconds. */
+async function unlessAborted<T>(work: Promise<T>, signal: AbortSignal | undefined): Promise<T> {
+  if (!signal) return work;
+  const aborted = new Promise<never>((_, reject) => {
+    signal.addEventListener("abort", () => reject(signal.reason), { once: true });
+  });
+  const done = await Promise.race([work, aborted]);
+  signal.throwIfAborted();
+  return done;
 }
 
 /** The smallest and largest noise gain over all groups. */

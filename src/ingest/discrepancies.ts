@@ -22,6 +22,14 @@ export function findDiscrepancies(header: RawHeader, index: ScanIndex, scan: Sca
   return found;
 }
 
+/** Counters of the readouts, and what encodingLimits calls them. */
+const LIMIT_OF = [
+  ["kspace_encode_step_1", "kspace_encoding_step_1"],
+  ["kspace_encode_step_2", "kspace_encoding_step_2"],
+  ["average", "average"],
+  ...FRAME_AXES.map((axis) => [axis, axis] as const),
+] as const;
+
 type Say = (code: string, message: string) => void;
 
 function checkHeader(header: RawHeader, index: ScanIndex, scan: ScanFacts, problem: Say, remark: Say): void {
@@ -61,6 +69,12 @@ function checkHeader(header: RawHeader, index: ScanIndex, scan: ScanFacts, probl
     ...(!limits.kspace_encoding_step_1 && scan.dimensions > 1 ? ["kspace_encoding_step_1"] : []),
     ...(!limits.kspace_encoding_step_2 && scan.dimensions > 2 ? ["kspace_encoding_step_2"] : []),
   ];
+  for (const [counter, limit] of LIMIT_OF) {
+    const stated = limits[limit]?.maximum;
+    const { maximum } = index.ranges[counter];
+    if (stated !== undefined && maximum > stated)
+      problem("beyond-limits", `${counter} goes up to ${maximum}, encodingLimits up to ${stated}`);
+  }
   if (inferred.length)
     remark("limits-inferred", `encodingLimits lacks ${inferred.join(", ")}; taken from the counters`);
   if (index.allZero)

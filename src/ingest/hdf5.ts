@@ -157,6 +157,8 @@ function guarded<T>(file: string, field: string | undefined, rule: string, mend:
 /** The innermost line of an HDF5 error stack, which says what went wrong. */
 function diagnosis(error: unknown): string {
   const text = error instanceof Error ? error.message : String(error);
+  const [, there, wanted] = /truncated file: eof = (\d+),.*stored_eof = (\d+)/.exec(text) ?? [];
+  if (there) return `only ${there} of its ${wanted} bytes are there`;
   const frames = [...text.matchAll(/#\d+: .*? in \w+\(\): (.*)/g)].map((match) => match[1]?.trim());
   return frames.at(-1)?.slice(0, 160) ?? text.split("\n", 1)[0]?.slice(0, 160) ?? "unknown fault";
 }

@@ -139,7 +139,11 @@ function noGroupRule(hdf5: Hdf5File, paths: string[]): string {
   const records = paths.find((path) => isReadoutRecord(hdf5.metadata(path)));
   if (records) return `${base}: ${records} has no header beside it`;
   const headers = paths.find((path) => path.endsWith("/xml"));
-  return headers ? `${base}: beside ${headers} there are no readouts` : base;
+  if (!headers) return base;
+  const beside = headers.replace(/xml$/, "data");
+  return paths.includes(beside)
+    ? `${base}: ${beside} is something else, or damaged`
+    : `${base}: beside ${headers} there are no readouts`;
 }
 
 function readHeaderText(hdf5: Hdf5File, path: string): string {

@@ -162,8 +162,7 @@ export class ScanIndex {
     const total = this.#addEnergy(head, samples, backward);
     this.#addRanges(head, backward);
     const counters = {} as Record<FrameAxis, number>;
-    for (const axis of FRAME_AXES)
-      counters[axis] = frameCounter(head, axis, this.#overrides.averageOver);
+    for (const axis of FRAME_AXES) counters[axis] = frameCounter(head, axis, this.#overrides.averageOver);
     const key = FRAME_AXES.map((axis) => counters[axis]).join();
     let frame = this.frames.get(key);
     if (!frame) {

@@ -16,7 +16,8 @@ export interface SimdPlace extends RegionPlace {
 
 /** Bytes of a complex64 sample. */
 const SAMPLE = 8;
-const FIRST_REGION_BYTES = 1 << 18;
+/** Room for some forty plans of matrix sizes; untouched pages cost nothing. */
+const FIRST_REGION_BYTES = 1 << 22;
 
 /** A transform between arrays, resolved: lengths known, plan written. */
 interface Run extends AxisLengths {

@@ -7,6 +7,19 @@ import { RECIPE_VERSION } from "./schema.js";
 const SUPPORTED = ["cartesian"];
 
 /**
+ * Any recipe would make a wrong image of readouts that do not lie on straight, parallel lines.
+ * @throws InputError for a trajectory that is not supported
+ */
+export function refuseUnsupported(scan: ScanFacts, file: string): void {
+  if (!SUPPORTED.includes(scan.trajectory))
+    throw new InputError(
+      { file, field: "header: trajectory", value: scan.trajectory },
+      `only ${SUPPORTED.join(", ")} is supported so far`,
+      "Inspect the file with: carillon inspect RAW",
+    );
+}
+
+/**
  * The recipe for what a scan is, without a window, and why each stage is in it.
  * @throws InputError for a trajectory that is not supported
  */
@@ -14,12 +27,7 @@ export function defaultRecipe(
   scan: ScanFacts,
   file: string,
 ): { recipe: Recipe; reasons: Map<string, string> } {
-  if (!SUPPORTED.includes(scan.trajectory))
-    throw new InputError(
-      { file, field: "header: trajectory", value: scan.trajectory },
-      `only ${SUPPORTED.join(", ")} is supported so far`,
-      "Inspect the file with: carillon inspect RAW",
-    );
+  refuseUnsupported(scan, file);
   const reasons = new Map<string, string>();
   const kept = trimmedLength(scan);
   if (kept < scan.encoded.matrix.x)

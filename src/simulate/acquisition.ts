@@ -172,7 +172,7 @@ function checkEchoTimes(a: Acquisition): void {
     if (!(seconds >= earliest && Number.isFinite(seconds)))
       throw new UsageError(
         { field: `echoTimesSeconds[${echo}]`, value: seconds },
-        `must be at least ${earliest}, the time from the first sample to k = 0`,
+        `must be at least ${Number(earliest.toPrecision(6))} s, the time from the first sample to k = 0`,
         "Give a later echo time, a shorter dwell time or a partial echo.",
       );
   }

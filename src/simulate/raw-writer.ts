@@ -51,7 +51,7 @@ export async function writeRaw(
     refuseExisting(file, options);
     await rename(temporary, file);
   } catch (error) {
-    await rm(temporary, { force: true });
+    await rm(temporary, { force: true }).catch(() => undefined); // the fault that led here is the one to report
     throw options.signal?.aborted ? error : outputFault(file, error);
   }
 }

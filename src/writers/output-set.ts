@@ -2,6 +2,7 @@ import fs from "node:fs";
 import path from "node:path";
 import process from "node:process";
 import { OutputError, UsageError } from "../errors.js";
+import { makeFolder, removeFolders } from "./folder.js";
 import { elementCount, type NpyDtype, NpyFile, npyItemBytes } from "./npy.js";
 import { hashFile, OutputFile, type OutputRecord, sha256, writing } from "./output-file.js";
 
@@ -55,7 +56,7 @@ export class OutputSet {
     }
     if (new Set(all).size < all.length) throw new Error(`an output name occurs twice: ${all.join(" ")}`);
     this.#refuseExisting();
-    this.#madeFolders = makeFolder(this.folder);
+    this.#madeFolders = writing(this.folder, () => makeFolder(this.folder));
     removeLeftovers(this.folder, all);
   }
 
@@ -145,7 +146,7 @@ export class OutputSet {
       quietly(() => fs.rmSync(file.temporaryPath, { force: true }));
       held.delete(file.temporaryPath);
     }
-    for (const folder of this.#madeFolders) quietly(() => fs.rmdirSync(folder));
+    removeFolders(this.#madeFolders);
   }
 
   #create(name: string): OutputFile {
@@ -184,16 +185,6 @@ export class OutputSet {
   #final(name: string): string {
     return path.join(this.folder, name);
   }
-}
-
-/** Make a folder and its parents; gives those that were made, deepest first. */
-function makeFolder(folder: string): string[] {
-  const first = writing(folder, () => fs.mkdirSync(folder, { recursive: true }));
-  const made: string[] = [];
-  if (first !== undefined) {
-    for (let at = folder; at.length >= first.length; at = path.dirname(at)) made.push(at);
-  }
-  return made;
 }
 
 /**

@@ -2,12 +2,10 @@
 
 import { add, mul, POINT, put, putTurned, splat, sub } from "./lanes";
 
-// @ts-ignore: decorator
 @inline
 const PAIR: usize = 2 * POINT;
 
 /** Outputs k and r - k from their cosine part (re, im) and sine part (qRe, qIm). */
-// @ts-ignore: decorator
 @inline
 function outputs(low: usize, high: usize, re: v128, im: v128, qRe: v128, qIm: v128, wLow: usize, wHigh: usize): void {
   if (wLow) {
@@ -20,7 +18,6 @@ function outputs(low: usize, high: usize, re: v128, im: v128, qRe: v128, qIm: v1
 }
 
 /** Sums x[j] + x[r-j] and differences x[j] - x[r-j], j = 1 .. (r-1)/2, into `work`; their total to `y`. */
-// @ts-ignore: decorator
 @inline
 function fold(work: usize, end: usize, x: usize, jump: usize, last: usize, y: usize): void {
   let totalRe = v128.load(x), totalIm = v128.load(x, 16);

@@ -1,5 +1,4 @@
 /** y = gain x over `count` floats. */
-// @ts-ignore: decorator
 @inline
 function scaleRun(x: usize, y: usize, count: usize, gain: f32): void {
   const gains = f32x4.splat(gain), end = x + (count << 2), vectors = x + ((count & ~3) << 2);
@@ -8,7 +7,6 @@ function scaleRun(x: usize, y: usize, count: usize, gain: f32): void {
 }
 
 /** Complex y[i] = window[i] x[i], a gain for each of `count` samples. */
-// @ts-ignore: decorator
 @inline
 function multiplyRun(x: usize, y: usize, window: usize, count: usize): void {
   const end = window + (count << 2), vectors = window + ((count & ~3) << 2);

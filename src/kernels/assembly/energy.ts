@@ -1,5 +1,4 @@
 /** |x|^2 of the two complex64 samples at `x`, in float64. */
-// @ts-ignore: decorator
 @inline
 function squares(x: usize): v128 {
   const samples = v128.load(x);
@@ -9,7 +8,6 @@ function squares(x: usize): v128 {
 }
 
 /** |x|^2 of one sample. */
-// @ts-ignore: decorator
 @inline
 function square(x: usize): f64 {
   const re = <f64>load<f32>(x), im = <f64>load<f32>(x, 4);

@@ -44,7 +44,6 @@ function pass(row: usize, x: usize, y: usize): void {
 }
 
 /** Points at `data` times the table's complex numbers, real and imaginary parts swapped. */
-// @ts-ignore: decorator
 @inline
 function filterSwapped(data: usize, table: usize, count: usize): void {
   for (const end = data + count * POINT; data < end; data += POINT, table += 8) {

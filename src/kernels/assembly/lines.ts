@@ -4,7 +4,6 @@
 import { mul, POINT } from "./lanes";
 
 /** Adjacent lines: sample j of all four is 32 bytes. */
-// @ts-ignore: decorator
 @inline
 function loadColumns(count: usize, x: usize, step: usize, to: usize, re: usize, im: usize): void {
   for (const end = to + count * POINT; to < end; to += POINT, x += step) {
@@ -14,7 +13,6 @@ function loadColumns(count: usize, x: usize, step: usize, to: usize, re: usize, 
   }
 }
 
-// @ts-ignore: decorator
 @inline
 function storeColumns(count: usize, from: usize, y: usize, step: usize, re: usize, im: usize, scale: v128): void {
   for (const end = from + count * POINT; from < end; from += POINT, y += step) {
@@ -46,7 +44,6 @@ export function storeWide(
 }
 
 /** Lines anywhere, samples `step` apart. */
-// @ts-ignore: decorator
 @inline
 function loadApart(
   count: usize, x: usize, step: usize, lane1: usize, lane2: usize, lane3: usize, to: usize, re: usize, im: usize,
@@ -59,7 +56,6 @@ function loadApart(
   }
 }
 
-// @ts-ignore: decorator
 @inline
 function storeApart(
   count: usize, from: usize, y: usize, step: usize, lane1: usize, lane2: usize, lane3: usize, re: usize, im: usize, scale: v128,
@@ -75,7 +71,6 @@ function storeApart(
 }
 
 /** Lines anywhere, samples adjacent: two samples of each line at a time, transposed. */
-// @ts-ignore: decorator
 @inline
 function loadRows(count: usize, x: usize, lane1: usize, lane2: usize, lane3: usize, to: usize, re: usize, im: usize): void {
   for (const end = to + (count & ~1) * POINT; to < end; to += 2 * POINT, x += 16) {
@@ -90,7 +85,6 @@ function loadRows(count: usize, x: usize, lane1: usize, lane2: usize, lane3: usi
   if (count & 1) loadApart(1, x, 8, lane1, lane2, lane3, to, re, im);
 }
 
-// @ts-ignore: decorator
 @inline
 function storeRows(
   count: usize, from: usize, y: usize, lane1: usize, lane2: usize, lane3: usize, re: usize, im: usize, scale: v128,

@@ -5,7 +5,6 @@ const BLOCK: usize = 8;
 const BLOCK_BYTES: usize = 64;
 
 /** Eight complex samples as re, im, re, im vectors of four. */
-// @ts-ignore: decorator
 @inline
 function part(from: usize, to: usize): void {
   const a = v128.load(from), b = v128.load(from, 16), c = v128.load(from, 32), d = v128.load(from, 48);
@@ -16,7 +15,6 @@ function part(from: usize, to: usize): void {
 }
 
 /** Eight samples of one output channel: the parted channels at `x`, times a matrix row's entries from `w` to `end`. */
-// @ts-ignore: decorator
 @inline
 function mixRow(x: usize, w: usize, end: usize, y: usize): void {
   let aRe = f32x4.splat(0), aIm = aRe, bRe = aRe, bIm = aRe;
@@ -51,8 +49,7 @@ export function mixChannels(
       for (let p = work; p < spare; p += BLOCK_BYTES, from += row) {
         if (whole) part(from, p);
         else {
-          memory.fill(spare, 0, BLOCK_BYTES);
-          memory.copy(spare, from, bytes);
+          memory.copy(spare, from, bytes); // what stands behind is mixed too, and dropped
           part(spare, p);
         }
       }

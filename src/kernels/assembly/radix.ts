@@ -6,7 +6,6 @@
 import { add, mul, POINT, put, putTurned, splat, sub } from "./lanes";
 
 /** Store output k of a butterfly, turned by the complex number at `w` unless this is the row p = 0. */
-// @ts-ignore: decorator
 @inline
 function out(turn: bool, to: usize, re: v128, im: v128, w: usize): void {
   if (turn) putTurned(to, re, im, splat(w), splat(w + 4));
@@ -14,14 +13,12 @@ function out(turn: bool, to: usize, re: v128, im: v128, w: usize): void {
 }
 
 /** Outputs k and r - k: (re, im) -+ i (qRe, qIm). */
-// @ts-ignore: decorator
 @inline
 function pair(turn: bool, low: usize, high: usize, re: v128, im: v128, qRe: v128, qIm: v128, wLow: usize, wHigh: usize): void {
   out(turn, low, add(re, qIm), sub(im, qRe), wLow);
   out(turn, high, sub(re, qIm), add(im, qRe), wHigh);
 }
 
-// @ts-ignore: decorator
 @inline
 function row2(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT;
@@ -33,7 +30,6 @@ function row2(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
   }
 }
 
-// @ts-ignore: decorator
 @inline
 function row3(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT;
@@ -52,7 +48,6 @@ function row3(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
   }
 }
 
-// @ts-ignore: decorator
 @inline
 function row4(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT;
@@ -82,7 +77,6 @@ function row4(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
   }
 }
 
-// @ts-ignore: decorator
 @inline
 function row5(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT;
@@ -111,13 +105,11 @@ function row5(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
 }
 
 /** a + c1 t1 + c2 t2 + c3 t3. */
-// @ts-ignore: decorator
 @inline
 function cosines(a: v128, c1: v128, t1: v128, c2: v128, t2: v128, c3: v128, t3: v128): v128 {
   return add(add(a, mul(c1, t1)), add(mul(c2, t2), mul(c3, t3)));
 }
 
-// @ts-ignore: decorator
 @inline
 function row7(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT;
@@ -157,7 +149,6 @@ function row7(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): 
 }
 
 // Radix 8: radix 4 of the even and of the odd inputs, the odd ones turned by eighths, then sums and differences.
-// @ts-ignore: decorator
 @inline
 function row8(turn: bool, s: usize, x: usize, y: usize, jump: usize, w: usize): void {
   const step = s * POINT, eighth = f32x4.splat(0.7071067811865476);

@@ -1,0 +1,83 @@
+import { UsageError } from "../errors.js";
+import type { Flags } from "./command.js";
+
+type SimulateOptions = Parameters<typeof import("../simulate/index.js")["simulateRaw"]>[0];
+
+/** What the flags of `carillon simulate` ask for. @throws UsageError */
+export function simulationOf(flags: Flags): SimulateOptions {
+  const value = (name: string) => flags[name] as number; // the parser has checked each type and filled in defaults
+  const noise = value("noise");
+  return {
+    file: flags.out as string,
+    overwrite: flags.force === true,
+    phantom: flags.phantom as SimulateOptions["phantom"],
+    matrix: { x: value("matrix"), y: value("matrix") },
+    fovMm: { x: value("fov-mm"), y: value("fov-mm") },
+    readoutOversampling: value("oversampling"),
+    coils: value("coils"),
+    slices: value("slices"),
+    echoTimesSeconds: (flags["te-ms"] as number[] | undefined)?.map((ms) => ms * 1e-3),
+    reversedEchoes: flags["reversed-echoes"] as SimulateOptions["reversedEchoes"],
+    repetitions: value("repetitions"),
+    averages: value("averages"),
+    dwellSeconds: value("dwell-us") * 1e-6,
+    fieldT: value("field-t"),
+    offResonanceHz: value("off-resonance-hz"),
+    partialEcho: value("partial-echo"),
+    partialFourier: value("partial-fourier"),
+    noise: {
+      sigma: noise,
+      readouts: (flags["noise-readouts"] as number | undefined) ?? (noise === 0 ? 0 : DEFAULT_NOISE_READOUTS),
+    },
+    rotationDegrees: rotation(flags["rotate-deg"] as string | undefined),
+    seed: value("seed"),
+  };
+}
+
+const DEFAULT_NOISE_READOUTS = 4;
+
+function rotation(text: string | undefined): readonly [number, number, number] | undefined {
+  if (text === undefined) return undefined;
+  const parts = text.split(",");
+  const [x, y, z] = parts.map((part) => (part.trim() === "" ? Number.NaN : Number(part)));
+  if (parts.length !== 3 || ![x, y, z].every(Number.isFinite))
+    throw new UsageError(
+      { field: "--rotate-deg", value: text },
+      "must be three angles in degrees, with commas between",
+      "For example: --rotate-deg=10,0,-20",
+    );
+  return [x!, y!, z!];
+}
+
+/** The simulator's names of options, by the flags that set them. */
+const FLAG_OF: Readonly<Record<string, string>> = {
+  "matrix.x": "matrix",
+  "matrix.y": "matrix",
+  "matrix.x times readoutOversampling": "oversampling",
+  "fovMm.x": "fov-mm",
+  "fovMm.y": "fov-mm",
+  readoutOversampling: "oversampling",
+  partialEcho: "partial-echo",
+  partialFourier: "partial-fourier",
+  dwellSeconds: "dwell-us",
+  fieldT: "field-t",
+  offResonanceHz: "off-resonance-hz",
+  "noise.sigma": "noise",
+  "noise.readouts": "noise-readouts",
+};
+
+/** An error about an option of the simulator, as one about the flag that the user gave. */
+export function inFlags(error: unknown, flags: Flags): unknown {
+  if (!(error instanceof UsageError) || error.place.field === undefined) return error;
+  const { field } = error.place;
+  const echo = /^echoTimesSeconds\[(\d+)\]$/.exec(field)?.[1];
+  if (echo !== undefined) {
+    const value = (flags["te-ms"] as number[] | undefined)?.[Number(echo)];
+    return new UsageError({ field: "--te-ms", value }, error.rule, error.mend, {
+      cause: error,
+    });
+  }
+  const flag = FLAG_OF[field] ?? field;
+  const value = flags[flag];
+  return new UsageError({ field: `--${flag}`, value }, error.rule, error.mend, { cause: error });
+}
