@@ -4,7 +4,9 @@ import { readFileSync } from "node:fs";
 
 const [file, status] = process.argv.slice(2);
 const report = JSON.parse(readFileSync(file, "utf8"));
-const broken = report.testResults.filter((suite) => suite.status === "failed" && suite.assertionResults.length === 0);
+const broken = report.testResults.filter(
+  (suite) => suite.status === "failed" && suite.assertionResults.length === 0,
+);
 const failed = report.numFailedTests + broken.length;
 for (const suite of broken) console.log(`failed to import: ${suite.name}\n${suite.message}`);
 const skipped = report.numPendingTests + report.numTodoTests;

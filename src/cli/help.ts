@@ -59,9 +59,8 @@ export async function commandHelp(command: Command): Promise<string> {
   lines.push(
     "",
     wrap(
-      "Any flag can come from the environment: CARILLON_JSON=1, CARILLON_OUT=FOLDER; lists with spaces between. " +
-        "A flag on the command " +
-        "line comes first, then the environment, then a recipe, then the default.",
+      "Any flag can come from the environment: CARILLON_JSON=1, CARILLON_OUT=FOLDER, a list with spaces between. " +
+        "A flag on the command line comes first, then the environment, then a recipe, then the default.",
       WIDTH,
       "",
     ),

@@ -8,7 +8,10 @@ export interface HashRequest {
   readonly file: string;
   readonly payloadStart: number | undefined;
 }
-export type HashReply = { readonly id: number } & ({ readonly hashes: FileHashes } | { readonly error: unknown });
+export type HashReply = { readonly id: number } & (
+  | { readonly hashes: FileHashes }
+  | { readonly error: unknown }
+);
 
 /** Below this many bytes hashing takes less time than starting a thread for it. */
 const WORTH_A_THREAD_BYTES = 24e6;

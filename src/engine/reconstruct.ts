@@ -73,7 +73,11 @@ class PassRun {
   readonly #groups = new Set<Promise<void>>();
   #failure: unknown;
 
-  constructor(pass: Pass, finished: ReadonlySet<number>, use: (group: number, result: GroupResult) => Promise<void>) {
+  constructor(
+    pass: Pass,
+    finished: ReadonlySet<number>,
+    use: (group: number, result: GroupResult) => Promise<void>,
+  ) {
     this.#pass = pass;
     this.#use = use;
     const { plan, scan, memory, budgetBytes, expected } = pass;

@@ -100,7 +100,7 @@ export class Hdf5File {
   withRows<T>(path: string, metadata: Metadata, first: number, count: number, use: (rows: Rows) => T): T {
     const shape = metadata.shape ?? [];
     const long = shape.findIndex((length) => length > 1);
-    const axis = long < 0 ? 0 : long;
+    const axis = Math.max(long, 0);
     const counts = shape.map((_, i) => BigInt(i === axis ? count : 1));
     const offsets = shape.map((_, i) => BigInt(i === axis ? first : 0));
     const { heap, pointer } = this.#read(path, counts, offsets, count * metadata.size, first);

@@ -55,7 +55,7 @@ export class RecordType {
 
   /** @throws InputError naming the member that is absent or of a type that the standard does not have. */
   constructor(file: string, path: string, metadata: Metadata) {
-    const members = new Map(flatten(metadata.compound_type?.members ?? [], "", 0));
+    const members = new Map(inMemoryOrder([...flatten(metadata.compound_type?.members ?? [], "", 0)]));
     const find = (name: string): CompoundMember => {
       const member = members.get(name);
       if (!member) throw new InputError({ file, field: `${path}: member ${name}` }, "is missing", STANDARD);
@@ -159,6 +159,25 @@ function* flatten(
     if (member.type === COMPOUND)
       yield* flatten(member.compound_type?.members ?? [], `${prefix}${member.name}.`, placed.offset);
   }
+}
+
+/**
+ * The members with the byte order that the library's memory holds. It turns a record round whose members are all
+ * big-endian, and hands out one of mixed order as it is in the file (h5wasm 0.10.3, measured).
+ */
+function inMemoryOrder(members: [string, CompoundMember][]): [string, CompoundMember][] {
+  const orders = members
+    .filter(([, member]) => member.type !== COMPOUND)
+    .map(([, member]) => (member.array_type ?? member.vlen_type ?? member).littleEndian);
+  if (orders.includes(true)) return members;
+  const turned = <T extends Metadata | undefined>(type: T): T => (type ? { ...type, littleEndian: true } : type);
+  return members.map(([name, member]) => {
+    const parts = {
+      ...(member.array_type && { array_type: turned(member.array_type) }),
+      ...(member.vlen_type && { vlen_type: turned(member.vlen_type) }),
+    };
+    return [name, { ...member, littleEndian: true, ...parts }];
+  });
 }
 
 function numberGetter(

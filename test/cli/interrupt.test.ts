@@ -1,4 +1,4 @@
-import { existsSync, mkdirSync, readdirSync, readFileSync } from "node:fs";
+import { existsSync, mkdirSync, readdirSync, readFileSync, rmSync } from "node:fs";
 import path from "node:path";
 import { beforeAll, describe, test } from "vitest";
 import { RandomStream } from "../../src/simulate/random.js";
@@ -72,14 +72,16 @@ describe.concurrent("17 Ctrl-C: no partial files, exit 130 within two seconds", 
 describe.concurrent("5 exit 1: a fault of the program", () => {
   /** Loaded before the program: throws outside every promise, as a library's callback may. */
   const throwAfter = (milliseconds: number) =>
-    `--import=data:text/javascript,setTimeout(()=>{throw(new(Error)("x".repeat(1e6)))},${milliseconds})`;
+    `--import=data:text/javascript,setTimeout(()=>{throw(new(Error)('x'.repeat(1e6)))},${milliseconds})`;
 
   test("outside the command's own flow: one short line, and no partial files", async ({ expect }) => {
     const out = at("fault/below");
     const { code, stdout, stderr } = await carillon(["recon", long, "--out", out, "--quiet", ...SLOW], {
       env: { NODE_OPTIONS: throwAfter(600) },
     });
-    expect(stderr).toMatch(/^error: a fault of this program: x{400,500}\.\.\.\nRun again with --debug to see where\.\n$/);
+    expect(stderr).toMatch(
+      /^error: a fault of this program: x{400,500}\.\.\.\nRun again with --debug to see where\.\n$/,
+    );
     expect({ code, stdout }).toEqual({ code: 1, stdout: "" });
     expect(existsSync(path.dirname(out))).toBe(false);
   });
@@ -100,7 +102,10 @@ describe("16 atomic outputs", () => {
       const there = existsSync(out) ? readdirSync(out).filter((name) => !name.startsWith(".")) : [];
       // They are renamed in this order, the sidecar last: where it is, the rest is.
       expect(there.sort()).toEqual(OUTPUTS.slice(0, there.length).sort());
-      if (there.length > 0 && !there.includes("image.json")) betweenRenames++;
+      if (there.length > 0 && !there.includes("image.json")) {
+        betweenRenames++;
+        rmSync(out, { recursive: true });
+      }
       if (signal === null) break; // it was done before the kill
     }
     // The renames take a fraction of a millisecond: more than one hit would mean that outputs grow under their names.

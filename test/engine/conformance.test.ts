@@ -33,7 +33,13 @@ const CASES = [
  */
 const BOUND = 1e-6;
 
-async function difference(folder: string, name: string, what: string, which: "coils" | "result", transform: "simd" | "plain") {
+async function difference(
+  folder: string,
+  name: string,
+  what: string,
+  which: "coils" | "result",
+  transform: "simd" | "plain",
+) {
   const truth = readNpy(path.join(folder, `${name}.${what}.npy`)).data as Float32Array;
   const found = new Float32Array(truth.length);
   const file = path.join(folder, `${name}.h5`);

@@ -31,7 +31,9 @@ async function arrays(raw: string, ...flags: string[]): Promise<Record<string, s
   const done = await carillon("recon", raw, "--out", out, "--quiet", "--save", "coils", "--force", ...flags);
   expect(done.stderr).toBe("");
   const { outputs } = JSON.parse(readFileSync(path.join(out, "image.json"), "utf8"));
-  return Object.fromEntries(outputs.map((o: { name: string; payloadSha256: string }) => [o.name, o.payloadSha256]));
+  return Object.fromEntries(
+    outputs.map((o: { name: string; payloadSha256: string }) => [o.name, o.payloadSha256]),
+  );
 }
 
 describe("the same bits for any number of workers, any block size, any memory", () => {
@@ -80,7 +82,16 @@ test("the plain engine agrees with the SIMD one to 1e-6 and says that it ran", a
   const raw = "data/conformance/oblique.h5";
   const out = (transform: string) => path.join(folder, transform);
   for (const transform of ["plain", "simd"]) {
-    const done = await carillon("recon", raw, "--out", out(transform), "--transform", transform, "--json", "--quiet");
+    const done = await carillon(
+      "recon",
+      raw,
+      "--out",
+      out(transform),
+      "--transform",
+      transform,
+      "--json",
+      "--quiet",
+    );
     expect(JSON.parse(done.stdout).transform).toBe(transform);
   }
   const values = (transform: string) => {
