@@ -170,7 +170,8 @@ function inMemoryOrder(members: [string, CompoundMember][]): [string, CompoundMe
     .filter(([, member]) => member.type !== COMPOUND)
     .map(([, member]) => (member.array_type ?? member.vlen_type ?? member).littleEndian);
   if (orders.includes(true)) return members;
-  const turned = <T extends Metadata | undefined>(type: T): T => (type ? { ...type, littleEndian: true } : type);
+  const turned = <T extends Metadata | undefined>(type: T): T =>
+    type ? { ...type, littleEndian: true } : type;
   return members.map(([name, member]) => {
     const parts = {
       ...(member.array_type && { array_type: turned(member.array_type) }),

@@ -1,9 +1,9 @@
 import { readdirSync } from "node:fs";
 import { expect, test } from "vitest";
+import { readScan } from "../../src/engine/scan.js";
 import { decodeReadout } from "../../src/ingest/decode.js";
 import { placeLine } from "../../src/ingest/place.js";
 import { RawFile } from "../../src/ingest/raw-file.js";
-import { readScan } from "../../src/engine/scan.js";
 import { readNpy } from "../../src/writers/npy.js";
 
 /** One scan in every layout in which raw files occur, written with h5py by scripts/make-layouts.py. */
@@ -29,7 +29,8 @@ test.each(files)("%s: every sample lands where it belongs", async (name) => {
         expect(head.dwellSeconds).toBeCloseTo(5e-6, 12);
         const { y } = placeLine(head, scan.facts, file);
         decodeReadout(block.samples(i), head, scan.facts, line, 0, file);
-        for (let coil = 0; coil < 2; coil++) found.set(line.subarray(16 * coil, 16 * coil + 16), 16 * (8 * coil + y));
+        for (let coil = 0; coil < 2; coil++)
+          found.set(line.subarray(16 * coil, 16 * coil + 16), 16 * (8 * coil + y));
       });
     });
   raw.close();
