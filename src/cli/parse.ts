@@ -110,8 +110,8 @@ function readFlags(
     const word = words[token.index]!; // tokens carry the index of the word that they come from
     const [name, off] = token.name.startsWith("no-") ? [token.name.slice(3), true] : [token.name, false];
     const option = Object.hasOwn(options, name) ? options[name] : undefined;
-    if (!option || (off && option.type !== "switch") || !word.startsWith("--"))
-      throw unknownFlag(word, command, commands);
+    const offValue = off && (option?.type !== "switch" || token.value !== undefined);
+    if (!option || offValue || !word.startsWith("--")) throw unknownFlag(word, command, commands);
     const value = off ? false : flagValue(option, `--${name}`, token.value, token.inlineValue === true);
     if (origins[name] && !option.repeatable)
       throw new UsageError({ field: `--${name}` }, "is given more than once", "Give it once");
@@ -119,24 +119,35 @@ function readFlags(
     origins[name] = "flag";
   }
   Object.assign(flags, readArguments(command, strays));
-  for (const [name, option] of Object.entries(options)) {
+  complete(command, flags, origins, environment);
+  return { flags, origins };
+}
+
+/** Fill in what the command line leaves open: from the environment, else the default. */
+function complete(
+  command: Command,
+  flags: Record<string, unknown>,
+  origins: Record<string, string>,
+  environment: Environment,
+): void {
+  for (const [name, option] of Object.entries(optionsOf(command))) {
     if (origins[name]) continue;
     const variable = environmentName(name);
-    const text = environment[variable];
-    if (text !== undefined && text !== "") {
-      const values = (option.repeatable ? text.trim().split(/\s+/) : [text]).map((part) =>
+    const text = environment[variable]?.trim();
+    if (text) {
+      const values = (option.repeatable ? text.split(/\s+/) : [text]).map((part) =>
         parseValue(option, variable, part),
       );
       flags[name] = option.repeatable ? values : values[0];
       origins[name] = variable;
     } else {
+      // Whether there is colour depends on the terminal, so that switch has no default.
       const fallback = option.fallback ?? (option.type === "switch" && name !== "color" ? false : undefined);
       if (fallback !== undefined) flags[name] = fallback;
       origins[name] = "default";
     }
     if (option.required && flags[name] === undefined) throw missing(`--${name} ${option.value}`, command);
   }
-  return { flags, origins };
 }
 
 function tokensOf(words: readonly string[], options: Readonly<Record<string, Option>>) {

@@ -5,7 +5,6 @@ import { InputError } from "../errors.js";
 import { DEFAULT_BLOCK_ROWS, RawFile } from "../ingest/raw-file.js";
 import { ScanIndex } from "../ingest/scan-index.js";
 import type { Kernels } from "../kernels/kernels.js";
-import { createPlainKernels } from "../kernels/plain-kernels.js";
 import { SampleMemory } from "../kernels/sample-memory.js";
 import { createSimdKernels } from "../kernels/simd-kernels.js";
 import { simdSupported } from "../kernels/simd-module.js";
@@ -107,7 +106,7 @@ async function attemptRun<A extends Attempt>(
   const facts = scan?.facts ?? foreseen!;
   const planned = prepare(facts);
   const { plan, recipe } = planned;
-  const { memory, kernels, crew, timings } = hands.setUp(plan, facts, recipe);
+  const { memory, kernels, crew, timings } = await hands.setUp(plan, facts, recipe);
   const attempt = begin(facts, planned, kernels);
   const index = scan ? undefined : new ScanIndex(raw.file, raw.header, overrides);
   const pass: Pass = {
@@ -165,9 +164,11 @@ class Hands {
   }
 
   /** Memory, kernels and crew for one attempt. */
-  setUp(plan: Plan, facts: ScanFacts, recipe: Recipe) {
+  async setUp(plan: Plan, facts: ScanFacts, recipe: Recipe) {
     const memory = new SampleMemory();
-    const kernels = this.#useSimd ? createSimdKernels(memory) : createPlainKernels();
+    const kernels = this.#useSimd
+      ? createSimdKernels(memory)
+      : (await import("../kernels/plain-kernels.js")).createPlainKernels(); // its library takes time to load
     const timings = new Timings();
     const own = new JobRunner(plan, facts, kernels, memory.memory, new Timings());
     const work = { lengths: transformLengths(plan), channels: facts.channels };

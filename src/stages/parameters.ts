@@ -2,7 +2,8 @@ import { Ajv, type ErrorObject } from "ajv";
 import { UsageError } from "../errors.js";
 import { nearest } from "./nearest.js";
 
-const ajv = new Ajv({ useDefaults: true, strictTypes: false, allowUnionTypes: true });
+// Our own schemas need no check at run time (a test compiles them strictly), nor optimised code for a single use.
+const ajv = new Ajv({ useDefaults: true, strict: false, validateSchema: false, meta: false, code: { optimize: false } });
 const compiled = new WeakMap<object, ReturnType<Ajv["compile"]>>();
 
 /**
