@@ -14,16 +14,22 @@ export interface WorkerSetup {
 }
 
 export type ToWorker = { readonly setup: WorkerSetup } | { readonly id: number; readonly job: Job };
-export type FromWorker = { readonly id: number } & (
+/** A worker's first word, once it has loaded and made its runner. */
+export const READY = "ready";
+export type JobAnswer = { readonly id: number } & (
   | { readonly reply: JobReply }
   | { readonly error: unknown }
 );
+
+export type FromWorker = typeof READY | JobAnswer;
 
 /** Jobs that wait at a worker beside the one it does: enough that it never idles while the main thread reads. */
 const AHEAD = 2;
 
 interface Hand {
   readonly worker: Worker;
+  /** Loaded and set up: until then others do what would have to wait for it. */
+  isReady: boolean;
   busy: number;
 }
 
@@ -44,9 +50,13 @@ export class Crew {
   /** @param workers started before, with `startWorkers`; each gets its setup now */
   constructor(own: JobRunner, workers: readonly Worker[], setups: readonly WorkerSetup[]) {
     this.#own = own;
-    this.#hands = workers.map((worker) => ({ worker, busy: 0 }));
-    this.#hands.forEach(({ worker }, i) => {
-      worker.on("message", (message: FromWorker) => this.#hear(message));
+    this.#hands = workers.map((worker) => ({ worker, isReady: false, busy: 0 }));
+    this.#hands.forEach((hand, i) => {
+      const { worker } = hand;
+      worker.on("message", (message: FromWorker) => {
+        if (message === READY) hand.isReady = true;
+        else this.#hear(message);
+      });
       worker.on("error", (error) => this.#fail(error));
       worker.postMessage({ setup: setups[i]! } satisfies ToWorker);
     });
@@ -56,7 +66,7 @@ export class Crew {
   submit(job: Job): Promise<JobReply> {
     if (this.#failure) return Promise.reject(this.#failure);
     const hand = this.#hands.reduce<Hand | undefined>(
-      (best, each) => (each.busy < AHEAD && (!best || each.busy < best.busy) ? each : best),
+      (best, each) => (each.isReady && each.busy < AHEAD && (!best || each.busy < best.busy) ? each : best),
       undefined,
     );
     if (!hand) return new Promise((resolve) => resolve(this.#own.run(job)));
@@ -68,7 +78,7 @@ export class Crew {
     });
   }
 
-  #hear(message: FromWorker): void {
+  #hear(message: JobAnswer): void {
     const entry = this.#waiting.get(message.id);
     if (!entry) return;
     this.#waiting.delete(message.id);

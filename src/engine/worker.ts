@@ -1,6 +1,6 @@
 import { parentPort } from "node:worker_threads";
 import { createSimdKernels } from "../kernels/simd-kernels.js";
-import type { FromWorker, ToWorker } from "./crew.js";
+import { type JobAnswer, READY, type ToWorker } from "./crew.js";
 import { JobRunner } from "./jobs.js";
 import { planRecipe } from "./plan.js";
 import { Timings } from "./timings.js";
@@ -19,12 +19,13 @@ port.on("message", (message: ToWorker) => {
       place.memory,
       new Timings(),
     );
+    port.postMessage(READY);
     return;
   }
   const { id, job } = message;
   try {
-    port.postMessage({ id, reply: runner!.run(job) } satisfies FromWorker);
+    port.postMessage({ id, reply: runner!.run(job) } satisfies JobAnswer);
   } catch (error) {
-    port.postMessage({ id, error } satisfies FromWorker);
+    port.postMessage({ id, error } satisfies JobAnswer);
   }
 });
