@@ -1,7 +1,7 @@
 import { statSync } from "node:fs";
 import { Worker } from "node:worker_threads";
 import { type FileHashes, hashFile } from "../writers/output-file.js";
-import { workerFile } from "./crew.js";
+import { workerFile, YOUNG_HEAP } from "./crew.js";
 
 export interface HashRequest {
   readonly id: number;
@@ -27,7 +27,7 @@ export class Hasher {
     const bytes = statSync(input, { throwIfNoEntry: false })?.size ?? 0;
     const script = bytes < WORTH_A_THREAD_BYTES ? undefined : workerFile("hash-worker.js");
     if (script === undefined) return;
-    this.#thread = new Worker(script);
+    this.#thread = new Worker(script, { resourceLimits: YOUNG_HEAP });
     this.#thread.on("message", (reply: HashReply) => {
       const entry = this.#waiting.get(reply.id);
       this.#waiting.delete(reply.id);

@@ -41,6 +41,8 @@ export interface JobReply {
   /** Of a group job. */
   readonly noise?: NoiseState;
   readonly sideOutputs?: readonly SideOutput[];
+  /** The images before the last combination are in the group's own memory, not in `coils`. */
+  readonly coilsInData?: boolean;
   readonly timings: Readonly<Record<string, number>>;
 }
 
@@ -98,11 +100,16 @@ export class JobRunner {
   #runGroup(job: GroupJob): Omit<JobReply, "timings"> {
     const data = this.#view(job.data);
     this.#pipeline.average(data, job.counts);
-    const keep = job.coils && this.#view(job.coils);
-    const { result, sideOutputs } = this.#pipeline.runGroup(data, { counts: job.counts }, keep);
+    let coilsInData = false;
+    const takeCoils = (coils: Float32Array) => {
+      // Stages that work in place leave them where the k-space was: nothing to copy.
+      if (coils.byteOffset === data.byteOffset && coils.length === data.length) coilsInData = true;
+      else if (job.coils) this.#view(job.coils).set(coils);
+    };
+    const { result, sideOutputs } = this.#pipeline.runGroup(data, { counts: job.counts }, takeCoils);
     this.#view(job.result).set(result.data);
     if (result.data.byteOffset !== data.byteOffset) this.#kernels.transform.release(result.data);
-    return { noise: result.noise, sideOutputs };
+    return { noise: result.noise, sideOutputs, coilsInData };
   }
 }
 

@@ -59,19 +59,20 @@ export class Pipeline {
    * The k-space stages to the combination on one group. `data` is worked on in place and stays the caller's; the
    * result's memory becomes the caller's where it is another.
    * @param data [...together, coil, z, y, x] of the placed layout
-   * @param keepCoils where the images before the last combination are copied to, if they are wanted
+   * @param takeCoils hears the images before the last combination; their memory may be reused after it returns, unless
+   * it is `data`
    */
   runGroup(
     data: Float32Array,
     sampling: Sampling,
-    keepCoils: Float32Array | undefined,
+    takeCoils: (coils: Float32Array) => void,
   ): { result: Frame; sideOutputs: readonly SideOutput[] } {
     const sideOutputs: SideOutput[] = [];
     const context = this.#context(sideOutputs);
     let frame: Frame = { data, layout: this.#plan.placed, sampling, noise: this.#noiseOf(sampling) };
     for (const { stage, params } of this.#frameStages) {
       if (stage.kind === "readout") continue;
-      if (stage.kind === "combine") keepCoils?.set(frame.data);
+      if (stage.kind === "combine") takeCoils(frame.data);
       const next = this.#step(stage.id, () => stage.run(frame, params, context));
       if (next.data !== frame.data && frame.data !== data) context.release(frame.data);
       frame = next;

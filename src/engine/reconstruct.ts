@@ -39,7 +39,7 @@ export interface Pass {
 }
 
 /** Blocks whose readouts are being processed at a time: what bounds the memory of samples on their way. */
-const BLOCKS_AHEAD = 4;
+const BLOCKS_AHEAD = 12;
 
 /**
  * Read a file block by block, have its readouts processed and placed, and hand each group to `use` once it is finished.
@@ -223,7 +223,9 @@ class PassRun {
     const start = performance.now();
     await this.#use(open.group, {
       result: frameAt(plan, memory.memory, span(result), "result", reply.noise!),
-      coils: coils && frameAt(plan, memory.memory, span(coils), "coils", reply.noise!),
+      coils:
+        coils &&
+        frameAt(plan, memory.memory, span(reply.coilsInData ? open.data : coils), "coils", reply.noise!),
       sideOutputs: reply.sideOutputs!,
     });
     timings.add("write", (performance.now() - start) / 1e3);

@@ -104,9 +104,10 @@ async function attemptRun<A extends Attempt>(
   begin: (facts: ScanFacts, planned: PlannedRecipe, kernels: Kernels) => A,
 ): Promise<RunResult<A> | undefined> {
   const facts = scan?.facts ?? foreseen!;
+  const blockRows = options.blockRows ?? blockRowsFor(facts);
   const planned = prepare(facts);
   const { plan, recipe } = planned;
-  const { memory, kernels, crew, timings } = await hands.setUp(plan, facts, recipe);
+  const { memory, kernels, crew, timings } = await hands.setUp(plan, facts, recipe, blockRows);
   const attempt = begin(facts, planned, kernels);
   const index = scan ? undefined : new ScanIndex(raw.file, raw.header, overrides);
   const pass: Pass = {
@@ -117,7 +118,7 @@ async function attemptRun<A extends Attempt>(
     memory,
     timings,
     index,
-    blockRows: options.blockRows ?? DEFAULT_BLOCK_ROWS,
+    blockRows,
     keepCoils: options.keepCoils ?? false,
     // What plans and workers have taken already is not for samples.
     budgetBytes: memory.usedBytes + (options.memoryBytes ?? totalmem() / 4),
@@ -152,19 +153,17 @@ function countedReadouts({ facts, index }: Scan, plan: Plan): (group: number) =>
 /** The threads of a run. Workers start with it, so that they load while the HDF5 library does. */
 class Hands {
   readonly #useSimd: boolean;
-  readonly #blockRows: number;
   #workers: Worker[];
 
   constructor(file: string, options: RunOptions) {
     this.#useSimd = options.transform !== "plain" && simdSupported();
-    this.#blockRows = options.blockRows ?? DEFAULT_BLOCK_ROWS;
     const count = (options.workers ?? availableParallelism()) - 1; // the main thread is one of them
     const bytes = statSync(file, { throwIfNoEntry: false })?.size ?? 0;
     this.#workers = this.#useSimd && bytes >= WORTH_WORKERS_BYTES ? startWorkers(count) : [];
   }
 
   /** Memory, kernels and crew for one attempt. */
-  async setUp(plan: Plan, facts: ScanFacts, recipe: Recipe) {
+  async setUp(plan: Plan, facts: ScanFacts, recipe: Recipe, blockRows: number) {
     const memory = new SampleMemory();
     const kernels = this.#useSimd
       ? createSimdKernels(memory)
@@ -173,7 +172,7 @@ class Hands {
     const own = new JobRunner(plan, facts, kernels, memory.memory, new Timings());
     const work = { lengths: transformLengths(plan), channels: facts.channels };
     const setups = this.#workers.map((): WorkerSetup => {
-      const place = createSimdPlace(memory, work, workspaceBytes(plan, this.#blockRows));
+      const place = createSimdPlace(memory, work, workspaceBytes(plan, blockRows));
       return { place, facts, recipe };
     });
     return { memory, kernels, timings, crew: new Crew(own, this.#workers, setups) };
@@ -196,6 +195,13 @@ function transformLengths(plan: Plan): Set<number> {
       lengths.add(Math.round((axisLength(input, axis) * output.fovMm[axis]) / input.fovMm[axis]));
     }
   return lengths;
+}
+
+/** Bytes of samples that are read at a time: few enough to stay in a core's cache from one stage to the next. */
+const BLOCK_BYTES = 2 ** 20;
+
+function blockRowsFor({ channels, encoded }: ScanFacts): number {
+  return Math.max(1, Math.min(256, Math.round(BLOCK_BYTES / (8 * channels * encoded.matrix.x))));
 }
 
 /** Memory that one thread's stages take at most. */

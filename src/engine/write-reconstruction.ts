@@ -58,22 +58,20 @@ export async function writeReconstruction(
   options: WriteOptions,
 ): Promise<WrittenReconstruction> {
   const hasher = new Hasher(file);
-  let input: Promise<FileHashes> | undefined;
+  // At once: while the HDF5 library loads, the other core is free.
+  const input = hasher.hash(file);
+  input.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
   let attempt: Writing | undefined;
   try {
     const runOptions = { ...options, keepCoils: options.save?.includes("coils") ?? false };
     const done = await run(file, runOptions, prepare, (facts, planned, kernels) => {
-      if (!input) {
-        input = hasher.hash(file);
-        input.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
-      }
       // `planned` is what `prepare` made.
       attempt = new Writing(file, facts, planned as Prepared, options, kernels, hasher);
       return attempt;
     });
     const { scan, timings } = done;
     if (options.strict) failOnProblem(scan);
-    const files = await done.attempt.finish(scan, input!, timings, options.signal);
+    const files = await done.attempt.finish(scan, input, timings, options.signal);
     return {
       folder: options.out,
       files,

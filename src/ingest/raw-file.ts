@@ -87,10 +87,15 @@ export class RawFile {
     const heads: ReadoutHead[] = [];
     for (let i = 0; i < rows.count; i++) heads.push(this.#record.head(view, at(i), first + i));
     const { data, trajectory } = this.#record;
+    const views: (Float32Array | undefined)[] = []; // asked for several times
     return {
       heads,
       payloadFloats: (i) => view.getUint32(at(i) + data.offset, true),
-      samples: (i) => floats(view, at(i), data),
+      samples: (i) => {
+        const known = views[i] ?? floats(view, at(i), data);
+        views[i] = known;
+        return known;
+      },
       trajectory: (i) => floats(view, at(i), trajectory),
     };
   }
