@@ -1,6 +1,7 @@
 import { UsageError } from "../errors.js";
 import { type Axis, FRAME_AXES, type FrameAxis, SPATIAL_AXES } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
+import { refuseUnsupported } from "../recipe/default-recipe.js";
 import type { Recipe } from "../recipe/recipe.js";
 import { STAGES, stageById } from "../stages/registry.js";
 import {
@@ -43,13 +44,15 @@ export interface Plan {
 /**
  * Work a recipe out for a scan.
  * @param reasons why a stage is in a default recipe; stages that the user added have none
- * @throws UsageError for a recipe that is out of order or lacks what an image needs
+ * @throws UsageError for a recipe that is out of order or lacks what an image needs; InputError for a trajectory that
+ * is not supported
  */
 export function planRecipe(
   scan: ScanFacts,
   recipe: Recipe,
   reasons: ReadonlyMap<string, string> = new Map(),
 ): Plan {
+  refuseUnsupported(scan);
   const parsed = recipe.stages.map(({ id, parameters }) => {
     const stage = stageById(id)!;
     return { stage, params: stage.parse(parameters) };

@@ -10,7 +10,7 @@ const SUPPORTED = ["cartesian"];
  * Any recipe would make a wrong image of readouts that do not lie on straight, parallel lines.
  * @throws InputError for a trajectory that is not supported
  */
-export function refuseUnsupported(scan: ScanFacts, file: string): void {
+export function refuseUnsupported(scan: ScanFacts, file?: string): void {
   if (!SUPPORTED.includes(scan.trajectory))
     throw new InputError(
       { file, field: "header: trajectory", value: scan.trajectory },

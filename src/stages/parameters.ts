@@ -3,7 +3,13 @@ import { UsageError } from "../errors.js";
 import { nearest } from "./nearest.js";
 
 // Our own schemas need no check at run time (a test compiles them strictly), nor optimised code for a single use.
-const ajv = new Ajv({ useDefaults: true, strict: false, validateSchema: false, meta: false, code: { optimize: false } });
+const ajv = new Ajv({
+  useDefaults: true,
+  strict: false,
+  validateSchema: false,
+  meta: false,
+  code: { optimize: false },
+});
 const compiled = new WeakMap<object, ReturnType<Ajv["compile"]>>();
 
 /**
