@@ -1,8 +1,9 @@
 import { decodeReadout } from "../ingest/decode.js";
 import { roleOf } from "../ingest/flags.js";
-import { placeLine } from "../ingest/place.js";
+import { checkPayload, placeLine } from "../ingest/place.js";
 import type { RawFile, ReadoutBlock } from "../ingest/raw-file.js";
 import type { ScanIndex } from "../ingest/scan-index.js";
+import type { Kernels } from "../kernels/kernels.js";
 import { currentBuffer, type SampleMemory } from "../kernels/sample-memory.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { axisLength, type Frame, floatCount, type SideOutput } from "../stages/stage.js";
@@ -26,6 +27,7 @@ export interface Pass {
   readonly plan: Plan;
   readonly crew: Crew;
   readonly memory: SampleMemory;
+  readonly kernels: Kernels;
   readonly budgetBytes: number;
   readonly timings: Timings;
   readonly blockRows: number;
@@ -121,23 +123,32 @@ class PassRun {
 
   /** Index a block, decode its image readouts into sample memory, and have the readout stages run on them. */
   #take(block: ReadoutBlock): void {
-    const { timings, index, scan, memory } = this.#pass;
-    if (index) timings.measure("index", () => index.add(block));
+    const { timings, index, scan, memory, kernels, raw } = this.#pass;
     const { lines, touched } = this.#destinations(block);
     const perLine = 2 * scan.channels * scan.encoded.matrix.x;
     const samples = lines.length ? memory.allocate(lines.length * perLine, false) : undefined;
-    if (samples)
-      timings.measure("decode", () => {
-        for (const [i, { row }] of lines.entries())
-          decodeReadout(
-            block.samples(row),
-            block.heads[row]!,
-            scan,
-            samples,
-            i * perLine,
-            this.#pass.raw.file,
-          );
-      });
+    const decoded = new Map<number, Float32Array>();
+    timings.measure("decode", () => {
+      for (const [i, { row }] of lines.entries()) {
+        const isStored = decodeReadout(
+          block.samples(row),
+          block.heads[row]!,
+          scan,
+          samples!,
+          i * perLine,
+          raw.file,
+        );
+        if (isStored) decoded.set(row, samples!.subarray(i * perLine, (i + 1) * perLine));
+      }
+    });
+    // Samples that were decoded as they are stored lie where the kernels are fast.
+    const energyOf = (row: number) => {
+      const copy = decoded.get(row);
+      const energy = copy && new Float64Array(scan.encoded.matrix.x);
+      if (energy) kernels.addEnergy(copy, energy);
+      return energy;
+    };
+    if (index) timings.measure("index", () => index.add(block, energyOf));
     const destinations = lines.map(({ to }) => to);
     const again = destinations.some((to) => to.again);
     const job = samples && {
@@ -169,6 +180,7 @@ class PassRun {
     const lines: { row: number; to: Destination }[] = [];
     const touched = new Set<OpenGroup>();
     block.heads.forEach((head, row) => {
+      checkPayload(head, block.payloadFloats(row), raw.file);
       if (head.encodingSpace !== scan.encoding || roleOf(head, scan.calibrationMode) !== "image") return;
       const isZero = block.samples(row).every((value) => value === 0);
       const to = this.#store.arrive(placeLine(head, scan, raw.file), isZero);

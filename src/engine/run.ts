@@ -116,6 +116,7 @@ async function attemptRun<A extends Attempt>(
     plan,
     crew,
     memory,
+    kernels,
     timings,
     index,
     blockRows,

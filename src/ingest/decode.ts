@@ -7,6 +7,7 @@ import type { ReadoutHead } from "./record.js";
  * where it ran backward, conjugated, its sign changed, moved to another centre. Samples that were not acquired are zero.
  * @param samples [coil, sample] interleaved complex, in time order
  * @param target [coil, encoded sample], from float `at` on
+ * @returns whether the target now holds the samples just as they are stored
  * @throws InputError if the samples reach beyond the encoded matrix
  */
 export function decodeReadout(
@@ -16,7 +17,7 @@ export function decodeReadout(
   target: Float32Array,
   at: number,
   file: string,
-): void {
+): boolean {
   const encoded = scan.encoded.matrix.x;
   const backward = runsBackward(head, scan.overrides.readoutPolarity);
   const center = scan.measuredCenter[backward ? "reverse" : "forward"] ?? head.centerSample;
@@ -30,7 +31,9 @@ export function decodeReadout(
   if (conjugate) for (let i = 1; i < length; i += 2) line[i] = -line[i]!;
   if (alternateSign && head.counters.kspace_encode_step_1 % 2 === 1)
     for (let i = 0; i < length; i++) line[i] = -line[i]!;
-  if (recentreMm.some((mm) => mm !== 0)) recentre(line, head, scan);
+  const moves = recentreMm.some((mm) => mm !== 0);
+  if (moves) recentre(line, head, scan);
+  return isWhole && !backward && !conjugate && !alternateSign && !moves;
 }
 
 function copyLines(

@@ -84,8 +84,11 @@ export class ScanIndex {
     return this.#header;
   }
 
-  /** @throws InputError naming the readout that contradicts itself or the others. */
-  add(block: ReadoutBlock): void {
+  /**
+   * @param energyOf sum of |s|^2 over the channels by stored sample, channels rising, of readout i, if it is known
+   * @throws InputError naming the readout that contradicts itself or the others
+   */
+  add(block: ReadoutBlock, energyOf?: (i: number) => Float64Array | undefined): void {
     block.heads.forEach((head, i) => {
       checkPayload(head, block.payloadFloats(i), this.#file);
       this.#checkHead(head);
@@ -96,7 +99,7 @@ export class ScanIndex {
       }
       this.roles[role]++;
       if (role === "noise") this.#addNoise(head, block.samples(i));
-      if (role === "image") this.#addImage(head, block.samples(i));
+      if (role === "image") this.#addImage(head, block.samples(i), energyOf?.(i));
     });
   }
 
@@ -157,9 +160,9 @@ export class ScanIndex {
     this.noise.samples += n;
   }
 
-  #addImage(head: ReadoutHead, samples: Float32Array): void {
+  #addImage(head: ReadoutHead, samples: Float32Array, energy: Float64Array | undefined): void {
     const backward = runsBackward(head, this.#overrides.readoutPolarity);
-    const total = this.#addEnergy(head, samples, backward);
+    const total = this.#addEnergy(head, samples, backward, energy);
     this.#addRanges(head, backward);
     const counters = {} as Record<FrameAxis, number>;
     for (const axis of FRAME_AXES) counters[axis] = frameCounter(head, axis, this.#overrides.averageOver);
@@ -182,7 +185,12 @@ export class ScanIndex {
   }
 
   /** Total energy of a readout; its energy by sample joins the evidence for the centre. */
-  #addEnergy(head: ReadoutHead, samples: Float32Array, backward: boolean): number {
+  #addEnergy(
+    head: ReadoutHead,
+    samples: Float32Array,
+    backward: boolean,
+    known: Float64Array | undefined,
+  ): number {
     const n = head.samples;
     const side = backward ? "reverse" : "forward";
     const first = head.discardPre;
@@ -201,7 +209,13 @@ export class ScanIndex {
     if (evidence.stated !== head.centerSample || evidence.samples !== n) evidence.uniform = false;
     evidence.below = Math.max(evidence.below, below);
     evidence.above = Math.max(evidence.above, above);
-    const total = addEnergy(evidence.energy, samples, head.channels, n, first, last);
+    const own = known ?? sampleEnergy(samples, head.channels, n, first, last);
+    const { energy } = evidence;
+    let total = 0;
+    for (let j = first; j < last; j++) {
+      energy[j]! += own[j]!;
+      total += own[j]!;
+    }
     if (!Number.isFinite(total)) this.#notFinite(head, samples);
     return total;
   }
@@ -275,25 +289,22 @@ export class ScanIndex {
   }
 }
 
-/** energy[j] += |s|^2 over the channels, for samples first .. last - 1; returns what was added in all. */
-function addEnergy(
-  energy: Float64Array,
+/** Sum of |s|^2 over the channels, channels rising, by sample from `first` to `last` - 1; the others are 0. */
+function sampleEnergy(
   samples: Float32Array,
   channels: number,
   n: number,
   first: number,
   last: number,
-): number {
-  let total = 0;
+): Float64Array {
+  const energy = new Float64Array(n);
   for (let c = 0; c < channels; c++)
     for (let j = first, p = 2 * (c * n + first); j < last; j++, p += 2) {
       const re = samples[p]!;
       const im = samples[p + 1]!;
-      const value = re * re + im * im;
-      energy[j]! += value;
-      total += value;
+      energy[j]! += re * re + im * im;
     }
-  return total;
+  return energy;
 }
 
 function samePose(a: Pose, b: ReadoutHead): boolean {

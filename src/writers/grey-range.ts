@@ -23,7 +23,7 @@ export interface GreyRange {
  */
 export function automaticRange(kind: ValueKind, values: ArrayLike<number>): GreyRange {
   if (kind === "phase") return { low: -Math.PI, high: Math.PI, rule: "phase in radians" };
-  const sizes = sortedSizes(finiteSizes(values));
+  const sizes = finiteSizes(values).sort();
   const typical = percentile(sizes, 99.9);
   const floor = typical > 0 ? typical / 10 : 0;
   let first = 0;
@@ -36,7 +36,7 @@ export function automaticRange(kind: ValueKind, values: ArrayLike<number>): Grey
 }
 
 /** Percentiles of so many pixels, evenly spaced, are good enough to choose a grey range by. */
-const ENOUGH_PIXELS = 1 << 17;
+const ENOUGH_PIXELS = 1 << 16;
 
 /** Magnitudes of the finite values, of every n-th where there are very many. */
 function finiteSizes(values: ArrayLike<number>): Float32Array {
@@ -48,23 +48,6 @@ function finiteSizes(values: ArrayLike<number>): Float32Array {
     if (size < Number.POSITIVE_INFINITY) sizes[count++] = size;
   }
   return sizes.subarray(0, count);
-}
-
-/**
- * Sort values that are not negative: by the halves of their bits, which rise with the value (IEEE 754). A large
- * picture is sorted in a tenth of the time that the general sort takes.
- */
-function sortedSizes(values: Float32Array): Float32Array {
-  let from = new Uint32Array(Float32Array.from(values).buffer);
-  let to = new Uint32Array(values.length);
-  for (const shift of [0, 16]) {
-    const starts = new Uint32Array(65537);
-    for (let i = 0; i < from.length; i++) starts[((from[i]! >>> shift) & 65535) + 1]!++;
-    for (let key = 1; key < starts.length; key++) starts[key]! += starts[key - 1]!;
-    for (let i = 0; i < from.length; i++) to[starts[(from[i]! >>> shift) & 65535]!++] = from[i]!;
-    [from, to] = [to, from];
-  }
-  return new Float32Array(from.buffer);
 }
 
 /**

@@ -40,6 +40,7 @@ export function resample(
   size: SquareSize,
   isSmooth: boolean,
 ): Float32Array {
+  if (size.width === width && size.height === height) return Float32Array.from(image);
   const across = steps(width, size.width, isSmooth);
   const down = steps(height, size.height, isSmooth);
   const out = new Float32Array(size.width * size.height);
