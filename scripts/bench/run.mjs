@@ -4,7 +4,7 @@
 // their spread and ratios. Needs Debian's python3-h5py python3-numpy python3-scipy time. Build first: npm run build.
 // Both write the combined image and the complex images of all channels; the tool writes picture and sidecar besides.
 import { spawnSync } from "node:child_process";
-import { existsSync, mkdirSync, readFileSync, rmSync } from "node:fs";
+import { existsSync, mkdirSync, readFileSync, renameSync, rmSync } from "node:fs";
 import { availableParallelism, tmpdir, totalmem } from "node:os";
 import { join } from "node:path";
 import { fileURLToPath } from "node:url";
@@ -37,7 +37,10 @@ const CASES = [
 function rawFile(shape) {
   const words = Object.entries(shape).flatMap(([key, value]) => [`--${key}`, String(value)]);
   const file = join(folder, `raw${words.join("")}.h5`);
-  if (!existsSync(file)) run([PYTHON, join(here, "make_bench_raw.py"), file, ...words]);
+  if (!existsSync(file)) {
+    run([PYTHON, join(here, "make_bench_raw.py"), `${file}.part`, ...words]);
+    renameSync(`${file}.part`, file); // an interrupted run leaves no half file under the name
+  }
   return file;
 }
 
