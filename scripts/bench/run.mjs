@@ -11,7 +11,11 @@ import { fileURLToPath } from "node:url";
 import { parseArgs } from "node:util";
 
 const { values: flags } = parseArgs({
-  options: { turns: { type: "string", default: "7" }, only: { type: "string", multiple: true }, keep: { type: "boolean" } },
+  options: {
+    turns: { type: "string", default: "7" },
+    only: { type: "string", multiple: true },
+    keep: { type: "boolean" },
+  },
 });
 const TURNS = Number(flags.turns);
 const PYTHON = "/usr/bin/python3";
@@ -70,8 +74,34 @@ function compare([name, shape, window, workers]) {
   const apodize = window === "none" ? [] : ["--set", `apodize.window=${window}`];
   for (let turn = 0; turn < TURNS; turn++) {
     rmSync(out, { recursive: true, force: true });
-    ours.push(run([process.execPath, tool, "recon", raw, "--out", out, "--quiet", "--save", "coils", "--workers", String(workers), ...apodize]));
-    theirs.push(run([PYTHON, join(here, "recon_numpy.py"), raw, join(folder, "numpy"), "--workers", String(workers), "--window", window]));
+    ours.push(
+      run([
+        process.execPath,
+        tool,
+        "recon",
+        raw,
+        "--out",
+        out,
+        "--quiet",
+        "--save",
+        "coils",
+        "--workers",
+        String(workers),
+        ...apodize,
+      ]),
+    );
+    theirs.push(
+      run([
+        PYTHON,
+        join(here, "recon_numpy.py"),
+        raw,
+        join(folder, "numpy"),
+        "--workers",
+        String(workers),
+        "--window",
+        window,
+      ]),
+    );
   }
   const seconds = (runs) => runs.map((each) => each.seconds);
   const memory = (runs) => median(runs.map((each) => each.megabytes));
@@ -83,7 +113,7 @@ function compare([name, shape, window, workers]) {
     `${median(ratios).toFixed(2)} (${spread(ratios)})`,
     `${memory(ours).toFixed(0)} / ${memory(theirs).toFixed(0)}`,
     (memory(ours) / memory(theirs)).toFixed(2),
-    (relativeDifference(join(out, "image.npy"), join(folder, "numpy.npy"))).toExponential(1),
+    relativeDifference(join(out, "image.npy"), join(folder, "numpy.npy")).toExponential(1),
   ];
   console.log(`| ${row.join(" | ")} |`);
 }
@@ -106,7 +136,9 @@ function relativeDifference(fileA, fileB) {
   return a.length === b.length ? Math.sqrt(difference / norm) : Number.NaN;
 }
 
-console.log(`${new Date().toISOString().slice(0, 10)}, ${availableParallelism()} cores, ${Math.round(totalmem() / 2 ** 30)} GiB, medians of ${TURNS}\n`);
+console.log(
+  `${new Date().toISOString().slice(0, 10)}, ${availableParallelism()} cores, ${Math.round(totalmem() / 2 ** 30)} GiB, medians of ${TURNS}\n`,
+);
 console.log("| case | tool, s | script, s | tool / script | MB, tool / script | ratio | images differ by |");
 console.log("|---|---|---|---|---|---|---|");
 for (const each of CASES) if (!flags.only || flags.only.some((part) => each[0].includes(part))) compare(each);
