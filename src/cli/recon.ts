@@ -135,6 +135,8 @@ function timingTable(timings: Written["timings"]): string {
 function report(written: Written, terminal: Terminal): void {
   const { files, arrays, facts, discrepancies, transform, timings } = written;
   terminal.document({ files, arrays, scan: facts, discrepancies, transform, timings });
+  if (transform === "plain")
+    terminal.message("note: plain transforms ran, not the SIMD ones: slower, and not the same bits");
   for (const file of files) {
     const array = arrays.find((entry) => file.endsWith(`/${entry.file}`) || file === entry.file);
     terminal.result(array ? `${file}  [${array.axes.join(", ")}] = ${array.shape.join(" x ")}` : file);

@@ -1,9 +1,10 @@
+import process from "node:process";
 import { affineLps, movedPose } from "../physics/geometry.js";
 import { SPATIAL_AXES } from "../physics/layout.js";
 import type { Pose } from "../physics/scan.js";
 import type { Recipe } from "../recipe/recipe.js";
 import { axisLength } from "../stages/stage.js";
-import { VERSION } from "../version.js";
+import { HDF5_VERSION, VERSION } from "../version.js";
 import { type Plan, pixelSizeMm } from "./plan.js";
 import { readoutFacts } from "./readout-facts.js";
 import type { Scan } from "./scan.js";
@@ -24,6 +25,8 @@ export interface SidecarParts {
   readonly inputBytes: number;
   readonly inputName: string;
   readonly noise: { readonly whitened: boolean; readonly smallest: number; readonly largest: number };
+  /** The transform engine that ran. */
+  readonly transform: "simd" | "plain";
   readonly arrays: readonly object[];
   readonly pictures: readonly object[];
   readonly outputs: readonly object[];
@@ -36,7 +39,12 @@ export function sidecar(parts: SidecarParts): object {
   return {
     sidecar: SIDECAR_VERSION,
     program: "carillon",
-    version: VERSION,
+    versions: {
+      carillon: VERSION,
+      h5wasm: HDF5_VERSION,
+      node: process.versions.node,
+      transform: parts.transform,
+    },
     caution: CAUTION,
     input: { file: parts.inputName, bytes: parts.inputBytes, sha256: parts.inputSha256, group: scan.group },
     arrays: parts.arrays,

@@ -105,6 +105,7 @@ class Writing implements Attempt {
   readonly #prepared: Prepared;
   readonly #out: string;
   readonly #noise = new NoiseRange();
+  readonly #transform: Kernels["id"];
 
   constructor(
     file: string,
@@ -132,6 +133,7 @@ class Writing implements Attempt {
       (product) => new ProductWriter(this.#set, file, facts, plan, outputs, product, kernels),
     );
     this.#prepared = prepared;
+    this.#transform = kernels.id;
     this.#out = options.out;
   }
 
@@ -171,6 +173,7 @@ class Writing implements Attempt {
       inputSha256: input.sha256,
       inputBytes: input.bytes,
       inputName: path.basename(scan.file),
+      transform: this.#transform,
       noise: this.#noise.range(),
       arrays: this.records,
       pictures,
