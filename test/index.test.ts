@@ -1,0 +1,27 @@
+import { expect, test } from "vitest";
+import * as carillon from "../src/index.js";
+
+test("what the library exports is what others build on: a change here is a change for them", () => {
+  expect(Object.keys(carillon).sort()).toEqual([
+    "CAUTION",
+    "CarillonError",
+    "InputError",
+    "OutputError",
+    "UsageError",
+    "VERSION",
+    "applySetting",
+    "defaultRecipe",
+    "formatRecipe",
+    "outputSettings",
+    "planRecipe",
+    "readNpy",
+    "readRecipe",
+    "readScan",
+    "readoutFacts",
+    "recipeSchema",
+    "run",
+    "scanOverrides",
+    "simulateRaw",
+    "writeReconstruction",
+  ]);
+});
