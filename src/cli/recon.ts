@@ -58,9 +58,6 @@ export const recon: Command = {
   ],
   notes: stageNotes,
   async run(flags, terminal, signal, origins) {
-    // The library compiles while the rest loads; what goes wrong there is heard when the file is opened.
-    const { loadHdf5 } = await import("../ingest/hdf5.js");
-    loadHdf5().catch(() => undefined);
     const { requestOf } = await import("./plan-file.js");
     const { UsageError } = await import("../errors.js");
     const out = flags.out as string | undefined;
@@ -68,6 +65,9 @@ export const recon: Command = {
       throw new UsageError({ field: "--out" }, "no folder to write into", "Give one: --out FOLDER");
     const request = requestOf(flags);
     if (flags.explain) return explainOnly(flags, origins, request, terminal, signal);
+    // Only now is nothing wrong with the flags. The library compiles while the rest loads.
+    const { startHdf5 } = await import("../ingest/hdf5.js");
+    await startHdf5();
     const { writeReconstruction } = await import("../engine/write-reconstruction.js");
     const written = await writeReconstruction(flags.raw as string, request.prepare, {
       ...runOptions(flags),

@@ -6,6 +6,15 @@ type H5Module = Awaited<typeof import("h5wasm/node")["ready"]>;
 
 let loading: Promise<H5Module> | undefined;
 
+/**
+ * Start loading the library; resolves when its compilation is under way, in threads of its own, so that the caller can
+ * load other things meanwhile. What goes wrong is heard when a file is opened.
+ */
+export async function startHdf5(): Promise<void> {
+  await import("h5wasm/node").catch(() => undefined);
+  loadHdf5().catch(() => undefined);
+}
+
 /** The HDF5 C library (h5wasm), loaded once and only when a file is opened. Its errors become exceptions. */
 export function loadHdf5(): Promise<H5Module> {
   loading ??= import("h5wasm/node").then(async (h5wasm) => {
