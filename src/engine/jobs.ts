@@ -18,6 +18,8 @@ export interface BlockJob {
   /** [line, coil, encoded sample]. */
   readonly samples: Span;
   readonly lines: number;
+  /** As in ReadoutLines. */
+  readonly backward: Uint8Array;
   /**
    * Byte address of each line's row of coil 0 in its group: rows are written there. Undefined where a line comes
    * again: the rows then go back to the start of `samples`, for the main thread to add in the order of the file.
@@ -73,10 +75,16 @@ export class JobRunner {
     return new Float32Array(currentBuffer(this.#memory), byte, floats);
   }
 
-  #runBlock({ samples, lines, targets }: BlockJob): Omit<JobReply, "timings"> {
+  #runBlock({ samples, lines, backward, targets }: BlockJob): Omit<JobReply, "timings"> {
     const data = this.#view(samples);
     const { channels, encoded } = this.#scan;
-    const done = this.#pipeline.runReadouts({ data, lines, samples: encoded.matrix.x, coils: channels });
+    const done = this.#pipeline.runReadouts({
+      data,
+      lines,
+      samples: encoded.matrix.x,
+      coils: channels,
+      backward,
+    });
     const { placed } = this.#plan;
     const row = 2 * done.samples;
     // Rows are copied within the whole memory: a view for each would be thousands of objects a block.

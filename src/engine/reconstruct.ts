@@ -1,6 +1,6 @@
 import { decodeReadout } from "../ingest/decode.js";
 import { roleOf } from "../ingest/flags.js";
-import { checkPayload, placeLine } from "../ingest/place.js";
+import { checkPayload, placeLine, runsBackward } from "../ingest/place.js";
 import type { RawFile, ReadoutBlock } from "../ingest/raw-file.js";
 import type { ScanIndex } from "../ingest/scan-index.js";
 import type { Kernels } from "../kernels/kernels.js";
@@ -155,6 +155,9 @@ class PassRun {
       kind: "block" as const,
       samples: { byte: samples.byteOffset, floats: samples.length },
       lines: lines.length,
+      backward: Uint8Array.from(lines, ({ row }) =>
+        runsBackward(block.heads[row]!, scan.overrides.readoutPolarity) ? 1 : 0,
+      ),
       targets: again ? undefined : Float64Array.from(destinations, (to) => to.byte),
     };
     const reply = job ? this.#pass.crew.submit(job) : Promise.resolve(undefined);

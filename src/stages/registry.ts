@@ -3,6 +3,7 @@ import { combineCoils } from "./combine-coils.js";
 import { fitMatrix } from "./fit-matrix.js";
 import { inverseFft } from "./inverse-fft.js";
 import { prewhiten } from "./prewhiten.js";
+import { shiftReadout } from "./shift-readout.js";
 import type { Stage } from "./stage.js";
 import { trimOversampling } from "./trim-oversampling.js";
 
@@ -11,6 +12,7 @@ import { trimOversampling } from "./trim-oversampling.js";
  * place where `--set` inserts a stage derive from this list.
  */
 export const STAGES: readonly Stage[] = [
+  shiftReadout,
   trimOversampling,
   prewhiten,
   apodize,

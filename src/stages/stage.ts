@@ -54,6 +54,8 @@ export interface ReadoutLines {
   readonly lines: number;
   readonly samples: number;
   readonly coils: number;
+  /** 1 for each line that was read backward in time (its samples are in the order of rising k by now), else 0. */
+  readonly backward: Uint8Array;
 }
 
 /** An array that a stage makes beside its result, such as a field map. */

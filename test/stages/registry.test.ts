@@ -84,7 +84,13 @@ describe.each(STAGES.map((stage) => [stage.id, stage] as const))("%s", (id, stag
       return { data: out.data, floats: floatCount(planned.layout) };
     }
     const samples = input.shape[3]!;
-    const lines = { data: ramp(2 * 15 * 2 * samples), lines: 15, coils: 2, samples };
+    const lines = {
+      data: ramp(2 * 15 * 2 * samples),
+      lines: 15,
+      coils: 2,
+      samples,
+      backward: new Uint8Array(15),
+    };
     const out = stage.run(lines, params, context);
     expect(out.samples).toBe(planned.layout.shape[3]);
     return { data: out.data, floats: floatCount(planned.layout) };
@@ -113,6 +119,7 @@ test("each id occurs once, and kinds come in the order of the flow", () => {
   const ids = STAGES.map(({ id }) => id);
   expect(new Set(ids).size).toBe(ids.length);
   expect(ids).toEqual([
+    "shift-readout",
     "trim-oversampling",
     "prewhiten",
     "apodize",
