@@ -35,7 +35,7 @@ describe.concurrent("--set", () => {
       ["apodise.window=hann", "--set: apodise: no such name. Did you mean apodize?"],
       [
         "polish=on",
-        "--set: polish: no such name. Known: trim-oversampling, prewhiten, apodize, inverse-fft, fit-matrix, " +
+        "--set: polish: no such name. Known: shift-readout, trim-oversampling, prewhiten, apodize, inverse-fft, fit-matrix, " +
           "combine-coils, scan, outputs",
       ],
       ["outputs.grey-hihg=3", "outputs.grey-hihg: unknown key. Did you mean grey-high? "],
