@@ -1,5 +1,5 @@
 import { readoutBandwidthHz } from "../physics/bandwidth.js";
-import { FRAME_AXES } from "../physics/layout.js";
+import { FRAME_AXES, frameCount } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
 import type { OutputSettings } from "../recipe/recipe.js";
 import { axisLength } from "../stages/stage.js";
@@ -33,10 +33,7 @@ export class PictureCollector {
   ) {
     const { lengths } = facts;
     this.#partitions = axisLength(plan.result, "z");
-    const rows = FRAME_AXES.filter((axis) => axis !== "slice").reduce(
-      (total, axis) => total * lengths[axis],
-      1,
-    );
+    const rows = frameCount(lengths) / lengths.slice;
     const tiles = Array.from({ length: lengths.slice * this.#partitions }, (_, tile) => tile);
     this.#totalImages = rows * tiles.length;
     const limit = facts.dimensions === 1 ? PROFILE_LINES : settings.tileLimit;
@@ -65,8 +62,8 @@ export class PictureCollector {
   }
 
   /** The finished picture, and what the sidecar says of it. @param scan what the whole file turned out to be */
-  draw(scan: Scan): { name: string; png: Uint8Array; pixels: Uint8Array | Uint16Array; record: object }[] {
-    return [this.facts.dimensions === 1 ? this.#drawProfiles() : this.#drawMontage(scan)];
+  draw(scan: Scan): { name: string; png: Uint8Array; pixels: Uint8Array | Uint16Array; record: object } {
+    return this.facts.dimensions === 1 ? this.#drawProfiles() : this.#drawMontage(scan);
   }
 
   #drawMontage(scan: Scan) {

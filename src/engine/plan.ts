@@ -1,5 +1,13 @@
 import { UsageError } from "../errors.js";
-import { type Axis, FRAME_AXES, type FrameAxis, SPATIAL_AXES } from "../physics/layout.js";
+import {
+  type Axis,
+  FRAME_AXES,
+  type FrameAxis,
+  frameCount,
+  frameIndex,
+  type PerFrameAxis,
+  SPATIAL_AXES,
+} from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { refuseUnsupported } from "../recipe/default-recipe.js";
 import type { Recipe } from "../recipe/recipe.js";
@@ -78,12 +86,11 @@ export function planRecipe(
       reason: reasons.get(stage.id) ?? "asked for",
     };
   });
-  const total = FRAME_AXES.reduce((product, axis) => product * scan.lengths[axis], 1);
   const framesPerGroup = together.reduce((product, axis) => product * scan.lengths[axis], 1);
   return {
     stages,
     together,
-    groups: total / framesPerGroup,
+    groups: frameCount(scan.lengths) / framesPerGroup,
     framesPerGroup,
     placed:
       stages.filter(({ stage }) => stage.kind === "readout").at(-1)?.output ?? encodedLayout(scan, together),
@@ -169,8 +176,9 @@ export function groupFrames(
   const apart = FRAME_AXES.filter((axis) => !plan.together.includes(axis));
   const fixed = unravel(scan, apart, group);
   return Array.from({ length: plan.framesPerGroup }, (_, place) => {
-    const counters = { ...fixed, ...unravel(scan, plan.together, place) };
-    return FRAME_AXES.reduce((frame, axis) => frame * scan.lengths[axis] + (counters[axis] ?? 0), 0);
+    // The axes apart and those together are all there are.
+    const counters = { ...fixed, ...unravel(scan, plan.together, place) } as PerFrameAxis;
+    return frameIndex(scan.lengths, counters);
   });
 }
 

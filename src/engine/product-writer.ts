@@ -54,12 +54,12 @@ export class ProductWriter {
     await Promise.all(writes);
   }
 
-  /** Draw and write the picture; returns what the sidecar says of it. */
-  drawPictures(scan: Scan): object[] {
-    return (this.#picture?.draw(scan) ?? []).map(({ name, png, pixels, record }) => {
-      this.set.write(name, png, pixels);
-      return record;
-    });
+  /** Draw and write the picture; returns what the sidecar says of it, or nothing where there is none. */
+  drawPicture(scan: Scan): object[] {
+    if (!this.#picture) return [];
+    const { name, png, pixels, record } = this.#picture.draw(scan);
+    this.set.write(name, png, pixels);
+    return [record];
   }
 }
 

@@ -4,12 +4,12 @@ import type { Worker } from "node:worker_threads";
 import { InputError } from "../errors.js";
 import { DEFAULT_BLOCK_ROWS, RawFile } from "../ingest/raw-file.js";
 import { ScanIndex } from "../ingest/scan-index.js";
+import { createKernels } from "../kernels/create-kernels.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { SampleMemory } from "../kernels/sample-memory.js";
-import { createSimdKernels } from "../kernels/simd-kernels.js";
 import { simdSupported } from "../kernels/simd-module.js";
 import { createSimdPlace } from "../kernels/simd-place.js";
-import { FRAME_AXES, SPATIAL_AXES } from "../physics/layout.js";
+import { frameIndex, SPATIAL_AXES } from "../physics/layout.js";
 import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
 import type { Recipe } from "../recipe/recipe.js";
 import { axisLength } from "../stages/stage.js";
@@ -144,8 +144,7 @@ async function attemptRun<A extends Attempt>(
 function countedReadouts({ facts, index }: Scan, plan: Plan): (group: number) => number {
   const counted = new Map<number, number>();
   for (const { counters, readouts } of index.frames.values()) {
-    const frame = FRAME_AXES.reduce((at, axis) => at * facts.lengths[axis] + counters[axis], 0);
-    const { group } = groupOf(facts, plan.together, frame);
+    const { group } = groupOf(facts, plan.together, frameIndex(facts.lengths, counters));
     counted.set(group, (counted.get(group) ?? 0) + readouts);
   }
   return (group) => counted.get(group) ?? 0;
@@ -166,9 +165,7 @@ class Hands {
   /** Memory, kernels and crew for one attempt. */
   async setUp(plan: Plan, facts: ScanFacts, recipe: Recipe, blockRows: number) {
     const memory = new SampleMemory();
-    const kernels = this.#useSimd
-      ? createSimdKernels(memory)
-      : (await import("../kernels/plain-kernels.js")).createPlainKernels(); // its library takes time to load
+    const kernels = await createKernels(memory, this.#useSimd ? "simd" : "plain");
     const timings = new Timings();
     const own = new JobRunner(plan, facts, kernels, memory.memory, new Timings());
     const work = { lengths: transformLengths(plan), channels: facts.channels };

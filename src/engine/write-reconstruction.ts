@@ -160,7 +160,7 @@ class Writing implements Attempt {
     // Arrays are hashed while the pictures are drawn.
     for (const { record } of this.#writers) this.#set.sealOne(record.file).catch(() => undefined); // awaited by seal
     const pictures = timings.measure("pictures", () =>
-      this.#writers.flatMap((writer) => writer.drawPictures(scan)),
+      this.#writers.flatMap((writer) => writer.drawPicture(scan)),
     );
     const start = performance.now();
     const [outputs, input] = await unlessAborted(Promise.all([this.#set.seal(), hashing]), signal);

@@ -26,8 +26,8 @@ interface Span {
 }
 
 export function coverageOf(index: ScanIndex, scan: ScanFacts): Coverage {
-  const y = span(index, "kspace_encode_step_1", "kspace_encoding_step_1");
-  const z = span(index, "kspace_encode_step_2", "kspace_encoding_step_2");
+  const y = span(index, "y");
+  const z = span(index, "z");
   const perFrame = (y.maximum - y.minimum + 1) * (z.maximum - z.minimum + 1);
   const gaps = countGaps(index, scan, y, z);
   const expected = perFrame * index.frames.size;
@@ -51,12 +51,15 @@ export function coverageOf(index: ScanIndex, scan: ScanFacts): Coverage {
   };
 }
 
+/** The line counter of an axis in a readout's head, and what encodingLimits calls it. */
+const LINE_COUNTER = {
+  y: ["kspace_encode_step_1", "kspace_encoding_step_1"],
+  z: ["kspace_encode_step_2", "kspace_encoding_step_2"],
+} as const;
+
 /** The range of a line counter that the limits state, widened by what the readouts hold. */
-function span(
-  index: ScanIndex,
-  counter: "kspace_encode_step_1" | "kspace_encode_step_2",
-  limit: "kspace_encoding_step_1" | "kspace_encoding_step_2",
-): Span {
+function span(index: ScanIndex, axis: "y" | "z"): Span {
+  const [counter, limit] = LINE_COUNTER[axis];
   const limits = index.encoding.limits[limit];
   const seen = index.ranges[counter];
   return {
@@ -111,10 +114,7 @@ function resolution(range: Span, center: number, lines: number): number {
 
 /** The span of a line counter on the encoded grid. */
 export function lineExtent(index: ScanIndex, axis: "y" | "z", center: number, lines: number): Extent {
-  const range =
-    axis === "y"
-      ? span(index, "kspace_encode_step_1", "kspace_encoding_step_1")
-      : span(index, "kspace_encode_step_2", "kspace_encoding_step_2");
+  const range = span(index, axis);
   const shift = Math.floor(lines / 2) - center;
   return { first: Math.max(0, range.minimum + shift), last: Math.min(lines - 1, range.maximum + shift) };
 }

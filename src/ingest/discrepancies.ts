@@ -1,5 +1,5 @@
 import { GYROMAGNETIC_RATIO_HZ_PER_T } from "../physics/larmor.js";
-import { FRAME_AXES } from "../physics/layout.js";
+import { FRAME_AXES, frameCount } from "../physics/layout.js";
 import type { Discrepancy, ScanFacts } from "../physics/scan.js";
 import { type Coverage, coverageOf } from "./coverage.js";
 import type { RawHeader } from "./header.js";
@@ -15,7 +15,9 @@ export function findDiscrepancies(header: RawHeader, index: ScanIndex, scan: Sca
   const found: Discrepancy[] = [];
   const problem = (code: string, message: string) => found.push({ code, severity: "problem", message });
   const remark = (code: string, message: string) => found.push({ code, severity: "remark", message });
-  checkHeader(header, index, scan, problem, remark);
+  checkHeader(header, scan, problem, remark);
+  checkLimits(index, scan, problem, remark);
+  checkReadouts(index, scan, problem, remark);
   checkCenters(index, scan, problem);
   checkLines(coverageOf(index, scan), scan, problem, remark);
   checkFrames(index, scan, problem);
@@ -32,7 +34,7 @@ const LIMIT_OF = [
 
 type Say = (code: string, message: string) => void;
 
-function checkHeader(header: RawHeader, index: ScanIndex, scan: ScanFacts, problem: Say, remark: Say): void {
+function checkHeader(header: RawHeader, scan: ScanFacts, problem: Say, remark: Say): void {
   if (scan.fieldT !== undefined) {
     const statedHz = scan.fieldT * GYROMAGNETIC_RATIO_HZ_PER_T;
     const difference = scan.resonanceHz / statedHz - 1;
@@ -63,6 +65,9 @@ function checkHeader(header: RawHeader, index: ScanIndex, scan: ScanFacts, probl
       "noise-bandwidth-not-given",
       "relativeReceiverNoiseBandwidth is not given; 1 is assumed, so noise levels may be off",
     );
+}
+
+function checkLimits(index: ScanIndex, scan: ScanFacts, problem: Say, remark: Say): void {
   const { limits } = index.encoding;
   const inferred = [
     ...FRAME_AXES.filter((axis) => !limits[axis] && scan.lengths[axis] > 1),
@@ -77,6 +82,9 @@ function checkHeader(header: RawHeader, index: ScanIndex, scan: ScanFacts, probl
   }
   if (inferred.length)
     remark("limits-inferred", `encodingLimits lacks ${inferred.join(", ")}; taken from the counters`);
+}
+
+function checkReadouts(index: ScanIndex, scan: ScanFacts, problem: Say, remark: Say): void {
   if (index.allZero)
     problem("all-zero-readouts", `${index.allZero} image readouts hold only zeros and count as not acquired`);
   if (index.posesDiffer)
@@ -155,7 +163,7 @@ function checkLines(coverage: Coverage, scan: ScanFacts, problem: Say, remark: S
 }
 
 function checkFrames(index: ScanIndex, scan: ScanFacts, problem: Say): void {
-  const expected = FRAME_AXES.reduce((product, axis) => product * scan.lengths[axis], 1);
+  const expected = frameCount(scan.lengths);
   const acquired = [...index.frames.values()].filter(({ lines }) => lines.size > 0).length;
   const missing = expected - acquired;
   if (missing > 0)

@@ -1,13 +1,20 @@
 import type { ReadoutHead } from "./record.js";
 
 /** Flag numbers of the raw-data standard (ismrmrd.h); flag n is bit n - 1. */
-const FLAG = {
+export const FLAG = {
+  firstInStep1: 1,
+  lastInStep1: 2,
+  firstInSlice: 7,
+  lastInSlice: 8,
+  firstInRepetition: 13,
+  lastInRepetition: 14,
   noise: 19,
   calibration: 20,
   calibrationAndImaging: 21,
   reverse: 22,
   navigation: 23,
   phaseCorrection: 24,
+  lastInMeasurement: 25,
   hpFeedback: 26,
   dummy: 27,
   rtFeedback: 28,
@@ -15,6 +22,7 @@ const FLAG = {
   phaseStabilizationReference: 30,
   phaseStabilization: 31,
 } as const;
+export type FlagName = keyof typeof FLAG;
 
 export const ROLES = [
   "image",
@@ -34,11 +42,6 @@ function has(head: ReadoutHead, flag: number): boolean {
 
 export function isReversed(head: ReadoutHead): boolean {
   return has(head, FLAG.reverse);
-}
-
-/** True for lines that calibrate parallel imaging, whether or not they are image lines too. */
-export function isCalibration(head: ReadoutHead): boolean {
-  return has(head, FLAG.calibration) || has(head, FLAG.calibrationAndImaging);
 }
 
 /**

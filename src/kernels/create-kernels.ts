@@ -1,11 +1,11 @@
 import type { Kernels } from "./kernels.js";
-import { createPlainKernels } from "./plain-kernels.js";
 import type { SampleMemory } from "./sample-memory.js";
 import { createSimdKernels } from "./simd-kernels.js";
 import { simdSupported } from "./simd-module.js";
-import type { SimdPlace } from "./simd-transform.js";
 
-/** The fastest kernels that this JavaScript engine runs. */
-export function createKernels(place?: SampleMemory | SimdPlace): Kernels {
-  return simdSupported() ? createSimdKernels(place) : createPlainKernels();
+/** The kernels that were asked for; without a wish, or where SIMD is missing, the fastest that this engine runs. */
+export async function createKernels(memory?: SampleMemory, wish?: Kernels["id"]): Promise<Kernels> {
+  if (wish !== "plain" && simdSupported()) return createSimdKernels(memory);
+  // Its library takes time to load, which most runs need not spend.
+  return (await import("./plain-kernels.js")).createPlainKernels();
 }

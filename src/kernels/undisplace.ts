@@ -1,5 +1,5 @@
 import { foldedPixels, resampleMap, stretchFactors } from "./displacement.js";
-import { gatherLines, planRowWarp, type RowWarp } from "./row-warp.js";
+import { gatherLines, gatherRows, planRowWarp, type RowWarp } from "./row-warp.js";
 import type { TransformEngine } from "./transform.js";
 
 /**
@@ -124,18 +124,7 @@ function readRows(
   image: Float32Array,
   target: Float32Array,
 ): void {
-  const { rows, inputLength } = warp;
-  const lines = engine.allocate(image.length, false);
-  engine.transformAxis({
-    source: image,
-    target: lines,
-    outer: rows,
-    inner: 1,
-    length: inputLength,
-    inverse: false,
-  });
-  gatherLines(engine, warp, lines, target);
-  engine.release(lines);
+  gatherRows(engine, warp, image, target);
   for (let i = 0; i < gains.length; i++) {
     const gain = folded[i] ? 0 : gains[i]!;
     target[2 * i]! *= gain;

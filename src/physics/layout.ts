@@ -6,6 +6,19 @@ export type Axis = (typeof AXES)[number];
 export const FRAME_AXES = ["repetition", "set", "phase", "contrast", "slice"] as const;
 export type FrameAxis = (typeof FRAME_AXES)[number];
 
+/** A number for each frame axis: its length, or a counter along it. */
+export type PerFrameAxis = Readonly<Record<FrameAxis, number>>;
+
+/** Frames in all. */
+export function frameCount(lengths: PerFrameAxis): number {
+  return FRAME_AXES.reduce((product, axis) => product * lengths[axis], 1);
+}
+
+/** Index of the frame with these counters, C order over FRAME_AXES. */
+export function frameIndex(lengths: PerFrameAxis, counters: PerFrameAxis): number {
+  return FRAME_AXES.reduce((index, axis) => index * lengths[axis] + counters[axis], 0);
+}
+
 /** The axes along which k-space is sampled. */
 export type SpatialAxis = "x" | "y" | "z";
 export const SPATIAL_AXES = ["x", "y", "z"] as const;

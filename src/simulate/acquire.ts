@@ -1,3 +1,4 @@
+import { FLAG, type FlagName } from "../ingest/flags.js";
 import { noiseCovarianceFactor } from "../physics/noise-statistics.js";
 import { type Acquisition, acquiredLines, acquiredSamples, centerSample } from "./acquisition.js";
 import { sliceGeometry } from "./geometry.js";
@@ -5,20 +6,6 @@ import { addNoise } from "./noise.js";
 import { RandomStream } from "./random.js";
 import type { HeadValues, RawReadout } from "./raw-writer.js";
 import { ExactKSpace, echoPhases, readoutSignal } from "./signal.js";
-
-/** Flag numbers of the raw-data standard (ismrmrd.h); flag n is bit n - 1. */
-const FLAG = {
-  firstInStep1: 1,
-  lastInStep1: 2,
-  firstInSlice: 7,
-  lastInSlice: 8,
-  firstInRepetition: 13,
-  lastInRepetition: 14,
-  noise: 19,
-  reverse: 22,
-  lastInMeasurement: 25,
-} as const;
-type FlagName = keyof typeof FLAG;
 
 /**
  * Every readout in the order of acquisition: noise readouts, then repetitions, averages, lines, slices (in their
@@ -77,14 +64,13 @@ function imageFlags(a: Acquisition, c: Counters): FlagName[] {
   const lastEcho = c.contrast === a.echoTimesSeconds.length - 1;
   const begins = firstLine && firstEcho && c.slice === a.sliceOrder[0] && c.average === 0;
   const ends = lastLine && lastEcho && c.slice === a.sliceOrder.at(-1) && c.average === a.averages - 1;
-  const marks: Readonly<Record<FlagName, boolean>> = {
+  const marks: Readonly<Partial<Record<FlagName, boolean>>> = {
     firstInStep1: firstLine,
     lastInStep1: lastLine,
     firstInSlice: firstLine && firstEcho,
     lastInSlice: lastLine && lastEcho,
     firstInRepetition: begins,
     lastInRepetition: ends,
-    noise: false,
     reverse: a.reversed[c.contrast] ?? false,
     lastInMeasurement: ends && c.repetition === a.repetitions - 1,
   };

@@ -68,10 +68,9 @@ export const apodize: FrameStage<Params> = {
   plan(layout, params) {
     const axes = usedAxes(layout, params);
     return {
-      layout:
-        params.window.name === "none"
-          ? layout
-          : { ...layout, inImage: layout.inImage.filter((a) => !axes.includes(a)) },
+      layout: isNothing(params)
+        ? layout
+        : { ...layout, inImage: layout.inImage.filter((a) => !axes.includes(a)) },
       physics: {
         window: formatWindow(params.window),
         axes: axes.join(", "),
@@ -82,7 +81,7 @@ export const apodize: FrameStage<Params> = {
     };
   },
   run(frame, params, context) {
-    if (params.window.name === "none" && params.shape === "separable") return frame;
+    if (isNothing(params)) return frame;
     const axes = usedAxes(frame.layout, params);
     const ready = toKSpace(frame, axes, context);
     const grid = gridFor(ready.layout, axes, params);
@@ -90,6 +89,11 @@ export const apodize: FrameStage<Params> = {
     return { ...ready, noise: { ...ready.noise, gain: ready.noise.gain * sampledNoiseFactor(ready, grid) } };
   },
 };
+
+/** Whether every gain is 1; a radial window is 0 outside its disc, whatever its name. */
+function isNothing({ window, shape }: Params): boolean {
+  return window.name === "none" && shape === "separable";
+}
 
 function usedAxes(layout: Layout, params: Params): SpatialAxis[] {
   return (["z", "y", "x"] as const).filter(

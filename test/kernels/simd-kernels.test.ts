@@ -24,9 +24,9 @@ const WAYS = [
   { name: "simd, arrays elsewhere", kernels: simd, place: (x: Float32Array) => x.slice() },
 ];
 
-it("is supported by this JavaScript engine, and then chosen", () => {
+it("is supported by this JavaScript engine, and then chosen", async () => {
   expect(simdSupported()).toBe(true);
-  expect(createKernels().id).toBe("simd");
+  expect((await createKernels()).id).toBe("simd");
 });
 
 describe.each([
