@@ -1,9 +1,16 @@
 import type { Kernels } from "../kernels/kernels.js";
 import { currentBuffer } from "../kernels/sample-memory.js";
 import type { ScanFacts } from "../physics/scan.js";
-import { axisLength, type Frame, floatCount, type NoiseState, type SideOutput } from "../stages/stage.js";
+import {
+  axisLength,
+  type Finding,
+  type Frame,
+  floatCount,
+  type MapValues,
+  type NoiseState,
+} from "../stages/stage.js";
 import { Pipeline } from "./pipeline.js";
-import type { Plan } from "./plan.js";
+import { groupCounters, type Plan } from "./plan.js";
 import type { Timings } from "./timings.js";
 
 /** Floats in the shared sample memory, by address: what threads tell each other instead of arrays. */
@@ -30,6 +37,7 @@ export interface BlockJob {
 /** Run the other stages on a complete group. */
 export interface GroupJob {
   readonly kind: "group";
+  readonly group: number;
   readonly data: Span;
   readonly counts: Uint16Array;
   readonly result: Span;
@@ -42,7 +50,8 @@ export type Job = BlockJob | GroupJob;
 export interface JobReply {
   /** Of a group job. */
   readonly noise?: NoiseState;
-  readonly sideOutputs?: readonly SideOutput[];
+  readonly maps?: readonly MapValues[];
+  readonly findings?: readonly Finding[];
   /** The images before the last combination are in the group's own memory, not in `coils`. */
   readonly coilsInData?: boolean;
   readonly timings: Readonly<Record<string, number>>;
@@ -114,10 +123,12 @@ export class JobRunner {
       if (coils.byteOffset === data.byteOffset && coils.length === data.length) coilsInData = true;
       else if (job.coils) this.#view(job.coils).set(coils);
     };
-    const { result, sideOutputs } = this.#pipeline.runGroup(data, { counts: job.counts }, takeCoils);
+    const counters = groupCounters(this.#scan, this.#plan, job.group);
+    const outcome = this.#pipeline.runGroup(data, { counts: job.counts }, counters, takeCoils);
+    const { result, maps, findings } = outcome;
     this.#view(job.result).set(result.data);
     if (result.data.byteOffset !== data.byteOffset) this.#kernels.transform.release(result.data);
-    return { noise: result.noise, sideOutputs, coilsInData };
+    return { noise: result.noise, maps, findings, coilsInData };
   }
 }
 

@@ -1,10 +1,30 @@
 import { CarillonError } from "../errors.js";
 import type { Kernels } from "../kernels/kernels.js";
+import { FRAME_AXES, type PerFrameAxis } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
-import type { Frame, NoiseState, ReadoutLines, Sampling, SideOutput, StageContext } from "../stages/stage.js";
+import type {
+  Finding,
+  Frame,
+  InputArrays,
+  MapValues,
+  NoiseState,
+  ReadoutLines,
+  Sampling,
+  StageContext,
+} from "../stages/stage.js";
 import { axisLength } from "../stages/stage.js";
 import type { Plan, PlannedStage } from "./plan.js";
 import type { Timings } from "./timings.js";
+
+/** Readouts are processed before their frame is known. */
+const NO_COUNTERS = Object.fromEntries(FRAME_AXES.map((axis) => [axis, 0])) as PerFrameAxis;
+
+/** What the stages made of a group. */
+export interface GroupOutcome {
+  readonly result: Frame;
+  readonly maps: readonly MapValues[];
+  readonly findings: readonly Finding[];
+}
 
 /** Runs a plan's stages on readouts and on groups of frames; the same on the main thread and in a worker. */
 export class Pipeline {
@@ -26,10 +46,10 @@ export class Pipeline {
 
   /** The readout stages on a block of lines. The block's memory stays the caller's; the result's becomes it. */
   runReadouts(block: ReadoutLines): ReadoutLines {
-    const context = this.#context([]);
     let lines = block;
-    for (const { stage, params } of this.#readoutStages) {
+    for (const { stage, params, arrays } of this.#readoutStages) {
       if (stage.kind !== "readout") continue;
+      const context = this.#context(NO_COUNTERS, arrays, [], []);
       const next = this.#step(stage.id, () => stage.run(lines, params, context));
       if (next.data !== lines.data && lines.data !== block.data) context.release(lines.data);
       lines = next;
@@ -59,25 +79,28 @@ export class Pipeline {
    * The k-space stages to the combination on one group. `data` is worked on in place and stays the caller's; the
    * result's memory becomes the caller's where it is another.
    * @param data [...together, coil, z, y, x] of the placed layout
+   * @param counters of the group's first frame
    * @param takeCoils hears the images before the last combination; their memory may be reused after it returns, unless
    * it is `data`
    */
   runGroup(
     data: Float32Array,
     sampling: Sampling,
+    counters: PerFrameAxis,
     takeCoils: (coils: Float32Array) => void,
-  ): { result: Frame; sideOutputs: readonly SideOutput[] } {
-    const sideOutputs: SideOutput[] = [];
-    const context = this.#context(sideOutputs);
+  ): GroupOutcome {
+    const maps: MapValues[] = [];
+    const findings: Finding[] = [];
     let frame: Frame = { data, layout: this.#plan.placed, sampling, noise: this.#noiseOf(sampling) };
-    for (const { stage, params } of this.#frameStages) {
+    for (const { stage, params, arrays } of this.#frameStages) {
       if (stage.kind === "readout") continue;
+      const context = this.#context(counters, arrays, maps, findings);
       if (stage.kind === "combine") takeCoils(frame.data);
       const next = this.#step(stage.id, () => stage.run(frame, params, context));
       if (next.data !== frame.data && frame.data !== data) context.release(frame.data);
       frame = next;
     }
-    return { result: frame, sideOutputs };
+    return { result: frame, maps, findings };
   }
 
   /** Noise of a pixel against that of a sample: lines that were averaged have less of it, missing ones none. */
@@ -95,14 +118,23 @@ export class Pipeline {
     );
   }
 
-  #context(sideOutputs: SideOutput[]): StageContext {
+  #context(
+    counters: PerFrameAxis,
+    arrays: InputArrays,
+    maps: MapValues[],
+    findings: Finding[],
+  ): StageContext {
     const { transform } = this.#kernels;
     return {
       scan: this.#scan,
       kernels: this.#kernels,
+      counters,
+      arrays,
       allocate: (floats) => transform.allocate(floats, false),
       release: (data) => transform.release(data),
-      emit: (output) => sideOutputs.push(output),
+      emit: (map) => maps.push(map),
+      emitted: (name) => maps.findLast((map) => map.name === name)?.data,
+      note: (finding) => findings.push(finding),
     };
   }
 

@@ -15,11 +15,14 @@ import { STAGES, stageById } from "../stages/registry.js";
 import {
   axisLength,
   floatCount,
+  type InputArrays,
   type Layout,
+  type MapPlan,
   STAGE_KINDS,
   type Stage,
   type StagePlan,
 } from "../stages/stage.js";
+import { readArrays } from "./input-arrays.js";
 
 /** One stage of a plan: what it gets, what it makes, and why it is there. */
 export interface PlannedStage {
@@ -32,6 +35,9 @@ export interface PlannedStage {
   readonly bytesOut: number;
   readonly workBytes: number;
   readonly reason: string;
+  readonly maps: readonly MapPlan[];
+  /** The files that its parameters name. */
+  readonly arrays: InputArrays;
 }
 
 /** A recipe worked out for a scan, before any sample is processed: every shape, byte count and physical number. */
@@ -67,12 +73,16 @@ export function planRecipe(
   });
   checkOrder(parsed.map(({ stage }) => stage));
   const together = FRAME_AXES.filter((axis) =>
-    parsed.some(({ stage }) => stage.kind !== "readout" && stage.together.includes(axis)),
+    parsed.some(({ stage, params }) => stage.kind !== "readout" && stage.together?.(params).includes(axis)),
   );
   let layout = encodedLayout(scan, together);
+  const handedOut: MapPlan[] = [];
   const stages = parsed.map(({ stage, params }): PlannedStage => {
     const input = layout;
-    const planned = stage.plan(input, params, scan);
+    const arrays = readArrays(stage.files?.(params) ?? []);
+    const planned = stage.plan(input, params, scan, { arrays, maps: handedOut });
+    const maps = planned.maps ?? [];
+    handedOut.push(...maps);
     layout = planned.layout;
     return {
       stage,
@@ -84,6 +94,8 @@ export function planRecipe(
       bytesOut: 4 * floatCount(layout),
       workBytes: planned.workBytes ?? 0,
       reason: reasons.get(stage.id) ?? "asked for",
+      maps,
+      arrays,
     };
   });
   const framesPerGroup = together.reduce((product, axis) => product * scan.lengths[axis], 1);
@@ -167,19 +179,27 @@ export function pixelSizeMm(layout: Layout): Record<"x" | "y" | "z", number> {
   return size;
 }
 
+/** Counters of a group's first frame. */
+export function groupCounters(
+  scan: ScanFacts,
+  { together }: Pick<Plan, "together">,
+  group: number,
+): PerFrameAxis {
+  const apart = FRAME_AXES.filter((axis) => !together.includes(axis));
+  // The axes apart and those together are all there are.
+  return { ...unravel(scan, together, 0), ...unravel(scan, apart, group) } as PerFrameAxis;
+}
+
 /** Frames of a group in the order of their places. */
 export function groupFrames(
   scan: ScanFacts,
   plan: Pick<Plan, "together" | "framesPerGroup">,
   group: number,
 ): number[] {
-  const apart = FRAME_AXES.filter((axis) => !plan.together.includes(axis));
-  const fixed = unravel(scan, apart, group);
-  return Array.from({ length: plan.framesPerGroup }, (_, place) => {
-    // The axes apart and those together are all there are.
-    const counters = { ...fixed, ...unravel(scan, plan.together, place) } as PerFrameAxis;
-    return frameIndex(scan.lengths, counters);
-  });
+  const first = groupCounters(scan, plan, group);
+  return Array.from({ length: plan.framesPerGroup }, (_, place) =>
+    frameIndex(scan.lengths, { ...first, ...unravel(scan, plan.together, place) }),
+  );
 }
 
 /** Counters along some axes from their index, C order. */

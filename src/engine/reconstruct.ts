@@ -6,7 +6,7 @@ import type { ScanIndex } from "../ingest/scan-index.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { currentBuffer, type SampleMemory } from "../kernels/sample-memory.js";
 import type { ScanFacts } from "../physics/scan.js";
-import { axisLength, type Frame, floatCount, type SideOutput } from "../stages/stage.js";
+import { axisLength, type Finding, type Frame, floatCount, type MapValues } from "../stages/stage.js";
 import type { Crew } from "./crew.js";
 import { type Destination, GroupStore, type OpenGroup } from "./group-store.js";
 import { frameAt, type JobReply } from "./jobs.js";
@@ -17,7 +17,8 @@ import type { Timings } from "./timings.js";
 export interface GroupResult {
   readonly result: Frame;
   readonly coils: Frame | undefined;
-  readonly sideOutputs: readonly SideOutput[];
+  readonly maps: readonly MapValues[];
+  readonly findings: readonly Finding[];
 }
 
 /** All that one pass over a file needs. */
@@ -229,6 +230,7 @@ class PassRun {
     const span = (array: Float32Array) => ({ byte: array.byteOffset, floats: array.length });
     const reply: JobReply = await crew.submit({
       kind: "group",
+      group: open.group,
       data: span(open.data),
       counts: open.counts,
       result: span(result),
@@ -241,7 +243,8 @@ class PassRun {
       coils:
         coils &&
         frameAt(plan, memory.memory, span(reply.coilsInData ? open.data : coils), "coils", reply.noise!),
-      sideOutputs: reply.sideOutputs!,
+      maps: reply.maps!,
+      findings: reply.findings!,
     });
     timings.add("write", (performance.now() - start) / 1e3);
     memory.release(result);

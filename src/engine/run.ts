@@ -75,7 +75,7 @@ export async function run<A extends Attempt>(
   });
   try {
     const foreseen = previewScan(raw, overrides, options.blockRows ?? DEFAULT_BLOCK_ROWS);
-    if (foreseen) {
+    if (foreseen && !comparesFrames(prepare(foreseen).plan)) {
       const result = await attemptRun(raw, { foreseen, overrides }, options, hands, prepare, begin);
       if (result) return result;
     }
@@ -85,6 +85,11 @@ export async function run<A extends Attempt>(
     raw.close();
     hands.dismiss();
   }
+}
+
+/** Stages that compare echoes or slices need what only the index of all readouts knows: directions and places. */
+function comparesFrames(plan: Plan): boolean {
+  return plan.stages.some(({ stage }) => stage.kind === "series");
 }
 
 interface Knowledge {

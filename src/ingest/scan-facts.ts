@@ -59,7 +59,7 @@ export function scanFacts(
     relativeReceiverNoiseBandwidth:
       overrides.receiverNoiseBandwidth ?? header.relativeReceiverNoiseBandwidth ?? 1,
     noise: noiseFacts(index),
-    echoTimesSeconds: header.echoTimesSeconds,
+    echoTimesSeconds: overrides.echoMs?.map((ms) => ms * 1e-3) ?? header.echoTimesSeconds,
     acceleration: encoding.acceleration,
     calibrationMode: encoding.calibrationMode,
     poses: Array.from({ length: lengths.slice }, (_, slice) => index.poses[slice]),

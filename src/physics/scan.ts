@@ -34,6 +34,7 @@ export interface ScanOverrides {
   readonly sampleTimeUs?: number;
   readonly resonanceHz?: number;
   readonly receiverNoiseBandwidth?: number;
+  readonly echoMs?: readonly number[];
   readonly readoutPolarity: "header" | "forward" | "reverse" | "alternate";
   readonly centre: "header" | "measured";
   readonly conjugate: boolean;

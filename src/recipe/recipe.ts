@@ -125,6 +125,7 @@ export function scanOverrides(recipe: Pick<Recipe, "scan">, file?: string): Scan
     averageOver: s["average-over"] as FrameAxis[],
     ...("sample-time-us" in s && { sampleTimeUs: s["sample-time-us"] as number }),
     ...("resonance-hz" in s && { resonanceHz: s["resonance-hz"] as number }),
+    ...("echo-ms" in s && { echoMs: s["echo-ms"] as number[] }),
     ...("receiver-noise-bandwidth" in s && {
       receiverNoiseBandwidth: s["receiver-noise-bandwidth"] as number,
     }),

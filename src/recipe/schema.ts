@@ -29,6 +29,12 @@ export const scanSchema = {
       exclusiveMinimum: 0,
       description: "resonance frequency of water protons, Hz",
     },
+    "echo-ms": {
+      type: "array",
+      items: { type: "number", minimum: 0 },
+      minItems: 1,
+      description: "echo times, ms, one for each echo; default: the header's",
+    },
     "receiver-noise-bandwidth": {
       type: "number",
       exclusiveMinimum: 0,

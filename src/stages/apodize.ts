@@ -49,7 +49,6 @@ const schema = {
 export const apodize: FrameStage<Params> = {
   id: "apodize",
   kind: "k-space",
-  together: [],
   summary: "a window over k-space: less ringing and noise, less resolution",
   schema,
   parse(raw) {

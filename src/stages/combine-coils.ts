@@ -18,7 +18,6 @@ const schema = {
 export const combineCoils: FrameStage<Params> = {
   id: "combine-coils",
   kind: "combine",
-  together: [],
   summary: "one image from all channels; a single channel passes unchanged, complex",
   schema,
   parse: (raw) => parseBySchema<Params>("combine-coils", schema, raw),

@@ -13,9 +13,22 @@ import {
   withLength,
 } from "./stage.js";
 
-type Params = Record<string, never>;
+interface Params {
+  readonly "readout-margin": "crop" | "keep";
+}
 
-const schema = { type: "object", additionalProperties: false, properties: {} };
+const schema = {
+  type: "object",
+  additionalProperties: false,
+  properties: {
+    "readout-margin": {
+      description:
+        "keep what the readout has beyond the reconstructed field of view, for a stage that moves pixels along x",
+      enum: ["crop", "keep"],
+      default: "crop",
+    },
+  },
+};
 
 /** How one axis goes from its pixels to the reconstructed matrix. */
 interface Fit {
@@ -30,19 +43,19 @@ interface Fit {
 /**
  * From the encoded to the reconstructed matrix, per axis: crop the image to round(N x FOV_rec / FOV) about floor(N/2),
  * changing no value; then, in k-space, crop or zero-fill to the reconstructed matrix M and scale by sqrt(M / N), so
- * that a flat region keeps its level. The pixel size is that of the result.
+ * that a flat region keeps its level. The pixel size is that of the result. With the readout's margin kept, x has as
+ * many pixels of that size as the encoded field of view holds.
  */
 export const fitMatrix: FrameStage<Params> = {
   id: "fit-matrix",
   kind: "transform",
-  together: [],
   summary: "crop to the reconstructed field of view, zero-fill or crop to its matrix",
   schema,
   parse: (raw) => parseBySchema<Params>("fit-matrix", schema, raw),
-  plan(layout, _params, scan) {
+  plan(layout, params, scan) {
     if (layout.inImage.length < SPATIAL_AXES.length)
       throw new UsageError({ field: "fit-matrix" }, "needs an image", "Put inverse-fft before it");
-    const fits = fitsOf(layout, scan);
+    const fits = fitsOf(layout, params, scan);
     const fitted = fits.reduce((before, fit) => fittedLayout(before, fit), layout);
     return {
       layout: fitted,
@@ -57,18 +70,31 @@ export const fitMatrix: FrameStage<Params> = {
       ),
     };
   },
-  run: (frame, _params, context) =>
-    fitsOf(frame.layout, context.scan).reduce((before, fit) => fitAxis(before, fit, context), frame),
+  run: (frame, params, context) =>
+    fitsOf(frame.layout, params, context.scan).reduce((before, fit) => fitAxis(before, fit, context), frame),
 };
 
-function fitsOf(layout: Layout, scan: ScanFacts): Fit[] {
+function fitsOf(layout: Layout, params: Params, scan: ScanFacts): Fit[] {
   return SPATIAL_AXES.map((axis) => {
     const length = axisLength(layout, axis);
     const kept = Math.min(length, Math.round((length * scan.reconstructed.fovMm[axis]) / layout.fovMm[axis]));
     // A 2-D slice and a projection have one pixel along what they do not encode, whatever the field of view says.
     const encoded = scan.encoded.matrix[axis] > 1;
+    if (axis === "x" && params["readout-margin"] === "keep")
+      return { axis, length, ...withMargin(length, kept, scan.reconstructed.matrix.x) };
     return { axis, length, kept: encoded ? kept : 1, matrix: encoded ? scan.reconstructed.matrix[axis] : 1 };
   });
+}
+
+/** The most pixels of a row that a whole number of the result's pixels covers. */
+function withMargin(length: number, kept: number, matrix: number): Pick<Fit, "kept" | "matrix"> {
+  const step = kept / greatestCommonDivisor(kept, matrix);
+  const wide = Math.floor(length / step) * step;
+  return { kept: wide, matrix: (wide * matrix) / kept };
+}
+
+function greatestCommonDivisor(a: number, b: number): number {
+  return b === 0 ? a : greatestCommonDivisor(b, a % b);
 }
 
 function fittedLayout(layout: Layout, fit: Fit): Layout {

@@ -14,7 +14,6 @@ const schema = { type: "object", additionalProperties: false, properties: {} };
 export const inverseFft: FrameStage<Params> = {
   id: "inverse-fft",
   kind: "transform",
-  together: [],
   summary: "k-space to image: centred, unitary, 1-D to 3-D, any length",
   schema,
   parse: (raw) => parseBySchema<Params>("inverse-fft", schema, raw),

@@ -1,11 +1,13 @@
 import { apodize } from "./apodize.js";
 import { combineCoils } from "./combine-coils.js";
+import { fieldMap } from "./field-map.js";
 import { fitMatrix } from "./fit-matrix.js";
 import { inverseFft } from "./inverse-fft.js";
 import { prewhiten } from "./prewhiten.js";
 import { shiftReadout } from "./shift-readout.js";
 import type { Stage } from "./stage.js";
 import { trimOversampling } from "./trim-oversampling.js";
+import { undisplace } from "./undisplace.js";
 
 /**
  * Every stage, in the order of the flow; a recipe lists some of them in this order. Types, help, JSON Schema and the
@@ -18,6 +20,8 @@ export const STAGES: readonly Stage[] = [
   apodize,
   inverseFft,
   fitMatrix,
+  fieldMap,
+  undisplace,
   combineCoils,
 ] as unknown as readonly Stage[]; // each stage gets only what its own `parse` returned
 

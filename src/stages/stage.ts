@@ -1,6 +1,6 @@
 import type { Kernels } from "../kernels/kernels.js";
-import type { Axis, Extent, FrameAxis, SpatialAxis, Xyz } from "../physics/layout.js";
-import type { Discrepancy, ScanFacts } from "../physics/scan.js";
+import type { Axis, Extent, FrameAxis, PerFrameAxis, SpatialAxis, Xyz } from "../physics/layout.js";
+import type { ScanFacts } from "../physics/scan.js";
 
 /** Where a stage stands in the flow: each kind gets what the kind before it made. */
 export const STAGE_KINDS = ["readout", "k-space", "transform", "series", "combine"] as const;
@@ -58,23 +58,66 @@ export interface ReadoutLines {
   readonly backward: Uint8Array;
 }
 
-/** An array that a stage makes beside its result, such as a field map. */
-export interface SideOutput {
+/** A map that a stage makes beside its result, announced by its plan: such as a field map. */
+export interface MapPlan {
+  /** File name without its ending, the unit in it: `field-hz`. */
+  readonly name: string;
+  readonly unit: string;
+  /** What the values are, in a few words. */
+  readonly describe: string;
+  /** Real; a map is common to all echoes, so it has no contrast axis. */
+  readonly layout: Layout;
+  /** How its picture shows it; undefined where it has none. */
+  readonly picture?: "magnitude" | "share" | "signed";
+}
+
+/** The values of an announced map for one group of frames, in the order of its layout. */
+export interface MapValues {
   readonly name: string;
   readonly data: Float32Array;
-  readonly axes: readonly Axis[];
+}
+
+/** A number that a stage found in one group, such as how many pixels fold. */
+export interface Finding {
+  readonly name: string;
+  readonly value: number;
+}
+
+/** An array that a recipe names as a file; the engine reads it. */
+export interface InputArray {
+  readonly file: string;
   readonly shape: readonly number[];
-  readonly unit: string;
+  /** Real values, C order. */
+  readonly data: Float32Array | Float64Array;
+  readonly sha256: string;
+}
+
+/** Arrays by the name that the recipe gives. */
+export type InputArrays = ReadonlyMap<string, InputArray>;
+
+/** What a stage may know when it is planned, beside its layout. */
+export interface Given {
+  readonly arrays: InputArrays;
+  /** Maps that the stages before it hand out. */
+  readonly maps: readonly MapPlan[];
 }
 
 /** What a running stage may use; stages never touch files. */
 export interface StageContext {
   readonly scan: ScanFacts;
   readonly kernels: Kernels;
+  /** Counters of the group's first frame; 0 along the axes that are together. */
+  readonly counters: PerFrameAxis;
+  /** The files that the stage's parameters name. */
+  readonly arrays: InputArrays;
   /** Memory for samples, holding anything; what a stage takes and does not return it must give back. */
   allocate(floats: number): Float32Array;
   release(data: Float32Array): void;
-  emit(output: SideOutput): void;
+  /** Hand out a map; its memory must not be the context's. */
+  emit(map: MapValues): void;
+  /** A map that an earlier stage has handed out for this group. */
+  emitted(name: string): Float32Array | undefined;
+  note(finding: Finding): void;
 }
 
 /** What a stage will do to a layout: shape arithmetic and physics, no samples. `--explain` prints it. */
@@ -84,7 +127,8 @@ export interface StagePlan {
   readonly workBytes?: number;
   /** Numbers worth knowing, with their units in the name: `{ "bandwidth per pixel, Hz": 390.6 }`. */
   readonly physics: Readonly<Record<string, number | string>>;
-  readonly discrepancies?: readonly Discrepancy[];
+  /** Maps that the stage will hand out for every group. */
+  readonly maps?: readonly MapPlan[];
 }
 
 interface StageBase<P> {
@@ -96,8 +140,10 @@ interface StageBase<P> {
   readonly schema: object;
   /** @throws UsageError for an unknown key or a value that the schema or the stage refuses */
   parse(raw: unknown): P;
+  /** Files (.npy) that the parameters name. */
+  files?(params: P): readonly string[];
   /** @throws UsageError or InputError if the stage cannot work on this layout or scan */
-  plan(layout: Layout, params: P, scan: ScanFacts): StagePlan;
+  plan(layout: Layout, params: P, scan: ScanFacts, given: Given): StagePlan;
 }
 
 /** Works on single readouts as they are read, before they are placed. */
@@ -111,8 +157,8 @@ export interface ReadoutStage<P> extends StageBase<P> {
 /** Works on whole frames, or on several together. */
 export interface FrameStage<P> extends StageBase<P> {
   readonly kind: Exclude<StageKind, "readout">;
-  /** The frame axes that it needs at once. */
-  readonly together: readonly FrameAxis[];
+  /** The frame axes that it needs at once; none if left out. */
+  together?(params: P): readonly FrameAxis[];
   run(frame: Frame, params: P, context: StageContext): Frame;
 }
 

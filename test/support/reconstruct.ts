@@ -3,7 +3,7 @@ import { run } from "../../src/engine/run.js";
 import type { ScanFacts, ScanOverrides } from "../../src/physics/scan.js";
 import { defaultRecipe } from "../../src/recipe/default-recipe.js";
 import { applySetting } from "../../src/recipe/recipe.js";
-import { floatCount, type NoiseState } from "../../src/stages/stage.js";
+import { type Finding, floatCount, type NoiseState } from "../../src/stages/stage.js";
 
 export interface Reconstructed {
   /** All groups one after the other, as the arrays of a file. */
@@ -13,6 +13,9 @@ export interface Reconstructed {
   readonly facts: ScanFacts;
   readonly noise: NoiseState;
   readonly codes: readonly string[];
+  /** Maps by name, of all groups one after the other. */
+  readonly maps: ReadonlyMap<string, Float32Array>;
+  readonly findings: readonly Finding[];
 }
 
 /** Reconstruct a file in memory with its default recipe and some settings. */
@@ -24,6 +27,8 @@ export async function reconstructed(
 ): Promise<Reconstructed> {
   const results: Float32Array[] = [];
   const coils: Float32Array[] = [];
+  const maps: Map<string, Float32Array>[] = [];
+  const findings: Finding[][] = [];
   let noise: NoiseState = { whitened: false, gain: 0 };
   const { plan, scan } = await run(
     file,
@@ -36,6 +41,8 @@ export async function reconstructed(
       use: async (group, done) => {
         results[group] = done.result.data.slice();
         coils[group] = done.coils!.data.slice();
+        maps[group] = new Map(done.maps.map(({ name, data }) => [name, data]));
+        findings[group] = [...done.findings];
         noise = done.result.noise;
       },
       abort: () => {
@@ -54,6 +61,13 @@ export async function reconstructed(
     plan,
     facts: scan.facts,
     noise,
+    maps: new Map(
+      [...maps[0]!.keys()].map((name) => {
+        const parts = maps.map((group) => group.get(name)).filter((part) => part !== undefined);
+        return [name, join(parts, parts[0]!.length)];
+      }),
+    ),
+    findings: findings.flat(),
     codes: scan.discrepancies.map(({ code }) => code),
   };
 }

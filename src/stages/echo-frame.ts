@@ -1,0 +1,145 @@
+import { UsageError } from "../errors.js";
+import { channelWeights, combineEchoes } from "../kernels/combine-echoes.js";
+import { cropStart, type FrameAxis } from "../physics/layout.js";
+import type { ScanFacts } from "../physics/scan.js";
+import { axisLength, type Frame, type Layout } from "./stage.js";
+
+/** When and how fast each echo was read. */
+export interface EchoTiming {
+  /** Echo times, seconds since the excitation. */
+  readonly echoSeconds: readonly number[];
+  /** Hz from one pixel of the image to the next along x; negative where the echo was read backward. */
+  readonly pixelBandwidthHz: readonly number[];
+}
+
+/**
+ * Timing of a scan's echoes for the pixels of a layout.
+ * @throws UsageError for an echo without its time or with lines of both directions
+ */
+export function echoTiming(id: string, layout: Layout, scan: ScanFacts): EchoTiming {
+  const { contrast } = scan.lengths;
+  const echoSeconds = scan.echoTimesSeconds.slice(0, contrast);
+  if (echoSeconds.length < contrast)
+    throw new UsageError(
+      { field: id },
+      `the header has ${echoSeconds.length} echo times for ${contrast} echoes`,
+      "Give them: --set 'scan.echo-ms=[2.3, 4.6]'",
+    );
+  return {
+    echoSeconds,
+    pixelBandwidthHz: echoSeconds.map((_, echo) => signedPixelBandwidthHz(id, layout, scan, echo)),
+  };
+}
+
+/** Hz from one pixel to the next along x; negative for an echo read backward. @throws UsageError for a mixed one */
+export function signedPixelBandwidthHz(id: string, layout: Layout, scan: ScanFacts, echo: number): number {
+  const polarity = scan.polarity[echo];
+  if (polarity === "mixed")
+    throw new UsageError(
+      { field: id },
+      `echo ${echo} has lines read in both directions, which move apart`,
+      "Set scan.readout-polarity where the header is wrong",
+    );
+  const hz = pixelBandwidthHz(layout, scan);
+  return polarity === "reverse" ? -hz : hz;
+}
+
+/** Hz from one pixel of a layout to the next along x: the readout's bandwidth over its field of view, times the pixel. */
+export function pixelBandwidthHz(layout: Layout, scan: ScanFacts): number {
+  return pixelMm(layout) / (scan.dwellSeconds * scan.encoded.fovMm.x);
+}
+
+/** Pixel size along x, mm. */
+export function pixelMm(layout: Layout): number {
+  return layout.fovMm.x / axisLength(layout, "x");
+}
+
+/** Pixels along x of the reconstructed field of view; a layout with the readout's margin has more. */
+export function columnsInView(layout: Layout, scan: ScanFacts): number {
+  return Math.min(axisLength(layout, "x"), Math.round(scan.reconstructed.fovMm.x / pixelMm(layout)));
+}
+
+/** The layout of maps that belong to a frame: real, without echoes and channels, cut to the reconstructed field of view. */
+export function mapLayout(layout: Layout, scan: ScanFacts): Layout {
+  const columns = columnsInView(layout, scan);
+  const kept = layout.axes
+    .map((axis, i) => ({ axis, length: axis === "x" ? columns : layout.shape[i]! }))
+    .filter(({ axis }) => axis !== "contrast" && axis !== "coil");
+  return {
+    ...layout,
+    kind: "real",
+    axes: kept.map(({ axis }) => axis),
+    shape: kept.map(({ length }) => length),
+    fovMm: { ...layout.fovMm, x: columns * pixelMm(layout) },
+  };
+}
+
+/** @throws UsageError for channels that are combined, or fewer than `least` echoes, in one readout dimension or more */
+export function checkEchoes(id: string, layout: Layout, scan: ScanFacts, least: number): void {
+  if (!layout.axes.includes("coil") || layout.inImage.length < 3)
+    throw new UsageError({ field: id }, "needs the images of single channels", "Put inverse-fft before it");
+  if (scan.lengths.contrast < least)
+    throw new UsageError(
+      { field: id },
+      `needs ${least} echoes, the file has ${scan.lengths.contrast}`,
+      least === 2 ? "A map from elsewhere will do: --undisplace FIELD.npy" : "Choose another method",
+    );
+  if (scan.dimensions === 1)
+    throw new UsageError({ field: id }, "needs images, the file has projections", "Take the stage out");
+}
+
+/** The images of one group, [contrast, slice, coil, z, y, x] with the axes that are not together left out. */
+export class EchoFrame {
+  readonly echoes: number;
+  readonly slices: number;
+  readonly coils: number;
+  readonly partitions: number;
+  readonly rows: number;
+  readonly columns: number;
+  readonly #data: Float32Array;
+
+  constructor({ data, layout }: Frame) {
+    const length = (axis: FrameAxis | "coil" | "z" | "y" | "x") => axisLength(layout, axis);
+    this.echoes = length("contrast");
+    this.slices = length("slice");
+    this.coils = length("coil");
+    this.partitions = length("z");
+    this.rows = length("y");
+    this.columns = length("x");
+    this.#data = data;
+  }
+
+  /** One channel's image, a view: [y, x]. */
+  image(echo: number, slice: number, coil: number, z: number): Float32Array {
+    const size = 2 * this.rows * this.columns;
+    const index = ((echo * this.slices + slice) * this.coils + coil) * this.partitions + z;
+    return this.#data.subarray(index * size, (index + 1) * size);
+  }
+
+  /** All channels' images, [coil, y, columns], the middle `columns` of x; a view where that takes no copy. */
+  channels(echo: number, slice: number, z: number, columns: number): Float32Array {
+    const size = 2 * this.rows * columns;
+    if (columns === this.columns && this.partitions === 1) {
+      const start = (echo * this.slices + slice) * this.coils * size;
+      return this.#data.subarray(start, start + this.coils * size);
+    }
+    const out = new Float32Array(this.coils * size);
+    for (let coil = 0; coil < this.coils; coil++)
+      cropRows(this.image(echo, slice, coil, z), this.columns, columns, out.subarray(coil * size));
+    return out;
+  }
+
+  /** The echoes of one image combined with one set of channel weights, [y, columns] each. */
+  combined(slice: number, z: number, columns: number): Float32Array[] {
+    const echoes = Array.from({ length: this.echoes }, (_, echo) => this.channels(echo, slice, z, columns));
+    const weights = channelWeights(echoes, this.coils, this.rows, columns);
+    return combineEchoes(echoes, weights, this.rows, columns);
+  }
+}
+
+/** The middle `kept` of each row of `length` complex pixels. */
+export function cropRows(image: Float32Array, length: number, kept: number, target: Float32Array): void {
+  const first = 2 * cropStart(length, kept);
+  for (let from = first, to = 0; from < image.length; from += 2 * length, to += 2 * kept)
+    target.set(image.subarray(from, from + 2 * kept), to);
+}

@@ -1,0 +1,319 @@
+import { UsageError } from "../errors.js";
+import { objectField, resampleMap } from "../kernels/displacement.js";
+import type { Kernels } from "../kernels/kernels.js";
+import { signalMask } from "../kernels/signal-mask.js";
+import { planUndisplace, type UndisplaceOptions, type Undisplacer } from "../kernels/undisplace.js";
+import { planUndisplaceColumns } from "../kernels/undisplace-columns.js";
+import type { ScanFacts } from "../physics/scan.js";
+import {
+  columnsInView,
+  cropRows,
+  EchoFrame,
+  echoTiming,
+  mapLayout,
+  pixelBandwidthHz,
+  pixelMm,
+  signedPixelBandwidthHz,
+} from "./echo-frame.js";
+import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
+import { parseBySchema } from "./parameters.js";
+import {
+  axisLength,
+  type FrameStage,
+  type InputArray,
+  type Layout,
+  type StageContext,
+  withLength,
+} from "./stage.js";
+
+interface Params {
+  /** `measured`, or the file of a map in Hz. */
+  readonly field: string;
+  readonly coordinates: "object" | "image";
+  readonly jacobian: boolean;
+  readonly "spin-echo": boolean;
+  readonly along: "readout" | "phase";
+  readonly "echo-spacing-ms"?: number;
+  readonly "line-order": "ascending" | "descending";
+}
+
+const schema = {
+  type: "object",
+  additionalProperties: false,
+  properties: {
+    field: {
+      description:
+        "measured: by an earlier stage; or a .npy of Hz over the image's field of view, [y, x] or [slice, y, x]",
+      type: "string",
+      default: "measured",
+    },
+    coordinates: {
+      description: "of a given map: where the spins are (object), or where they are seen (image)",
+      enum: ["object", "image"],
+      default: "object",
+    },
+    jacobian: {
+      description: "correct intensity where pixels were stretched or squeezed",
+      type: "boolean",
+      default: true,
+    },
+    "spin-echo": {
+      description: "the field's phase is refocused at the echo time",
+      type: "boolean",
+      default: false,
+    },
+    along: {
+      description: "the direction that the field displaces along",
+      enum: ["readout", "phase"],
+      default: "readout",
+    },
+    "echo-spacing-ms": {
+      description: "time from one line of an echo train to the next, for along: phase",
+      type: "number",
+      exclusiveMinimum: 0,
+    },
+    "line-order": {
+      description: "of an echo train in time, for along: phase",
+      enum: ["ascending", "descending"],
+      default: "ascending",
+    },
+  },
+};
+
+const MEASURED = "measured";
+
+/**
+ * Put every pixel back that the field has displaced: pixel x of the object is read from the image at
+ * `x + field / pixelBandwidth` (the sign by each echo's direction of reading; along y by the line order in time), with
+ * band-limited interpolation of the complex channel images, times the Jacobian, so that sums along a line are kept.
+ * The phase that the field has left is taken off for the interpolation and put back. What the readout's margin holds
+ * (`fit-matrix: { readout-margin: keep }`) comes back; the result has the reconstructed field of view. Where the map folds,
+ * pixels are 0 and counted.
+ *
+ * Source: Jezzard and Balaban 1995, Magn Reson Med 34:65; phase: Maeda, Sano, Yokoyama 1988, IEEE Trans Med Imaging 7:26.
+ */
+export const undisplace: FrameStage<Params> = {
+  id: "undisplace",
+  kind: "series",
+  summary: "put pixels back that an off-resonance field has displaced",
+  schema,
+  parse(raw) {
+    const params = parseBySchema<Params>("undisplace", schema, raw);
+    if (params.along === "phase" && params["echo-spacing-ms"] === undefined)
+      throw new UsageError(
+        { field: "undisplace.echo-spacing-ms" },
+        "is needed for along: phase",
+        "Give the time from one line to the next",
+      );
+    if (params.field === MEASURED || params.field.endsWith(".npy")) return params;
+    throw new UsageError(
+      { field: "undisplace.field", value: params.field },
+      "must be measured or a .npy file",
+      "Save the map in Hz with numpy.save",
+    );
+  },
+  files: ({ field }) => (field === MEASURED ? [] : [field]),
+  plan(layout, params, scan, { arrays, maps }) {
+    if (!layout.axes.includes("coil") || layout.inImage.length < 3)
+      throw new UsageError(
+        { field: "undisplace" },
+        "needs the images of single channels",
+        "Put inverse-fft before it",
+      );
+    const map = arrays.get(params.field);
+    if (map) {
+      refuseSecondField("undisplace", maps);
+      checkMap(map, layout, scan);
+    } else if (!maps.some(({ name }) => name === "field-hz"))
+      throw new UsageError(
+        { field: "undisplace.field", value: MEASURED },
+        "no stage before it measures a field",
+        "Add field-map or separate-fat-water, or give a .npy file",
+      );
+    if (!params["spin-echo"]) echoTiming("undisplace", layout, scan);
+    const columns = columnsInView(layout, scan);
+    const output = mapLayout(layout, scan);
+    return {
+      layout: { ...withLength(layout, "x", columns), fovMm: output.fovMm },
+      ...(map && { maps: fieldMapPlans(output, false) }),
+      workBytes: 24 * axisLength(layout, "y") * axisLength(layout, "x"),
+      physics: {
+        along: params.along === "readout" ? "x" : "y",
+        "bandwidth per pixel, Hz": scan.polarity
+          .map((_, echo) => Number(perPixelHz(params, layout, scan, echo).toPrecision(6)))
+          .join(", "),
+        "margin on each side, px": Math.floor((axisLength(layout, "x") - columns) / 2),
+        intensity: params.jacobian ? "times the Jacobian" : "as it is",
+      },
+    };
+  },
+  run(frame, params, context) {
+    const images = new EchoFrame(frame);
+    const { scan } = context;
+    const columns = columnsInView(frame.layout, scan);
+    const layout = { ...withLength(frame.layout, "x", columns), fovMm: mapLayout(frame.layout, scan).fovMm };
+    const size = images.rows * columns;
+    const map = context.arrays.get(params.field);
+    const field = map
+      ? givenField(map, params, images, columns, frame.layout, context)
+      : context.emitted("field-hz")!;
+    const out = context.allocate((frame.data.length / images.columns) * columns);
+    const mask = new Float32Array(field.length);
+    const result = new EchoFrame({ ...frame, data: out, layout });
+    for (let slice = 0; slice < images.slices; slice++)
+      for (let z = 0; z < images.partitions; z++) {
+        const at = (slice * images.partitions + z) * size;
+        const fieldHz = field.subarray(at, at + size);
+        const planned = new Map<string, Undisplacer>();
+        for (let echo = 0; echo < images.echoes; echo++) {
+          const counter = images.echoes > 1 ? echo : context.counters.contrast;
+          const plan = planFor(planned, params, fieldHz, images, frame.layout, scan, counter);
+          for (let coil = 0; coil < images.coils; coil++)
+            applyPlan(
+              plan,
+              params,
+              context.kernels,
+              images,
+              images.image(echo, slice, coil, z),
+              result.image(echo, slice, coil, z),
+            );
+          if (counter > 0) continue;
+          context.note({ name: "folded pixels", value: plan.foldedCount });
+          const object = signalMask(coilImages(result, echo, slice, z), OBJECT_SHARE);
+          mask.set(
+            object.map((flag, i) => flag & (1 - plan.folded[i]!)),
+            at,
+          );
+        }
+      }
+    if (map && context.counters.contrast === 0) {
+      const values = new FieldValues(field.length, false);
+      values.set(0, field, mask);
+      values.emit(context, mmPerHz(params, frame.layout, scan));
+    }
+    return { ...frame, data: out, layout };
+  },
+};
+
+/** Pixels above this share of the bright level are the object. */
+const OBJECT_SHARE = 0.1;
+
+/** @throws UsageError for a map whose axes are not those of the images */
+function checkMap({ file, shape }: InputArray, layout: Layout, scan: ScanFacts): void {
+  const leading = shape.slice(0, -2).reduce((product, length) => product * length, 1);
+  const partitions = axisLength(layout, "z");
+  const images = scan.lengths.slice * partitions;
+  if (shape.length < 2 || (leading !== 1 && leading !== images))
+    throw new UsageError(
+      { file, field: "shape", value: shape.join(" x ") },
+      `must be [y, x] or [${partitions > 1 ? "z" : "slice"}, y, x] with ${images} images`,
+      "Any matrix will do; it must cover the image's field of view",
+    );
+}
+
+/** Hz from one pixel to the next along the direction of displacement, signed. */
+function perPixelHz(params: Params, layout: Layout, scan: ScanFacts, echo: number): number {
+  if (params.along === "readout") return signedPixelBandwidthHz("undisplace", layout, scan, echo);
+  const lineSeconds = (params["echo-spacing-ms"]! * 1e-3) / scan.acceleration.y;
+  const hz = layout.fovMm.y / axisLength(layout, "y") / (scan.encoded.fovMm.y * lineSeconds);
+  return params["line-order"] === "descending" ? -hz : hz;
+}
+
+/** Displacement on a forward readout, or along an echo train. */
+function mmPerHz(params: Params, layout: Layout, scan: ScanFacts): number {
+  if (params.along === "readout") return pixelMm(layout) / pixelBandwidthHz(layout, scan);
+  return layout.fovMm.y / axisLength(layout, "y") / perPixelHz(params, layout, scan, 0);
+}
+
+/** A given map on the grid of the images in the reconstructed field of view, object's coordinates, [slice, z, y, x]. */
+function givenField(
+  map: InputArray,
+  params: Params,
+  images: EchoFrame,
+  columns: number,
+  layout: Layout,
+  context: StageContext,
+): Float32Array {
+  const [rows, length] = map.shape.slice(-2) as [number, number];
+  const { scan, counters } = context;
+  const size = images.rows * columns;
+  const out = new Float32Array(images.slices * images.partitions * size);
+  for (let slice = 0; slice < images.slices; slice++)
+    for (let z = 0; z < images.partitions; z++) {
+      const counter = images.slices > 1 ? slice : counters.slice;
+      const isSingle = map.data.length === rows * length;
+      const from = isSingle ? 0 : (counter * images.partitions + z) * rows * length;
+      const given = map.data.subarray(from, from + rows * length);
+      const resampled = resampleMap(given, rows, length, images.rows, columns);
+      const hz = perPixelHz(params, layout, scan, 0);
+      const field =
+        params.coordinates === "object" ? resampled : toObject(params, resampled, images.rows, columns, hz);
+      out.set(field, (slice * images.partitions + z) * size);
+    }
+  return out;
+}
+
+/** A map in the coordinates of the displaced image carried to those of the object. */
+function toObject(
+  params: Params,
+  map: Float32Array,
+  rows: number,
+  columns: number,
+  hz: number,
+): Float32Array {
+  if (params.along === "readout") return objectField(map, rows, columns, hz).fieldHz;
+  const turned = objectField(transposed(map, rows, columns), columns, rows, hz).fieldHz;
+  return transposed(turned, columns, rows);
+}
+
+function transposed(map: Float32Array, rows: number, columns: number): Float32Array {
+  return map.map((_, i) => map[(i % rows) * columns + Math.floor(i / rows)]!);
+}
+
+/** The plan of an echo; those displaced alike, at the same time, share one. */
+function planFor(
+  planned: Map<string, Undisplacer>,
+  params: Params,
+  fieldHz: Float32Array,
+  images: EchoFrame,
+  layout: Layout,
+  scan: ScanFacts,
+  echo: number,
+): Undisplacer {
+  const hz = perPixelHz(params, layout, scan, echo);
+  const echoSeconds = params["spin-echo"] ? 0 : echoTiming("undisplace", layout, scan).echoSeconds[echo]!;
+  const key = `${hz} ${echoSeconds}`;
+  const known = planned.get(key);
+  if (known) return known;
+  const options: UndisplaceOptions = {
+    displacementPixels: fieldHz.map((value) => value / hz),
+    jacobian: params.jacobian,
+    ...(echoSeconds !== 0 && { accrued: { fieldHz, echoSeconds } }),
+  };
+  const plan =
+    params.along === "readout"
+      ? planUndisplace(images.rows, images.columns, options)
+      : planUndisplaceColumns(fieldHz.length / images.rows, images.rows, options);
+  planned.set(key, plan);
+  return plan;
+}
+
+function applyPlan(
+  plan: Undisplacer,
+  params: Params,
+  { transform }: Kernels,
+  images: EchoFrame,
+  image: Float32Array,
+  target: Float32Array,
+): void {
+  let source = image;
+  if (params.along === "phase") {
+    source = new Float32Array(target.length);
+    cropRows(image, images.columns, target.length / (2 * images.rows), source);
+  }
+  plan.apply(transform, source, target);
+}
+
+function coilImages(images: EchoFrame, echo: number, slice: number, z: number): Float32Array[] {
+  return Array.from({ length: images.coils }, (_, coil) => images.image(echo, slice, coil, z));
+}
