@@ -1,7 +1,7 @@
 import { statSync } from "node:fs";
 import { availableParallelism, totalmem } from "node:os";
 import type { Worker } from "node:worker_threads";
-import { InputError } from "../errors.js";
+import { CarillonError, InputError } from "../errors.js";
 import { DEFAULT_BLOCK_ROWS, RawFile } from "../ingest/raw-file.js";
 import { ScanIndex } from "../ingest/scan-index.js";
 import { createKernels } from "../kernels/create-kernels.js";
@@ -75,7 +75,7 @@ export async function run<A extends Attempt>(
   });
   try {
     const foreseen = previewScan(raw, overrides, options.blockRows ?? DEFAULT_BLOCK_ROWS);
-    if (foreseen && !comparesFrames(prepare(foreseen).plan)) {
+    if (foreseen && !comparesFrames(() => prepare(foreseen).plan)) {
       const result = await attemptRun(raw, { foreseen, overrides }, options, hands, prepare, begin);
       if (result) return result;
     }
@@ -88,8 +88,13 @@ export async function run<A extends Attempt>(
 }
 
 /** Stages that compare echoes or slices need what only the index of all readouts knows: directions and places. */
-function comparesFrames(plan: Plan): boolean {
-  return plan.stages.some(({ stage }) => stage.kind === "series");
+function comparesFrames(planned: () => Plan): boolean {
+  try {
+    return planned().stages.some(({ stage }) => stage.kind === "series");
+  } catch (error) {
+    if (error instanceof CarillonError) return true; // if the index bears it out, it comes again
+    throw error;
+  }
 }
 
 interface Knowledge {

@@ -143,3 +143,8 @@ export function cropRows(image: Float32Array, length: number, kept: number, targ
   for (let from = first, to = 0; from < image.length; from += 2 * length, to += 2 * kept)
     target.set(image.subarray(from, from + 2 * kept), to);
 }
+
+/** A number as plans show it: six digits. */
+export function rounded(value: number): number {
+  return Number(value.toPrecision(6));
+}

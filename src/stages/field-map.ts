@@ -9,6 +9,7 @@ import {
   mapLayout,
   pixelBandwidthHz,
   pixelMm,
+  rounded,
 } from "./echo-frame.js";
 import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
 import { parseBySchema } from "./parameters.js";
@@ -70,10 +71,10 @@ export const fieldMap: FrameStage<Params> = {
       maps: fieldMapPlans(mapLayout(layout, scan), true),
       workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 2) * scan.lengths.contrast,
       physics: {
-        "echo times, ms": echoSeconds.map((seconds) => round(seconds * 1e3)).join(", "),
-        "wrap limit, Hz": round(1 / (2 * closestEchoes(echoSeconds))),
-        "bandwidth per pixel, Hz": pixelBandwidthHz.map(round).join(", "),
-        "smoothing, mm": round(params["smoothing-px"] * pixelMm(layout)),
+        "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),
+        "wrap limit, Hz": rounded(1 / (2 * closestEchoes(echoSeconds))),
+        "bandwidth per pixel, Hz": pixelBandwidthHz.map(rounded).join(", "),
+        "smoothing, mm": rounded(params["smoothing-px"] * pixelMm(layout)),
       },
     };
   },
@@ -148,8 +149,4 @@ function closestEchoes(echoSeconds: readonly number[]): number {
     "two echoes have the same time",
     "Correct them: --set 'scan.echo-ms=[...]'",
   );
-}
-
-function round(value: number): number {
-  return Number(value.toPrecision(6));
 }

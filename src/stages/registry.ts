@@ -4,6 +4,7 @@ import { fieldMap } from "./field-map.js";
 import { fitMatrix } from "./fit-matrix.js";
 import { inverseFft } from "./inverse-fft.js";
 import { prewhiten } from "./prewhiten.js";
+import { separateFatWaterStage } from "./separate-fat-water.js";
 import { shiftReadout } from "./shift-readout.js";
 import type { Stage } from "./stage.js";
 import { trimOversampling } from "./trim-oversampling.js";
@@ -21,6 +22,7 @@ export const STAGES: readonly Stage[] = [
   inverseFft,
   fitMatrix,
   fieldMap,
+  separateFatWaterStage,
   undisplace,
   combineCoils,
 ] as unknown as readonly Stage[]; // each stage gets only what its own `parse` returned

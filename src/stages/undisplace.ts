@@ -13,6 +13,7 @@ import {
   mapLayout,
   pixelBandwidthHz,
   pixelMm,
+  rounded,
   signedPixelBandwidthHz,
 } from "./echo-frame.js";
 import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
@@ -139,9 +140,9 @@ export const undisplace: FrameStage<Params> = {
       workBytes: 24 * axisLength(layout, "y") * axisLength(layout, "x"),
       physics: {
         along: params.along === "readout" ? "x" : "y",
-        "bandwidth per pixel, Hz": scan.polarity
-          .map((_, echo) => Number(perPixelHz(params, layout, scan, echo).toPrecision(6)))
-          .join(", "),
+        "bandwidth per pixel, Hz": Array.from({ length: scan.lengths.contrast }, (_, echo) =>
+          rounded(perPixelHz(params, layout, scan, echo)),
+        ).join(", "),
         "margin on each side, px": Math.floor((axisLength(layout, "x") - columns) / 2),
         intensity: params.jacobian ? "times the Jacobian" : "as it is",
       },

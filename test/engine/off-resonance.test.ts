@@ -22,7 +22,9 @@ function objectDifference(images: ArrayLike<number>, truth: Float32Array, echo =
 }
 
 const magnitudes = (data: Float32Array, kind: "complex" | "real") =>
-  kind === "real" ? data : Float32Array.from({ length: data.length / 2 }, (_, i) => Math.hypot(data[2 * i]!, data[2 * i + 1]!));
+  kind === "real"
+    ? data
+    : Float32Array.from({ length: data.length / 2 }, (_, i) => Math.hypot(data[2 * i]!, data[2 * i + 1]!));
 
 describe("off-resonance", () => {
   const truth = answer("undistorted-magnitude");
@@ -32,12 +34,26 @@ describe("off-resonance", () => {
     console.log("uncorrected", objectDifference(magnitudes(plain.result, plain.plan.result.kind), truth));
     const done = await reconstructed(FILE, [...MARGIN, "field-map=on", "undisplace=on"]);
     const image = magnitudes(done.result, done.plan.result.kind);
-    console.log(done.plan.stages.map(({ stage, physics, output }) => [stage.id, output.shape.join("x"), JSON.stringify(physics)].join(" ")).join("\n"));
+    console.log(
+      done.plan.stages
+        .map(({ stage, physics, output }) =>
+          [stage.id, output.shape.join("x"), JSON.stringify(physics)].join(" "),
+        )
+        .join("\n"),
+    );
     console.log(0, objectDifference(image, truth), 1, objectDifference(image, truth, 1), done.findings);
     const map = done.maps.get("field-hz")!;
-    const errors = [...map].map((hz, i) => Math.abs(hz - field[i]!)).filter((_, i) => truth[i]! > 0.2 * Math.max(...truth)).sort((a, b) => a - b);
+    const errors = [...map]
+      .map((hz, i) => Math.abs(hz - field[i]!))
+      .filter((_, i) => truth[i]! > 0.2 * Math.max(...truth))
+      .sort((a, b) => a - b);
     console.log(errors[errors.length >> 1], errors[Math.floor(errors.length * 0.95)]);
-    const given = await reconstructed(FILE, [...MARGIN, `undisplace.field=${FOLDER}/off-resonance.field-hz.npy`]);
-    console.log("given", objectDifference(magnitudes(given.result, given.plan.result.kind), truth), [...given.maps.keys()]);
+    const given = await reconstructed(FILE, [
+      ...MARGIN,
+      `undisplace.field=${FOLDER}/off-resonance.field-hz.npy`,
+    ]);
+    console.log("given", objectDifference(magnitudes(given.result, given.plan.result.kind), truth), [
+      ...given.maps.keys(),
+    ]);
   });
 });

@@ -2,7 +2,13 @@ import { describe, expect, test } from "vitest";
 import { createPlainKernels } from "../../src/kernels/plain-kernels.js";
 import { DEFAULT_OVERRIDES, type ScanFacts } from "../../src/physics/scan.js";
 import { STAGES } from "../../src/stages/registry.js";
-import { type Frame, floatCount, type Given, type Layout, type StageContext } from "../../src/stages/stage.js";
+import {
+  type Frame,
+  floatCount,
+  type Given,
+  type Layout,
+  type StageContext,
+} from "../../src/stages/stage.js";
 
 /** A scan of 3 echoes, 5 lines of 8 samples in 3 partitions, 2 channels; twofold oversampled, reconstructed finer along y. */
 const SCAN: ScanFacts = {
@@ -139,6 +145,7 @@ test("each id occurs once, and kinds come in the order of the flow", () => {
     "inverse-fft",
     "fit-matrix",
     "field-map",
+    "separate-fat-water",
     "undisplace",
     "combine-coils",
   ]);
