@@ -67,6 +67,28 @@ export const READ_OPTIONS: Readonly<Record<string, Option>> = {
   },
 };
 
+/** Flags that add stages which look across echoes. */
+export const SERIES_OPTIONS: Readonly<Record<string, Option>> = {
+  undisplace: {
+    type: "text",
+    value: "FIELD",
+    describe: "put displaced pixels back: measured (from the echoes), or a .npy of Hz",
+  },
+  "field-coordinates": {
+    type: "text",
+    value: "WHERE",
+    choices: ["object", "image"],
+    describe: "what the pixels of a given map are: where spins are, or where they are seen",
+    byDefault: "object",
+  },
+  separate: {
+    type: "text",
+    value: "WHAT",
+    choices: ["fat-water"],
+    describe: "maps of water and of fat, each in its place",
+  },
+};
+
 /** The argument of every command that reads a raw file. */
 export const RAW_ARGUMENT: Argument = {
   name: "raw",

@@ -5,6 +5,8 @@ import { UsageError } from "../errors.js";
 import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
 import { defaultRecipe, refuseUnsupported } from "../recipe/default-recipe.js";
 import { applySetting, outputSettings, type Recipe, readRecipe, scanOverrides } from "../recipe/recipe.js";
+import { type Shortcuts, withShortcuts } from "../recipe/shortcuts.js";
+import { stageById } from "../stages/registry.js";
 import type { Flags } from "./command.js";
 
 /** What the flags ask for, checked as far as it can be without the raw file. */
@@ -26,9 +28,12 @@ export function requestOf(flags: Flags): Request {
   const recipeFile = flags.recipe as string | undefined;
   const settings = (flags.set as string[] | undefined) ?? [];
   const given = recipeFile === undefined ? undefined : readRecipe(textOf(recipeFile), recipeFile);
-  const complete = (base: Recipe) => withFlags(settings.reduce(applySetting, base), flags);
+  const shortcuts = shortcutsOf(flags);
+  const complete = (base: Recipe) =>
+    withFlags(settings.reduce(applySetting, withShortcuts(base, shortcuts)), flags);
   const early = complete(given ?? { carillon: 1, scan: {}, stages: [], outputs: {} });
   outputSettings(early, recipeFile);
+  for (const { id, parameters } of early.stages) stageById(id)!.parse(parameters);
   return {
     overrides: scanOverrides(early),
     source: recipeFile ?? "default",
@@ -45,6 +50,26 @@ export function requestOf(flags: Flags): Request {
       };
     },
   };
+}
+
+/** @throws UsageError for a choice of coordinates without a map that they could be of */
+function shortcutsOf(flags: Flags): Shortcuts {
+  // The parser has checked choices and types.
+  const shortcuts = {
+    ...(flags.undisplace !== undefined && { undisplace: flags.undisplace as string }),
+    ...(flags["field-coordinates"] !== undefined && {
+      fieldCoordinates: flags["field-coordinates"] as "object" | "image",
+    }),
+    ...(flags.separate !== undefined && { separate: flags.separate as "fat-water" }),
+  };
+  const { undisplace, fieldCoordinates } = shortcuts;
+  if (fieldCoordinates && (undisplace === undefined || undisplace === "measured"))
+    throw new UsageError(
+      { field: "--field-coordinates", value: fieldCoordinates },
+      "says where the pixels of a given map lie",
+      "Give the map: --undisplace FIELD.npy",
+    );
+  return shortcuts;
 }
 
 /** `--group`, `--encoding` and the grey range as entries of the recipe, so that the sidecar keeps them. */

@@ -1,9 +1,16 @@
 import { SAVES, type Save } from "../engine/products.js";
-import { type Command, type Flags, type Origins, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
+import {
+  type Command,
+  type Flags,
+  type Origins,
+  RAW_ARGUMENT,
+  READ_OPTIONS,
+  SERIES_OPTIONS,
+} from "./command.js";
 import type { Request } from "./plan-file.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 import type { Terminal } from "./terminal.js";
-import { counted } from "./text.js";
+import { counted, wrap } from "./text.js";
 
 /** `carillon recon`: from a raw file to arrays, pictures and a sidecar. */
 export const recon: Command = {
@@ -22,6 +29,7 @@ export const recon: Command = {
       byDefault: "the one that suits the file",
     },
     set: SET_OPTION,
+    ...SERIES_OPTIONS,
     explain: { type: "switch", describe: "print the plan and stop; needs no --out" },
     strict: { type: "switch", describe: "fail where header and readouts disagree or lines are missing" },
     "grey-low": { type: "number", value: "V", describe: "value shown black in image.png" },
@@ -54,6 +62,11 @@ export const recon: Command = {
   examples: [
     ["recon scan.h5 --out result", "image.npy, image.png and image.json in result/"],
     ["recon scan.h5 --out hann --set apodize.window=hann", "the same with a Hann window"],
+    [
+      "recon scan.h5 --out straight --undisplace measured",
+      "put back what the field displaced, measured from the echoes",
+    ],
+    ["recon scan.h5 --out parts --separate fat-water", "water.npy and fat.npy in their true places"],
     ["recon scan.h5 --explain", "what would be done, and why"],
   ],
   notes: stageNotes,
@@ -133,15 +146,14 @@ function timingTable(timings: Written["timings"]): string {
 }
 
 function report(written: Written, terminal: Terminal): void {
-  const { files, arrays, facts, discrepancies, transform, timings } = written;
-  terminal.document({ files, arrays, scan: facts, discrepancies, transform, timings });
+  const { files, arrays, facts, placement, discrepancies, transform, timings } = written;
+  terminal.document({ files, arrays, placement, scan: facts, discrepancies, transform, timings });
   if (transform === "plain")
     terminal.message("note: plain transforms ran, not the SIMD ones: slower, and not the same bits");
   for (const file of files) {
     const array = arrays.find((entry) => file.endsWith(`/${entry.file}`) || file === entry.file);
     terminal.result(array ? `${file}  [${array.axes.join(", ")}] = ${array.shape.join(" x ")}` : file);
   }
-  const { fatWaterShift: fat, bandwidthPerPixelHz: perPixel } = facts;
   const missing = facts.lines.missing
     ? `, ${facts.lines.missing} of ${facts.lines.expected} lines missing (zero)`
     : "";
@@ -149,9 +161,8 @@ function report(written: Written, terminal: Terminal): void {
     `${counted(facts.channels, "channel")}, ${counted(facts.slices, "slice")}, ` +
       `${counted(facts.echoes, "echo", "echoes")}${missing}`,
   );
-  terminal.result(
-    `${perPixel.toPrecision(4)} Hz per pixel: fat lies ${fat.pixels.toFixed(2)} px (${fat.mm.toFixed(2)} mm) from water along x`,
-  );
+  terminal.result("placement:");
+  for (const sentence of placement.statement) terminal.result(wrap(`  ${sentence}`, 80, "    "));
   const problems = discrepancies.filter(({ severity }) => severity === "problem").length;
   if (problems) terminal.result(`${counted(problems, "discrepancy", "discrepancies")}: see image.json`);
   terminal.result("For research only, not for diagnosis or treatment.");

@@ -1,12 +1,13 @@
 import type { Kernels } from "../kernels/kernels.js";
+import { frameIndex } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
 import type { OutputSettings } from "../recipe/recipe.js";
 import { type Frame, valueCount } from "../stages/stage.js";
 import type { NpyFile } from "../writers/npy.js";
 import type { OutputSet } from "../writers/output-set.js";
 import { PictureCollector } from "./pictures.js";
-import { arrayShape, groupFrames, type Plan } from "./plan.js";
-import type { Product } from "./products.js";
+import { arrayShape, groupCounters, groupFrames, groupOf, type Plan } from "./plan.js";
+import { type Grid, gridOf, type Product } from "./products.js";
 import type { GroupResult } from "./reconstruct.js";
 import type { Scan } from "./scan.js";
 
@@ -17,10 +18,12 @@ export class ProductWriter {
     file: string;
     product: string;
     dtype: string;
+    unit?: string;
     axes: readonly string[];
     shape: readonly number[];
   };
   readonly #npy: NpyFile<"<f4" | "<c8">;
+  readonly #grid: Grid;
   readonly #picture: PictureCollector | undefined;
 
   constructor(
@@ -29,24 +32,27 @@ export class ProductWriter {
     private readonly facts: ScanFacts,
     private readonly plan: Plan,
     outputs: OutputSettings,
-    private readonly product: Product,
+    readonly product: Product,
     private readonly kernels: Kernels,
   ) {
-    const { axes, shape } = arrayShape(facts, product.id === "coils" ? plan.coils : plan.result);
+    this.#grid = gridOf(facts, plan, product);
+    const { axes, shape } = arrayShape(this.#grid.facts, this.#grid.layout);
     const name = `${product.stem}.npy`;
-    this.record = { file: name, product: product.id, dtype: product.dtype, axes, shape };
+    const unit = product.unit === undefined ? {} : { unit: product.unit };
+    this.record = { file: name, product: product.id, dtype: product.dtype, ...unit, axes, shape };
     this.#npy = set.createNpy(name, product.dtype, shape);
     if (outputs.pictures && product.picture)
-      this.#picture = new PictureCollector(file, facts, plan, outputs, product);
+      this.#picture = new PictureCollector(file, this.#grid, outputs, product);
   }
 
-  /** Write a group's images; they must not change before the promise settles. */
+  /** Write a group's values; they must not change before the promise settles. */
   async add(group: number, result: GroupResult): Promise<void> {
-    const image = this.product.id === "coils" ? result.coils! : result.result;
-    const values = productValues(this.product, image, this.kernels);
-    const perFrame = valueCount(image.layout) / this.plan.framesPerGroup;
-    const floats = values.length / this.plan.framesPerGroup;
-    const writes = groupFrames(this.facts, this.plan, group).map((frame, place) => {
+    const values = this.#valuesOf(result);
+    if (!values) return;
+    const { facts, layout, framesPerGroup } = this.#grid;
+    const perFrame = valueCount(layout) / framesPerGroup;
+    const floats = values.length / framesPerGroup;
+    const writes = groupFrames(facts, this.#grid, this.#gridGroup(group)).map((frame, place) => {
       const part = values.subarray(place * floats, (place + 1) * floats);
       this.#picture?.add(frame, part);
       return this.#npy.writeAt(frame * perFrame, part);
@@ -54,10 +60,34 @@ export class ProductWriter {
     await Promise.all(writes);
   }
 
-  /** Draw and write the picture; returns what the sidecar says of it, or nothing where there is none. */
-  drawPicture(scan: Scan): object[] {
-    if (!this.#picture) return [];
-    const { name, png, pixels, record } = this.#picture.draw(scan);
+  #valuesOf(result: GroupResult): Float32Array | undefined {
+    const { source, id } = this.product;
+    if (source === "map") return result.maps.find(({ name }) => name === id)?.data;
+    return productValues(this.product, result[source]!, this.kernels);
+  }
+
+  /** The group of the product's own grid: echoes may be groups of their own, which a map does not tell apart. */
+  #gridGroup(group: number): number {
+    const { facts, together } = this.#grid;
+    const counters = {
+      ...groupCounters(this.facts, this.plan, group),
+      ...(this.product.source === "map" && { contrast: 0 }),
+    };
+    return groupOf(facts, together, frameIndex(facts.lengths, counters)).group;
+  }
+
+  /** Values of the images that a picture shows, to outline others. */
+  get shown(): Float32Array | undefined {
+    return this.#picture?.values;
+  }
+
+  /**
+   * Draw and write the picture; returns what the sidecar says of it, or nothing where there is none.
+   * @param outline of pictures in colour: of the same images, 0 outside the object
+   */
+  drawPicture(scan: Scan, outline: Float32Array | undefined): object[] {
+    if (!this.#picture || this.product.picture === "outline") return [];
+    const { name, png, pixels, record } = this.#picture.draw(scan, outline);
     this.set.write(name, png, pixels);
     return [record];
   }

@@ -1,5 +1,6 @@
 import { UsageError } from "../errors.js";
-import { axisLength } from "../stages/stage.js";
+import type { ScanFacts } from "../physics/scan.js";
+import { axisLength, type Layout } from "../stages/stage.js";
 import type { ValueKind } from "../writers/grey-range.js";
 import type { Plan } from "./plan.js";
 
@@ -9,21 +10,33 @@ export type Save = (typeof SAVES)[number];
 
 /** One array that a reconstruction writes, and how it is shown. */
 export interface Product {
-  readonly id: "magnitude" | Save;
+  readonly id: string;
   /** File name without its ending. */
   readonly stem: string;
   readonly dtype: "<f4" | "<c8";
-  /** How its picture shows it; undefined where it has none. */
-  readonly picture: ValueKind | undefined;
+  /** How its picture shows it: in grey, a share from 0 to 1, signed in colour, or not at all but as outline of those. */
+  readonly picture: ValueKind | "share" | "colour" | "outline" | undefined;
+  /** Of the values, where they are no signal. */
+  readonly unit?: string;
+  /** Whether its picture leaves out what lies outside the outline. */
+  readonly insideOnly?: boolean;
+  /** Where its values come from: the combined images, the channels' images, or a map that a stage hands out. */
+  readonly source: "result" | "coils" | "map";
 }
 
-const PRODUCTS: Readonly<Record<Product["id"], Product>> = {
-  magnitude: { id: "magnitude", stem: "image", dtype: "<f4", picture: "magnitude" },
-  complex: { id: "complex", stem: "image-complex", dtype: "<c8", picture: undefined },
-  coils: { id: "coils", stem: "coil-images", dtype: "<c8", picture: undefined },
-  phase: { id: "phase", stem: "image-phase", dtype: "<f4", picture: "phase" },
-  real: { id: "real", stem: "image-real", dtype: "<f4", picture: "signed" },
-  imaginary: { id: "imaginary", stem: "image-imaginary", dtype: "<f4", picture: "signed" },
+/** The arrays over all frames of a product: facts give the lengths, `layout` one group. */
+export interface Grid extends Pick<Plan, "together" | "framesPerGroup"> {
+  readonly facts: ScanFacts;
+  readonly layout: Layout;
+}
+
+const PRODUCTS: Readonly<Record<"magnitude" | Save, Product>> = {
+  magnitude: { id: "magnitude", stem: "image", dtype: "<f4", picture: "magnitude", source: "result" },
+  complex: { id: "complex", stem: "image-complex", dtype: "<c8", picture: undefined, source: "result" },
+  coils: { id: "coils", stem: "coil-images", dtype: "<c8", picture: undefined, source: "coils" },
+  phase: { id: "phase", stem: "image-phase", dtype: "<f4", picture: "phase", source: "result" },
+  real: { id: "real", stem: "image-real", dtype: "<f4", picture: "signed", source: "result" },
+  imaginary: { id: "imaginary", stem: "image-imaginary", dtype: "<f4", picture: "signed", source: "result" },
 };
 
 /**
@@ -41,4 +54,29 @@ export function productsOf(plan: Plan, saves: readonly Save[]): Product[] {
     );
   }
   return [PRODUCTS.magnitude, ...SAVES.filter((save) => saves.includes(save)).map((save) => PRODUCTS[save])];
+}
+
+/** The maps that a plan's stages hand out. */
+export function mapProducts(plan: Plan): Product[] {
+  return plan.stages.flatMap(({ maps }) =>
+    maps.map(({ name, unit, picture, insideOnly = false }): Product => {
+      const shown = picture === "signed" ? "colour" : name === "field-mask" ? "outline" : picture;
+      return { id: name, stem: name, dtype: "<f4", unit, picture: shown, insideOnly, source: "map" };
+    }),
+  );
+}
+
+/** The grid of a product's array. Maps are common to all echoes. */
+export function gridOf(facts: ScanFacts, plan: Plan, product: Product): Grid {
+  const { together, framesPerGroup } = plan;
+  if (product.source !== "map") return { facts, together, framesPerGroup, layout: plan[product.source] };
+  const { layout } = plan.stages.flatMap(({ maps }) => maps).find(({ name }) => name === product.id)!;
+  const { contrast } = facts.lengths;
+  const isTogether = together.includes("contrast");
+  return {
+    facts: { ...facts, lengths: { ...facts.lengths, contrast: 1 } },
+    together: together.filter((axis) => axis !== "contrast"),
+    framesPerGroup: isTogether ? framesPerGroup / contrast : framesPerGroup,
+    layout,
+  };
 }

@@ -5,6 +5,7 @@ import type { Pose } from "../physics/scan.js";
 import type { Recipe } from "../recipe/recipe.js";
 import { axisLength } from "../stages/stage.js";
 import { HDF5_VERSION, VERSION } from "../version.js";
+import type { Placement } from "./placement.js";
 import { type Plan, pixelSizeMm } from "./plan.js";
 import { readoutFacts } from "./readout-facts.js";
 import type { Scan } from "./scan.js";
@@ -25,6 +26,7 @@ export interface SidecarParts {
   readonly inputBytes: number;
   readonly inputName: string;
   readonly noise: { readonly whitened: boolean; readonly smallest: number; readonly largest: number };
+  readonly placement: Placement;
   /** The transform engine that ran. */
   readonly transform: "simd" | "plain";
   readonly arrays: readonly object[];
@@ -64,9 +66,13 @@ export function sidecar(parts: SidecarParts): object {
         : "as stored in the file; gain is against the noise of one stored sample",
       gain: { smallest: noise.smallest, largest: noise.largest },
     },
+    placement: parts.placement,
     scan: readoutFacts(scan),
     discrepancies: scan.discrepancies,
     recipe,
+    inputArrays: plan.stages.flatMap(({ arrays }) =>
+      [...arrays.values()].map(({ file, shape, sha256 }) => ({ file, shape, sha256 })),
+    ),
     stages: plan.stages.map(({ stage, params, input, output, physics }) => ({
       id: stage.id,
       parameters: params,

@@ -7,8 +7,9 @@ import type { Frame } from "../stages/stage.js";
 import type { FileHashes } from "../writers/output-file.js";
 import { OutputSet } from "../writers/output-set.js";
 import { Hasher } from "./hasher.js";
+import { type Placement, PlacementTally, placementOf } from "./placement.js";
 import { ProductWriter } from "./product-writer.js";
-import { productsOf, type Save } from "./products.js";
+import { mapProducts, productsOf, type Save } from "./products.js";
 import { type ReadoutFacts, readoutFacts } from "./readout-facts.js";
 import type { GroupResult } from "./reconstruct.js";
 import { type Attempt, type PlannedRecipe, type RunOptions, run } from "./run.js";
@@ -22,6 +23,8 @@ export interface WriteOptions extends RunOptions {
   readonly force?: boolean;
   /** Fail where header and readouts disagree or lines are missing. */
   readonly strict?: boolean;
+  /** Write the maps that stages hand out, and not the images. */
+  readonly mapsOnly?: boolean;
 }
 
 /** A recipe worked out for a scan, and how its outputs look. */
@@ -41,6 +44,7 @@ export interface WrittenReconstruction {
   }[];
   readonly discrepancies: readonly Discrepancy[];
   readonly facts: ReadoutFacts;
+  readonly placement: Placement;
   readonly transform: Kernels["id"];
   /** Seconds by part of the work, over all threads. */
   readonly timings: Readonly<Record<string, number>>;
@@ -78,6 +82,7 @@ export async function writeReconstruction(
       arrays: done.attempt.records,
       discrepancies: scan.discrepancies,
       facts: readoutFacts(scan),
+      placement: done.attempt.placement(scan),
       transform: done.kernels,
       timings: timings.take(),
     };
@@ -105,6 +110,8 @@ class Writing implements Attempt {
   readonly #prepared: Prepared;
   readonly #out: string;
   readonly #noise = new NoiseRange();
+  readonly #placement = new PlacementTally();
+  readonly #sidecar: string;
   readonly #transform: Kernels["id"];
 
   constructor(
@@ -116,8 +123,12 @@ class Writing implements Attempt {
     hasher: Hasher,
   ) {
     const { plan, outputs } = prepared;
-    const products = productsOf(plan, options.save ?? []);
-    const pictured = outputs.pictures ? products.filter(({ picture }) => picture !== undefined) : [];
+    const images = options.mapsOnly ? [] : productsOf(plan, options.save ?? []);
+    const products = [...images, ...mapProducts(plan)];
+    const pictured = outputs.pictures
+      ? products.filter(({ picture }) => picture !== undefined && picture !== "outline")
+      : [];
+    this.#sidecar = options.mapsOnly ? "field-map.json" : "image.json";
     this.#names = [
       ...products.map(({ stem }) => `${stem}.npy`),
       ...pictured.map(({ stem }) => `${stem}.png`),
@@ -125,7 +136,7 @@ class Writing implements Attempt {
     this.#set = new OutputSet({
       folder: options.out,
       names: this.#names,
-      sidecar: "image.json",
+      sidecar: this.#sidecar,
       force: options.force ?? false,
       hasher: (path, payloadStart) => hasher.hash(path, payloadStart),
     });
@@ -141,8 +152,13 @@ class Writing implements Attempt {
     return this.#writers.map(({ record }) => record);
   }
 
+  placement(scan: Scan): Placement {
+    return placementOf(scan.facts, this.#prepared.plan, this.#placement);
+  }
+
   async use(group: number, result: GroupResult): Promise<void> {
     this.#noise.add(result.result);
+    this.#placement.add(group, result);
     await Promise.all(this.#writers.map((writer) => writer.add(group, result)));
   }
 
@@ -159,8 +175,9 @@ class Writing implements Attempt {
   ): Promise<string[]> {
     // Arrays are hashed while the pictures are drawn.
     for (const { record } of this.#writers) this.#set.sealOne(record.file).catch(() => undefined); // awaited by seal
+    const outline = this.#writers.find(({ product }) => product.picture === "outline")?.shown;
     const pictures = timings.measure("pictures", () =>
-      this.#writers.flatMap((writer) => writer.drawPicture(scan)),
+      this.#writers.flatMap((writer) => writer.drawPicture(scan, outline)),
     );
     const start = performance.now();
     const [outputs, input] = await unlessAborted(Promise.all([this.#set.seal(), hashing]), signal);
@@ -175,12 +192,13 @@ class Writing implements Attempt {
       inputName: path.basename(scan.file),
       transform: this.#transform,
       noise: this.#noise.range(),
+      placement: this.placement(scan),
       arrays: this.records,
       pictures,
       outputs,
     });
     this.#set.commit(`${JSON.stringify(text, null, 1)}\n`);
-    return [...this.#names, "image.json"].map((name) => path.join(this.#out, name));
+    return [...this.#names, this.#sidecar].map((name) => path.join(this.#out, name));
   }
 }
 

@@ -189,7 +189,8 @@ export function applySetting(recipe: Recipe, setting: string): Recipe {
   throw new UsageError({ field: "--set", value: setting }, "a stage is switched on or off", form);
 }
 
-function withStage(recipe: Recipe, id: string, parameters: Record<string, unknown>): Recipe {
+/** The recipe with a stage at its place in the flow; one that is there keeps its other parameters. */
+export function withStage(recipe: Recipe, id: string, parameters: Record<string, unknown>): Recipe {
   const present = recipe.stages.find((stage) => stage.id === id);
   if (present) {
     const changed = { id, parameters: { ...present.parameters, ...parameters } };

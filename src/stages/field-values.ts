@@ -32,6 +32,7 @@ export function fieldMapPlans(layout: Layout, isMeasured: boolean): MapPlan[] {
       describe: "standard error of the field from noise alone",
       layout,
       picture: "magnitude",
+      insideOnly: true,
     });
   return plans;
 }

@@ -7,6 +7,7 @@ import { prewhiten } from "./prewhiten.js";
 import { separateFatWaterStage } from "./separate-fat-water.js";
 import { shiftReadout } from "./shift-readout.js";
 import type { Stage } from "./stage.js";
+import { trimMargin } from "./trim-margin.js";
 import { trimOversampling } from "./trim-oversampling.js";
 import { undisplace } from "./undisplace.js";
 
@@ -24,6 +25,7 @@ export const STAGES: readonly Stage[] = [
   fieldMap,
   separateFatWaterStage,
   undisplace,
+  trimMargin,
   combineCoils,
 ] as unknown as readonly Stage[]; // each stage gets only what its own `parse` returned
 

@@ -69,6 +69,8 @@ export interface MapPlan {
   readonly layout: Layout;
   /** How its picture shows it; undefined where it has none. */
   readonly picture?: "magnitude" | "share" | "signed";
+  /** What lies outside the field's mask says nothing: the picture leaves it out. */
+  readonly insideOnly?: boolean;
 }
 
 /** The values of an announced map for one group of frames, in the order of its layout. */

@@ -179,7 +179,8 @@ export const undisplace: FrameStage<Params> = {
               result.image(echo, slice, coil, z),
             );
           if (counter > 0) continue;
-          context.note({ name: "folded pixels", value: plan.foldedCount });
+          context.note({ name: map ? "folded pixels" : "pixels left at 0", value: plan.foldedCount });
+          context.note({ name: "places displaced out of what was acquired", value: plan.outsideCount });
           const object = signalMask(coilImages(result, echo, slice, z), OBJECT_SHARE);
           mask.set(
             object.map((flag, i) => flag & (1 - plan.folded[i]!)),

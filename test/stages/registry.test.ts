@@ -147,6 +147,7 @@ test("each id occurs once, and kinds come in the order of the flow", () => {
     "field-map",
     "separate-fat-water",
     "undisplace",
+    "trim-margin",
     "combine-coils",
   ]);
 });

@@ -1,0 +1,206 @@
+import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js";
+import type { ScanFacts } from "../physics/scan.js";
+import { pixelBandwidthHz } from "../stages/echo-frame.js";
+import type { Finding } from "../stages/stage.js";
+import { type Plan, pixelSizeMm } from "./plan.js";
+import type { GroupResult } from "./reconstruct.js";
+
+/** The largest of some lengths, and that below which 95 % of them lie. */
+export interface Spread {
+  readonly largest: number;
+  readonly percentile95: number;
+}
+
+/** How far pixels may be off, what was corrected, what was not. Displacements are those of a forward readout. */
+export interface Placement {
+  /** The same in sentences. */
+  readonly statement: readonly string[];
+  /** Hz from one pixel to the next; null along y: each line has an excitation of its own, nothing moves. */
+  readonly bandwidthPerPixelHz: { readonly x: number; readonly y: number | null };
+  readonly pixelSizeMm: { readonly x: number; readonly y: number };
+  /** What `shift-readout` moved everything by. */
+  readonly shiftedMm: number;
+  /** Where fat's main peak is seen in the images, from its place. */
+  readonly fat: {
+    readonly offsetHz: number;
+    readonly pixels: number;
+    readonly mm: number;
+    /** Whether water and fat were put in their places in maps of their own. */
+    readonly separated: boolean;
+  };
+  /** Null without a field map. */
+  readonly field: null | {
+    readonly source: string;
+    readonly along: "x" | "y";
+    readonly corrected: boolean;
+    /** Inside the mask. */
+    readonly displacementBeforeMm: Spread;
+    /** After correction the map's own error, if it is known. */
+    readonly displacementAfterMm: Spread | null;
+    readonly standardErrorMm: Spread | null;
+    readonly pixelsInMask: number;
+    readonly foldedPixels: number;
+  };
+  /** What an offset of 1 ppm that nobody knows of moves a pixel by. */
+  readonly perPpmMm: number;
+  readonly findings: readonly (Finding & { readonly group: number })[];
+  readonly notIncluded: readonly string[];
+}
+
+const NOT_INCLUDED = [
+  "gradient non-linearity",
+  "concomitant fields",
+  "eddy currents",
+  "displacement of the slice itself",
+];
+
+/** Gathers what the maps say of displacement, group by group in any order. */
+export class PlacementTally {
+  readonly #groups = new Map<
+    number,
+    { moved: Float32Array; errors: Float32Array; findings: readonly Finding[] }
+  >();
+
+  add(group: number, { maps, findings }: GroupResult): void {
+    const map = (name: string) => maps.find((each) => each.name === name)?.data;
+    const mask = map("field-mask");
+    const inside = (values: Float32Array | undefined) =>
+      values && mask ? values.filter((_, i) => mask[i]! > 0) : new Float32Array(0);
+    const moved = inside(map("displacement-mm")).map(Math.abs);
+    this.#groups.set(group, { moved, errors: inside(map("field-standard-error-hz")), findings });
+  }
+
+  get movedMm(): Float32Array {
+    return joined([...this.#groups.values()].map(({ moved }) => moved));
+  }
+
+  get standardErrorsHz(): Float32Array {
+    return joined([...this.#groups.values()].map(({ errors }) => errors));
+  }
+
+  get findings(): Placement["findings"] {
+    const groups = [...this.#groups].sort(([a], [b]) => a - b);
+    return groups.flatMap(([group, { findings }]) => findings.map((finding) => ({ group, ...finding })));
+  }
+}
+
+function joined(parts: readonly Float32Array[]): Float32Array {
+  const out = new Float32Array(parts.reduce((sum, { length }) => sum + length, 0));
+  let at = 0;
+  for (const part of parts) {
+    out.set(part, at);
+    at += part.length;
+  }
+  return out;
+}
+
+function spreadOf(values: Float32Array): Spread {
+  const sorted = values.slice().sort();
+  if (sorted.length === 0) return { largest: 0, percentile95: 0 };
+  return { largest: sorted.at(-1)!, percentile95: sorted[Math.ceil(0.95 * sorted.length) - 1]! };
+}
+
+/** @param tally complete */
+export function placementOf(scan: ScanFacts, plan: Plan, tally: PlacementTally): Placement {
+  const pixel = pixelSizeMm(plan.result);
+  const perPixelHz = pixelBandwidthHz(plan.result, scan);
+  const mmPerHz = pixel.x / perPixelHz;
+  const moving = plan.stages.find(({ stage }) => stage.id === "undisplace");
+  const isAlongY = moving?.physics.along === "y";
+  const shift = plan.stages.find(({ stage }) => stage.id === "shift-readout");
+  const shiftedMm = Number(shift?.physics["shift on a forward readout, mm"] ?? 0);
+  const fatHz = chemicalShiftHz(FAT_MAIN_PEAK_PPM, scan.resonanceHz);
+  const fatMm = fatHz * mmPerHz + shiftedMm;
+  const parts = {
+    bandwidthPerPixelHz: {
+      x: perPixelHz,
+      y: isAlongY ? Number.parseFloat(String(moving.physics["bandwidth per pixel, Hz"])) : null,
+    },
+    pixelSizeMm: { x: pixel.x, y: pixel.y },
+    shiftedMm,
+    fat: {
+      offsetHz: fatHz,
+      pixels: fatMm / pixel.x,
+      mm: fatMm,
+      separated: plan.stages.some(({ stage }) => stage.id === "separate-fat-water"),
+    },
+    field: fieldPart(plan, tally, isAlongY, mmPerHz),
+    perPpmMm: chemicalShiftHz(1, scan.resonanceHz) * mmPerHz,
+    findings: tally.findings,
+    notIncluded: NOT_INCLUDED,
+  };
+  return { statement: sentences(parts), ...parts };
+}
+
+function fieldPart(
+  plan: Plan,
+  tally: PlacementTally,
+  isAlongY: boolean,
+  mmPerHz: number,
+): Placement["field"] {
+  const maker = plan.stages.find(({ maps }) => maps.some(({ name }) => name === "field-hz"));
+  if (!maker) return null;
+  const corrected = plan.stages.some(({ stage }) => stage.id === "undisplace");
+  const [file] = maker.arrays.keys();
+  const before = spreadOf(tally.movedMm);
+  const errors = file === undefined ? tally.standardErrorsHz : new Float32Array(0);
+  const standardErrorMm = errors.length ? spreadOf(errors.map((hz) => hz * mmPerHz)) : null;
+  const folded = tally.findings.filter(({ name }) => name === "folded pixels");
+  return {
+    source: file === undefined ? `measured: ${maker.stage.id}` : `given: ${file}`,
+    along: isAlongY ? "y" : "x",
+    corrected,
+    displacementBeforeMm: before,
+    displacementAfterMm: corrected ? standardErrorMm : before,
+    standardErrorMm,
+    pixelsInMask: tally.movedMm.length,
+    foldedPixels: folded.reduce((sum, { value }) => sum + value, 0),
+  };
+}
+
+function sentences(parts: Omit<Placement, "statement">): string[] {
+  const { bandwidthPerPixelHz: hz, pixelSizeMm: pixel, fat, field, shiftedMm, perPpmMm } = parts;
+  const mm = (value: number) => `${number(value)} mm`;
+  const both = (value: number) => `${mm(value)} (${number(value / pixel[field?.along ?? "x"])} px)`;
+  const lines = [
+    hz.y === null
+      ? `x: ${number(hz.x)} Hz per pixel of ${mm(pixel.x)}; y: nothing moves, each line has its own excitation`
+      : `x: ${number(hz.x)} Hz per pixel of ${mm(pixel.x)}; y: ${number(hz.y)} Hz per pixel of ${mm(pixel.y)}`,
+  ];
+  if (shiftedMm !== 0)
+    lines.push(`everything was moved by ${mm(shiftedMm)} along x (shift-readout), water too`);
+  lines.push(
+    `fat is seen ${number(fat.pixels)} px (${mm(fat.mm)}) from its place along x` +
+      (fat.separated
+        ? "; water.npy and fat.npy have both in place"
+        : shiftedMm === 0
+          ? ", not corrected"
+          : ""),
+  );
+  if (!field) lines.push(`the field is not known: each ppm of it moves a pixel by ${mm(perPpmMm)} along x`);
+  else {
+    const { displacementBeforeMm: before, standardErrorMm: error } = field;
+    lines.push(
+      `field (${field.source}): moved pixels of the object by up to ${both(before.largest)} along ${field.along}, ` +
+        `95 % within ${both(before.percentile95)}; ${field.corrected ? "corrected" : "not corrected"}`,
+    );
+    if (error)
+      lines.push(
+        `the map's standard error is up to ${both(error.largest)}, 95 % within ${both(error.percentile95)}`,
+      );
+    else if (field.corrected)
+      lines.push("what remains is the error of the given map, which is not known here");
+    if (field.foldedPixels)
+      lines.push(
+        `${field.foldedPixels} pixels lie where the field folds: left at 0, nothing is invented there`,
+      );
+  }
+  lines.push(`not included: ${parts.notIncluded.join(", ")}`);
+  return lines;
+}
+
+/** Three digits, and never an exponent for what rounds to nothing. */
+function number(value: number): string {
+  if (Math.abs(value) < 5e-5) return "0";
+  return String(Math.abs(value) >= 100 ? Number(value.toFixed(1)) : Number(value.toPrecision(3)));
+}
