@@ -1,8 +1,9 @@
 import type { Command } from "./command.js";
+import { fieldMap } from "./field-map.js";
 import { inspect } from "./inspect.js";
 import { recipe } from "./recipe.js";
 import { recon } from "./recon.js";
 import { simulate } from "./simulate.js";
 
 /** Every command, in the order of help. Their modules load the engine only when they run. */
-export const COMMANDS: readonly Command[] = [inspect, recon, recipe, simulate];
+export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, recipe, simulate];

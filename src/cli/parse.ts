@@ -10,6 +10,7 @@ import {
   type Origins,
   optionsOf,
 } from "./command.js";
+import { listed } from "./text.js";
 
 /** A command line that lacks what the command cannot do without: help is what it needs. */
 export class IncompleteError extends UsageError {
@@ -238,7 +239,7 @@ function unknownFlag(word: string, command: Command | undefined, commands: reado
   const guess = nearest(name.toLowerCase().replaceAll("_", "-").replace(/^no-/, ""), known);
   const others = commands.filter((other) => Object.hasOwn(other.options, name)).map((other) => other.name);
   const mend = others.length
-    ? `It is a flag of ${others.join(" and ")}. See: ${see}`
+    ? `It is a flag of ${listed(others)}. See: ${see}`
     : guess
       ? `Did you mean --${guess}?`
       : `See: ${see}`;

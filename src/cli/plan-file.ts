@@ -1,4 +1,5 @@
 import { readFileSync } from "node:fs";
+import { readArrays } from "../engine/input-arrays.js";
 import { planRecipe } from "../engine/plan.js";
 import type { Prepared } from "../engine/write-reconstruction.js";
 import { UsageError } from "../errors.js";
@@ -21,19 +22,23 @@ export interface Request {
 /**
  * The recipe that the flags ask for: the recipe file or the default one, then every `--set`, then the other flags.
  * Flags come before the environment, the environment before the recipe, the recipe before defaults.
+ * @param finish what the command itself needs in the recipe
  * @throws UsageError for whatever is wrong in them, before a long file is read
  */
-export function requestOf(flags: Flags): Request {
+export function requestOf(flags: Flags, finish: (recipe: Recipe) => Recipe = (recipe) => recipe): Request {
   const file = flags.raw as string;
   const recipeFile = flags.recipe as string | undefined;
   const settings = (flags.set as string[] | undefined) ?? [];
   const given = recipeFile === undefined ? undefined : readRecipe(textOf(recipeFile), recipeFile);
   const shortcuts = shortcutsOf(flags);
   const complete = (base: Recipe) =>
-    withFlags(settings.reduce(applySetting, withShortcuts(base, shortcuts)), flags);
+    withFlags(finish(settings.reduce(applySetting, withShortcuts(base, shortcuts))), flags);
   const early = complete(given ?? { carillon: 1, scan: {}, stages: [], outputs: {} });
   outputSettings(early, recipeFile);
-  for (const { id, parameters } of early.stages) stageById(id)!.parse(parameters);
+  for (const { id, parameters } of early.stages) {
+    const stage = stageById(id)!;
+    readArrays(stage.files?.(stage.parse(parameters)) ?? []);
+  }
   return {
     overrides: scanOverrides(early),
     source: recipeFile ?? "default",

@@ -1,4 +1,4 @@
-import { type Command, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
+import { type Command, RAW_ARGUMENT, READ_OPTIONS, SERIES_OPTIONS } from "./command.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 
 /** `carillon recipe`: the recipe that `recon` would run, ready to edit. */
@@ -9,6 +9,7 @@ export const recipe: Command = {
   arguments: [{ ...RAW_ARGUMENT, required: false }],
   options: {
     set: SET_OPTION,
+    ...SERIES_OPTIONS,
     schema: { type: "switch", describe: "print the JSON Schema of recipes; needs no raw file" },
     ...READ_OPTIONS,
   },

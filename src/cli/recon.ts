@@ -7,10 +7,11 @@ import {
   READ_OPTIONS,
   SERIES_OPTIONS,
 } from "./command.js";
+import { ENGINE_OPTIONS, runOptions } from "./engine-flags.js";
 import type { Request } from "./plan-file.js";
+import { report } from "./report.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 import type { Terminal } from "./terminal.js";
-import { counted, wrap } from "./text.js";
 
 /** `carillon recon`: from a raw file to arrays, pictures and a sidecar. */
 export const recon: Command = {
@@ -35,29 +36,7 @@ export const recon: Command = {
     "grey-low": { type: "number", value: "V", describe: "value shown black in image.png" },
     "grey-high": { type: "number", value: "V", describe: "value shown white in image.png" },
     ...READ_OPTIONS,
-    workers: {
-      type: "whole",
-      least: 1,
-      value: "N",
-      describe: "threads that compute",
-      byDefault: "the cores",
-    },
-    memory: {
-      type: "whole",
-      least: 1,
-      value: "MB",
-      describe: "most memory for samples",
-      byDefault: "a quarter of the machine's",
-    },
-    transform: {
-      type: "text",
-      value: "NAME",
-      choices: ["simd", "plain"],
-      describe: "transform engine",
-      byDefault: "simd where the machine has it",
-    },
-    timings: { type: "switch", describe: "print the time by part of the work" },
-    block: { type: "whole", least: 1, value: "N", hidden: true, describe: "readouts read at a time" },
+    ...ENGINE_OPTIONS,
   },
   examples: [
     ["recon scan.h5 --out result", "image.npy, image.png and image.json in result/"],
@@ -92,13 +71,9 @@ export const recon: Command = {
       signal,
       progress: (done, total) => terminal.progress("reconstructing", done, total),
     });
-    terminal.discrepancies(written.discrepancies);
-    report(written, terminal);
-    if (flags.timings) terminal.result(timingTable(written.timings));
+    report(written, flags, terminal);
   },
 };
-
-type Written = Awaited<ReturnType<typeof import("../engine/write-reconstruction.js")["writeReconstruction"]>>;
 
 async function explainOnly(
   flags: Flags,
@@ -122,48 +97,4 @@ async function explainOnly(
     recipe,
     outputs,
   });
-}
-
-function runOptions(flags: Flags) {
-  // The parser has checked each type.
-  const [blockRows, workers, memoryMb] = [flags.block, flags.workers, flags.memory] as (number | undefined)[];
-  const transform = flags.transform as "simd" | "plain" | undefined;
-  return {
-    ...(blockRows !== undefined && { blockRows }),
-    ...(workers !== undefined && { workers }),
-    ...(memoryMb !== undefined && { memoryBytes: memoryMb * 1e6 }),
-    ...(transform !== undefined && { transform }),
-  };
-}
-
-/** Seconds by part, the largest first; parts of several threads add up, so the sum can exceed the time that passed. */
-function timingTable(timings: Written["timings"]): string {
-  const rows = Object.entries(timings).sort(([, a], [, b]) => b - a);
-  return [
-    "seconds by part, over all threads:",
-    ...rows.map(([part, s]) => `  ${part.padEnd(20)}${s.toFixed(3)}`),
-  ].join("\n");
-}
-
-function report(written: Written, terminal: Terminal): void {
-  const { files, arrays, facts, placement, discrepancies, transform, timings } = written;
-  terminal.document({ files, arrays, placement, scan: facts, discrepancies, transform, timings });
-  if (transform === "plain")
-    terminal.message("note: plain transforms ran, not the SIMD ones: slower, and not the same bits");
-  for (const file of files) {
-    const array = arrays.find((entry) => file.endsWith(`/${entry.file}`) || file === entry.file);
-    terminal.result(array ? `${file}  [${array.axes.join(", ")}] = ${array.shape.join(" x ")}` : file);
-  }
-  const missing = facts.lines.missing
-    ? `, ${facts.lines.missing} of ${facts.lines.expected} lines missing (zero)`
-    : "";
-  terminal.result(
-    `${counted(facts.channels, "channel")}, ${counted(facts.slices, "slice")}, ` +
-      `${counted(facts.echoes, "echo", "echoes")}${missing}`,
-  );
-  terminal.result("placement:");
-  for (const sentence of placement.statement) terminal.result(wrap(`  ${sentence}`, 80, "    "));
-  const problems = discrepancies.filter(({ severity }) => severity === "problem").length;
-  if (problems) terminal.result(`${counted(problems, "discrepancy", "discrepancies")}: see image.json`);
-  terminal.result("For research only, not for diagnosis or treatment.");
 }

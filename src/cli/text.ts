@@ -18,6 +18,11 @@ export function counted(count: number, noun: string, plural = `${noun}s`): strin
   return `${count} ${count === 1 ? noun : plural}`;
 }
 
+/** `a`, `a and b`, `a, b and c`. */
+export function listed(words: readonly string[]): string {
+  return [words.slice(0, -1).join(", "), words.at(-1)].filter(Boolean).join(" and ");
+}
+
 function visibleLength(text: string): number {
   // biome-ignore lint/suspicious/noControlCharactersInRegex: escape sequences are what is left out
   return text.replace(/\u001b\[\d+m/g, "").length;

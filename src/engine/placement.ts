@@ -129,7 +129,7 @@ export function placementOf(scan: ScanFacts, plan: Plan, tally: PlacementTally):
     findings: tally.findings,
     notIncluded: NOT_INCLUDED,
   };
-  return { statement: sentences(parts), ...parts };
+  return { statement: sentences(parts, scan), ...parts };
 }
 
 function fieldPart(
@@ -158,7 +158,7 @@ function fieldPart(
   };
 }
 
-function sentences(parts: Omit<Placement, "statement">): string[] {
+function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string[] {
   const { bandwidthPerPixelHz: hz, pixelSizeMm: pixel, fat, field, shiftedMm, perPpmMm } = parts;
   const mm = (value: number) => `${number(value)} mm`;
   const both = (value: number) => `${mm(value)} (${number(value / pixel[field?.along ?? "x"])} px)`;
@@ -171,6 +171,7 @@ function sentences(parts: Omit<Placement, "statement">): string[] {
     lines.push(`everything was moved by ${mm(shiftedMm)} along x (shift-readout), water too`);
   lines.push(
     `fat is seen ${number(fat.pixels)} px (${mm(fat.mm)}) from its place along x` +
+      (scan.polarity.includes("reverse") ? ", the other way in echoes read backward" : "") +
       (fat.separated
         ? "; water.npy and fat.npy have both in place"
         : shiftedMm === 0

@@ -75,7 +75,7 @@ export async function run<A extends Attempt>(
   });
   try {
     const foreseen = previewScan(raw, overrides, options.blockRows ?? DEFAULT_BLOCK_ROWS);
-    if (foreseen && !comparesFrames(() => prepare(foreseen).plan)) {
+    if (foreseen && !comparesFrames(foreseen, prepare)) {
       const result = await attemptRun(raw, { foreseen, overrides }, options, hands, prepare, begin);
       if (result) return result;
     }
@@ -88,11 +88,12 @@ export async function run<A extends Attempt>(
 }
 
 /** Stages that compare echoes or slices need what only the index of all readouts knows: directions and places. */
-function comparesFrames(planned: () => Plan): boolean {
+function comparesFrames(foreseen: ScanFacts, prepare: (facts: ScanFacts) => PlannedRecipe): boolean {
   try {
-    return planned().stages.some(({ stage }) => stage.kind === "series");
+    return prepare(foreseen).plan.stages.some(({ stage }) => stage.kind === "series");
   } catch (error) {
-    if (error instanceof CarillonError) return true; // if the index bears it out, it comes again
+    // What a header lets expect of several echoes may be wrong; if the index bears the error out, it comes again.
+    if (error instanceof CarillonError && foreseen.lengths.contrast > 1) return true;
     throw error;
   }
 }

@@ -23,6 +23,12 @@ export function withShortcuts(recipe: Recipe, { undisplace, fieldCoordinates, se
   return withStage(changed, "undisplace", { field: undisplace, ...coordinates });
 }
 
+/** The recipe with a stage that makes a field map: `field-map`, unless it has one. */
+export function withField(recipe: Recipe): Recipe {
+  const hasField = recipe.stages.some(({ id }) => id === "separate-fat-water");
+  return hasField ? recipe : withStage(recipe, "field-map", {});
+}
+
 function without(recipe: Recipe, id: string): Recipe {
   return { ...recipe, stages: recipe.stages.filter((stage) => stage.id !== id) };
 }

@@ -174,6 +174,6 @@ function signedText(value: number): string {
 /** The next round number from `value` (> 0) on; its half is round too. */
 function roundUp(value: number): number {
   const power = 10 ** Math.floor(Math.log10(value));
-  const factor = [1, 2, 3, 4, 5, 6, 8].find((each) => each * power >= value * (1 - 1e-6)) ?? 10;
+  const factor = [1, 1.5, 2, 3, 4, 5, 6, 8].find((each) => each * power >= value * (1 - 1e-6)) ?? 10;
   return Number((factor * power).toPrecision(2));
 }

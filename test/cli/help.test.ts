@@ -48,6 +48,10 @@ describe.concurrent("help, for a person at a terminal of 80 columns", () => {
         "      image.npy, image.png and image.json in result/\n" +
         "  carillon recon scan.h5 --out hann --set apodize.window=hann\n" +
         "      the same with a Hann window\n" +
+        "  carillon recon scan.h5 --out straight --undisplace measured\n" +
+        "      put back what the field displaced, measured from the echoes\n" +
+        "  carillon recon scan.h5 --out parts --separate fat-water\n" +
+        "      water.npy and fat.npy in their true places\n" +
         "  carillon recon scan.h5 --explain\n" +
         "      what would be done, and why\n",
     );

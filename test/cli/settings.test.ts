@@ -2,6 +2,7 @@ import { existsSync, readFileSync, writeFileSync } from "node:fs";
 import path from "node:path";
 import { PNG } from "pngjs";
 import { beforeAll, describe, test } from "vitest";
+import { STAGES } from "../../src/stages/registry.js";
 import { readNpy } from "../../src/writers/npy.js";
 import { writeRawFile } from "../support/raw-files.js";
 import { carillon, scratchFolder } from "../support/run-carillon.js";
@@ -35,8 +36,7 @@ describe.concurrent("--set", () => {
       ["apodise.window=hann", "--set: apodise: no such name. Did you mean apodize?"],
       [
         "polish=on",
-        "--set: polish: no such name. Known: shift-readout, trim-oversampling, prewhiten, apodize, inverse-fft, fit-matrix, " +
-          "combine-coils, scan, outputs",
+        `--set: polish: no such name. Known: ${STAGES.map(({ id }) => id).join(", ")}, scan, outputs`,
       ],
       ["outputs.grey-hihg=3", "outputs.grey-hihg: unknown key. Did you mean grey-high? "],
       ["scan.centre=guess", "scan.centre is guess; must be one of header, measured."],

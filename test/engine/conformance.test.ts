@@ -1,8 +1,5 @@
-import { spawnSync } from "node:child_process";
-import { mkdtempSync, rmSync } from "node:fs";
-import { tmpdir } from "node:os";
 import path from "node:path";
-import { afterAll, beforeAll, describe, expect, test } from "vitest";
+import { describe, expect, test } from "vitest";
 import { planRecipe } from "../../src/engine/plan.js";
 import { run } from "../../src/engine/run.js";
 import { readScan } from "../../src/engine/scan.js";
@@ -10,11 +7,7 @@ import { affineLps } from "../../src/physics/geometry.js";
 import { defaultRecipe } from "../../src/recipe/default-recipe.js";
 import { applySetting } from "../../src/recipe/recipe.js";
 import { readNpy } from "../../src/writers/npy.js";
-
-/** Answers made by another program: scripts/conformance/make_conformance.py (NumPy, h5py), none of this project's code. */
-const COMMITTED = "data/conformance";
-const PYTHON = "/usr/bin/python3";
-const hasH5py = spawnSync(PYTHON, ["-c", "import h5py, numpy"]).status === 0;
+import { COMMITTED, hasH5py, otherSeed } from "../support/conformance-cases.js";
 
 /** Cases, the answer to compare with, and whether it is of the channels or of the combined image. */
 const CASES = [
@@ -74,13 +67,7 @@ describe.each(["simd", "plain"] as const)("%s transforms", (transform) => {
 });
 
 describe.skipIf(!hasH5py)("another seed: other anatomy and noise (skipped without h5py)", () => {
-  const folder = mkdtempSync(path.join(tmpdir(), "carillon-seed-"));
-  beforeAll(() => {
-    const names = [...new Set(CASES.map(([name]) => name))];
-    const script = ["scripts/conformance/make_conformance.py", folder, "--seed", "7", "--only", ...names];
-    expect(spawnSync(PYTHON, script).status).toBe(0);
-  });
-  afterAll(() => rmSync(folder, { recursive: true }));
+  const folder = otherSeed([...new Set(CASES.map(([name]) => name))]);
   test.each(CASES)("%s: %s", async (name, what, which) => {
     expect(await difference(folder, name, what, which, "simd")).toBeLessThan(BOUND);
   });

@@ -2,7 +2,7 @@ import { type Plan, planRecipe } from "../../src/engine/plan.js";
 import { run } from "../../src/engine/run.js";
 import type { ScanFacts, ScanOverrides } from "../../src/physics/scan.js";
 import { defaultRecipe } from "../../src/recipe/default-recipe.js";
-import { applySetting } from "../../src/recipe/recipe.js";
+import { applySetting, type Recipe } from "../../src/recipe/recipe.js";
 import { type Finding, floatCount, type NoiseState } from "../../src/stages/stage.js";
 
 export interface Reconstructed {
@@ -24,6 +24,7 @@ export async function reconstructed(
   settings: readonly string[] = [],
   overrides: Partial<ScanOverrides> = {},
   options: { blockRows?: number } = {},
+  change: (recipe: Recipe) => Recipe = (recipe) => recipe,
 ): Promise<Reconstructed> {
   const results: Float32Array[] = [];
   const coils: Float32Array[] = [];
@@ -34,7 +35,7 @@ export async function reconstructed(
     file,
     { keepCoils: true, workers: 1, overrides, ...options },
     (facts) => {
-      const recipe = settings.reduce(applySetting, defaultRecipe(facts, file).recipe);
+      const recipe = settings.reduce(applySetting, change(defaultRecipe(facts, file).recipe));
       return { recipe, plan: planRecipe(facts, recipe) };
     },
     () => ({
