@@ -60,6 +60,11 @@ export const simulate: Command = {
     "dwell-us": number("US", 5, "time between samples, microseconds"),
     "field-t": number("T", 1.5, "field strength"),
     "off-resonance-hz": number("HZ", 0, "constant offset of water and fat"),
+    "field-slope": {
+      type: "text",
+      value: "X,Y",
+      describe: "off-resonance that grows along read and phase, Hz per mm, such as 1.5,-0.4",
+    },
     noise: number("SIGMA", 0.02, "noise of coil 0 in an image of intensity 1; 0 for none"),
     "noise-readouts": {
       type: "whole",

@@ -29,6 +29,7 @@ export function simulationOf(flags: Flags): SimulateOptions {
       sigma: noise,
       readouts: (flags["noise-readouts"] as number | undefined) ?? (noise === 0 ? 0 : DEFAULT_NOISE_READOUTS),
     },
+    fieldSlopeHzPerMm: slope(flags["field-slope"] as string | undefined),
     rotationDegrees: rotation(flags["rotate-deg"] as string | undefined),
     seed: value("seed"),
   };
@@ -36,17 +37,27 @@ export function simulationOf(flags: Flags): SimulateOptions {
 
 const DEFAULT_NOISE_READOUTS = 4;
 
+function slope(text: string | undefined): { x: number; y: number } | undefined {
+  if (text === undefined) return undefined;
+  const [x, y] = numbers("--field-slope", text, 2, "two slopes in Hz per mm", "1.5,-0.4");
+  return { x: x!, y: y! };
+}
+
 function rotation(text: string | undefined): readonly [number, number, number] | undefined {
   if (text === undefined) return undefined;
-  const parts = text.split(",");
-  const [x, y, z] = parts.map((part) => (part.trim() === "" ? Number.NaN : Number(part)));
-  if (parts.length !== 3 || ![x, y, z].every(Number.isFinite))
-    throw new UsageError(
-      { field: "--rotate-deg", value: text },
-      "must be three angles in degrees, with commas between",
-      "For example: --rotate-deg=10,0,-20",
-    );
+  const [x, y, z] = numbers("--rotate-deg", text, 3, "three angles in degrees", "10,0,-20");
   return [x!, y!, z!];
+}
+
+/** Numbers with commas between. @throws UsageError */
+function numbers(flag: string, text: string, count: number, what: string, example: string): number[] {
+  const parts = text.split(",").map((part) => (part.trim() === "" ? Number.NaN : Number(part)));
+  if (parts.length === count && parts.every(Number.isFinite)) return parts;
+  throw new UsageError(
+    { field: flag, value: text },
+    `must be ${what}, with commas between`,
+    `For example: ${flag}=${example}`,
+  );
 }
 
 /** The simulator's names of options, by the flags that set them. */

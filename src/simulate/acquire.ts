@@ -23,7 +23,7 @@ export function* acquire(a: Acquisition): Generator<RawReadout> {
   for (const counters of imageCounters(a)) {
     const { slice, contrast, kspace_encode_step_1: line } = counters;
     const phase = phases[contrast]!; // one for each contrast
-    const samples = readoutSignal(kSpace.line(slice, line), phase, a.coils);
+    const samples = readoutSignal(kSpace.line(slice, line, contrast), phase, a.coils);
     if (a.noise.factor) addNoise(samples, a.noise.factor, a.coils, random);
     const head: HeadValues = {
       ...base,

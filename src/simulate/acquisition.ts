@@ -38,6 +38,7 @@ export interface Acquisition {
   readonly resonanceHz: number;
   readonly fatSpectrum: readonly SpectralPeak[];
   readonly offResonanceHz: number;
+  readonly fieldSlopeHzPerMm: { readonly x: number; readonly y: number };
   readonly noise: NoiseModel;
   readonly positionMm: readonly [number, number, number];
   readonly rotationDegrees: readonly [number, number, number];
@@ -100,6 +101,10 @@ export function resolveAcquisition(options: AcquisitionOptions): Acquisition {
     resonanceHz: Math.round(larmorHz(fieldT)),
     fatSpectrum: options.fatSpectrum ?? FAT_SPECTRUM,
     offResonanceHz: finite("offResonanceHz", options.offResonanceHz ?? 0),
+    fieldSlopeHzPerMm: {
+      x: finite("fieldSlopeHzPerMm.x", options.fieldSlopeHzPerMm?.x ?? 0),
+      y: finite("fieldSlopeHzPerMm.y", options.fieldSlopeHzPerMm?.y ?? 0),
+    },
     noise: resolveNoise(options.noise ?? {}, coils, dwellSeconds),
     positionMm: finiteTriple("positionMm", options.positionMm ?? [0, 0, 0]),
     rotationDegrees: finiteTriple("rotationDegrees", options.rotationDegrees ?? [0, 0, 0]),

@@ -35,14 +35,14 @@ export function intensityAt(ellipses: readonly Ellipse[], x: number, y: number):
  * One ellipse: `A a b J1(2 pi K) / K exp(-i 2 pi k.r0)` with K^2 = (a k')^2 + (b k'')^2, k' and k'' along its axes;
  * `pi A a b` at k = 0. Van de Walle et al. 2000, IEEE Trans Med Imaging 19:1160; Koay et al. 2007, Magn Reson Med 58:430.
  * @param kx     cycles per unit, the row's samples
- * @param ky     cycles per unit
+ * @param ky     cycles per unit, of the row or of each sample
  * @param result interleaved re, im, [kx]; added to
  * @param scale  factor of what is added
  */
 export function addEllipseSpectrum(
   ellipses: readonly Ellipse[],
   kx: Float64Array,
-  ky: number,
+  ky: number | Float64Array,
   result: Float64Array,
   scale = 1,
 ): void {
@@ -51,10 +51,11 @@ export function addEllipseSpectrum(
     const level = scale * e.intensity * e.a * e.b * 2 * Math.PI;
     for (let i = 0; i < kx.length; i++) {
       const k = kx[i]!;
-      const along = e.a * (k * cosine + ky * sine);
-      const across = e.b * (ky * cosine - k * sine);
+      const l = typeof ky === "number" ? ky : ky[i]!;
+      const along = e.a * (k * cosine + l * sine);
+      const across = e.b * (l * cosine - k * sine);
       const value = level * besselJ1OverX(2 * Math.PI * Math.sqrt(along * along + across * across));
-      const angle = -2 * Math.PI * (k * e.x + ky * e.y);
+      const angle = -2 * Math.PI * (k * e.x + l * e.y);
       result[2 * i]! += value * Math.cos(angle);
       result[2 * i + 1]! += value * Math.sin(angle);
     }

@@ -24,9 +24,10 @@ export function expectedImageOf(a: Acquisition): ExpectedImage {
   const frameLength = 2 * a.coils * a.matrix.y * a.matrix.x;
   const phases = a.echoTimesSeconds.map((_, echo) => echoPhases(a, echo));
   for (let slice = 0; slice < slices; slice++) {
-    const lines = Array.from({ length: acquiredLines(a) }, (_, line) => kSpace.line(slice, line));
     for (const [echo, phase] of phases.entries()) {
-      const readouts = lines.map((line) => readoutSignal(line, phase, a.coils));
+      const readouts = Array.from({ length: acquiredLines(a) }, (_, line) =>
+        readoutSignal(kSpace.line(slice, line, echo), phase, a.coils),
+      );
       const start = (echo * slices + slice) * frameLength;
       imageFrame(a, readouts, phase.reversed, coilImages.subarray(start, start + frameLength));
     }

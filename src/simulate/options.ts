@@ -31,6 +31,8 @@ export interface AcquisitionOptions {
   readonly fatSpectrum?: readonly SpectralPeak[] | undefined;
   /** Constant offset of water and fat from the resonance frequency, Hz. */
   readonly offResonanceHz?: number | undefined;
+  /** How the off-resonance grows along read and phase from the centre, Hz per mm: a shim that is off. */
+  readonly fieldSlopeHzPerMm?: { readonly x: number; readonly y: number } | undefined;
   /** Share of the readout that is acquired, 0.5 to 1: the part before the echo is cut, in reversed echoes the same k. */
   readonly partialEcho?: number | undefined;
   /** Share of the lines that is acquired, 0.5 to 1: the first lines are left out. */

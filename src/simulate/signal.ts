@@ -24,6 +24,8 @@ export class ExactKSpace {
   readonly #coils: Sensitivities;
   readonly #scale: number;
   readonly #cache: Map<number, TissueLine> | undefined;
+  readonly #hasSlope: boolean;
+  readonly #echoes: number;
 
   constructor(acquisition: Acquisition) {
     const a = acquisition;
@@ -31,22 +33,26 @@ export class ExactKSpace {
     this.#coils = ringSensitivities(a.coils, Math.max(a.fovMm.x, a.fovMm.y));
     const areaMm2 = a.fovMm.x * a.readoutOversampling * a.fovMm.y;
     this.#scale = Math.sqrt(a.encodedSamples * a.matrix.y) / areaMm2;
+    const { x, y } = a.fieldSlopeHzPerMm;
+    this.#hasSlope = x !== 0 || y !== 0;
+    this.#echoes = a.echoTimesSeconds.length;
     const bytes = 2 * 16 * a.coils * acquiredSamples(a) * acquiredLines(a) * a.sliceOrder.length;
     const asked = a.repetitions * a.averages;
     this.#cache = asked > 1 && bytes <= CACHE_BYTES ? new Map() : undefined;
   }
 
   /** @param line counter of the line, 0 for the first that is acquired */
-  line(slice: number, line: number): TissueLine {
-    const key = slice * acquiredLines(this.#acquisition) + line;
+  line(slice: number, line: number, echo: number): TissueLine {
+    const key =
+      (slice * acquiredLines(this.#acquisition) + line) * this.#echoes + (this.#hasSlope ? echo : 0);
     const known = this.#cache?.get(key);
     if (known) return known;
-    const computed = this.#compute(slice, line);
+    const computed = this.#compute(slice, line, echo);
     this.#cache?.set(key, computed);
     return computed;
   }
 
-  #compute(slice: number, line: number): TissueLine {
+  #compute(slice: number, line: number, echo: number): TissueLine {
     const a = this.#acquisition;
     const halfSizeMm = a.phantomSizeMm / 2;
     const tissues = phantomSlice(a.phantom, sliceOffsetMm(a, slice) / halfSizeMm);
@@ -55,11 +61,13 @@ export class ExactKSpace {
       (_, i) => (a.firstSample + i - Math.floor(a.encodedSamples / 2)) / (a.fovMm.x * a.readoutOversampling),
     );
     const ky = (a.firstLine + line - Math.floor(a.matrix.y / 2)) / a.fovMm.y;
-    const seen = (part: readonly Ellipse[]) => this.#seenByCoils(scaleEllipses(part, halfSizeMm), kx, ky);
+    const [samplesX, samplesY] = this.#hasSlope ? sloped(a, kx, ky, echo) : [kx, ky];
+    const seen = (part: readonly Ellipse[]) =>
+      this.#seenByCoils(scaleEllipses(part, halfSizeMm), samplesX, samplesY);
     return { water: seen(tissues.water), fat: tissues.fat.length > 0 ? seen(tissues.fat) : undefined };
   }
 
-  #seenByCoils(ellipses: readonly Ellipse[], kx: Float64Array, ky: number): Float64Array {
+  #seenByCoils(ellipses: readonly Ellipse[], kx: Float64Array, ky: number | Float64Array): Float64Array {
     const { coils, terms, weights } = this.#coils;
     const samples = kx.length;
     const result = new Float64Array(2 * coils * samples);
@@ -68,7 +76,7 @@ export class ExactKSpace {
       addEllipseSpectrum(
         ellipses,
         kx.map((k) => k - qx),
-        ky - qy,
+        typeof ky === "number" ? ky - qy : ky.map((k) => k - qy),
         shifted,
         this.#scale,
       );
@@ -79,6 +87,23 @@ export class ExactKSpace {
     }
     return result;
   }
+}
+
+/**
+ * A field that grows evenly moves the samples in k-space: `exp(-i 2 pi g.r tau)` is the sample at `k + g tau`. A sample's
+ * time is that of its echo, plus or minus the dwell time for each step from k = 0.
+ */
+function sloped(
+  a: Acquisition,
+  kx: Float64Array,
+  ky: number,
+  echo: number,
+): [kx: Float64Array, ky: Float64Array] {
+  const center = Math.floor(a.encodedSamples / 2) - a.firstSample;
+  const sign = a.reversed[echo] ? -1 : 1;
+  const seconds = kx.map((_, i) => a.echoTimesSeconds[echo]! + sign * (i - center) * a.dwellSeconds);
+  const { x, y } = a.fieldSlopeHzPerMm;
+  return [kx.map((k, i) => k + x * seconds[i]!), seconds.map((time) => ky + y * time)];
 }
 
 /** What time does to the samples of one echo, in the order in which they are stored. */
