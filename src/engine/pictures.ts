@@ -9,6 +9,9 @@ import { frameCounters, pixelSizeMm } from "./plan.js";
 import type { Grid, Product } from "./products.js";
 import type { Scan } from "./scan.js";
 
+/** Units that a picture need not name. */
+const UNITLESS = ["1", "signal"];
+
 /** Most lines in one plot of 1-D data. */
 const PROFILE_LINES = 6;
 
@@ -130,7 +133,7 @@ export class PictureCollector {
       bits: this.settings.pngBits,
       ...(given && { range: { low: greyLow, high: greyHigh } }),
       ...(picture === "share" && { range: { low: 0, high: 1 } }),
-      ...(this.product.unit && this.product.unit !== "1" && { unit: this.product.unit }),
+      ...(this.product.unit && !UNITLESS.includes(this.product.unit) && { unit: this.product.unit }),
     });
     const record = {
       file: `${stem}.png`,

@@ -32,6 +32,19 @@ export function signalMask(
   return mask;
 }
 
+/** A mask without specks: pixels of which fewer than four of the eight neighbours are set, as noise leaves them. */
+export function withoutSpecks(mask: Uint8Array, rows: number, columns: number): Uint8Array {
+  const set = (y: number, x: number) =>
+    y >= 0 && y < rows && x >= 0 && x < columns ? mask[y * columns + x]! : 0;
+  return mask.map((flag, i) => {
+    if (!flag) return 0;
+    const [y, x] = [Math.floor(i / columns), i % columns];
+    let neighbours = -1;
+    for (let dy = -1; dy <= 1; dy++) for (let dx = -1; dx <= 1; dx++) neighbours += set(y + dy, x + dx);
+    return neighbours >= 4 ? 1 : 0;
+  });
+}
+
 const TILES = 8;
 
 /**
