@@ -14,6 +14,15 @@ const ROUNDS = 2;
 /** Share of the strongest block's energy below which a block keeps its neighbour's weights. */
 const FLOOR = 1e-4;
 
+/** The channels' images of one echo, wherever they lie: interleaved complex64, strides in floats. */
+export interface ChannelImages {
+  readonly data: Float32Array;
+  /** Of the first pixel. */
+  readonly start: number;
+  readonly coilStride: number;
+  readonly rowStride: number;
+}
+
 export interface ChannelWeights {
   readonly coils: number;
   /** Pixels of a block along each axis. */
@@ -24,11 +33,9 @@ export interface ChannelWeights {
   readonly vectors: Float64Array;
 }
 
-/**
- * @param echoes each interleaved complex64, [coils, rows, columns], noise alike and uncorrelated between channels
- */
+/** @param echoes noise alike and uncorrelated between channels */
 export function channelWeights(
-  echoes: readonly Float32Array[],
+  echoes: readonly ChannelImages[],
   coils: number,
   rows: number,
   columns: number,
@@ -58,11 +65,10 @@ export function channelWeights(
 
 /**
  * `out[pixel] = sum_c conj(weight_c) echo_c`, the weights linear between the centres of blocks.
- * @param echoes each interleaved complex64, [coils, rows, columns]
  * @returns one array for each echo, interleaved complex64, [rows, columns]
  */
 export function combineEchoes(
-  echoes: readonly Float32Array[],
+  echoes: readonly ChannelImages[],
   weights: ChannelWeights,
   rows: number,
   columns: number,
@@ -78,7 +84,8 @@ export function combineEchoes(
     for (let coil = 0; coil < coils; coil++) {
       interpolateRow(knots.subarray(2 * coil * (blockColumns + 1)), across, line);
       for (let e = 0; e < echoes.length; e++) {
-        addWeighted(echoes[e]!, 2 * (coil * rows + y) * columns, line, out[e]!, 2 * y * columns);
+        const { data, start, coilStride, rowStride } = echoes[e]!;
+        addWeighted(data, start + coil * coilStride + y * rowStride, line, out[e]!, 2 * y * columns);
       }
     }
     scaleRow(out, 2 * y * columns, knots, across, coils);
@@ -172,7 +179,7 @@ function scaleRow(
 
 /** Sums over blocks of pixels (of every second row, if a block has four or more), interleaved complex, [blockRows, blockColumns, coils]. */
 function blockSums(
-  echo: Float32Array,
+  { data, start, coilStride, rowStride }: ChannelImages,
   coils: number,
   rows: number,
   columns: number,
@@ -183,14 +190,14 @@ function blockSums(
   const step = block >= 4 ? 2 : 1;
   for (let coil = 0; coil < coils; coil++) {
     for (let y = 0; y < rows; y += step) {
-      let from = 2 * (coil * rows + y) * columns;
+      let from = start + coil * coilStride + y * rowStride;
       let to = 2 * (Math.floor(y / block) * blockColumns * coils + coil);
       for (let left = 0; left < columns; left += block, to += 2 * coils) {
         let re = 0;
         let im = 0;
         for (let x = Math.min(block, columns - left); x > 0; x--, from += 2) {
-          re += echo[from]!;
-          im += echo[from + 1]!;
+          re += data[from]!;
+          im += data[from + 1]!;
         }
         out[to]! += re;
         out[to + 1]! += im;

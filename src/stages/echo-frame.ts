@@ -112,26 +112,25 @@ export class EchoFrame {
   /** One channel's image, a view: [y, x]. */
   image(echo: number, slice: number, coil: number, z: number): Float32Array {
     const size = 2 * this.rows * this.columns;
+    const start = this.#start(echo, slice, coil, z);
+    return this.#data.subarray(start, start + size);
+  }
+
+  /** Float at which an image starts. */
+  #start(echo: number, slice: number, coil: number, z: number): number {
     const index = ((echo * this.slices + slice) * this.coils + coil) * this.partitions + z;
-    return this.#data.subarray(index * size, (index + 1) * size);
+    return 2 * this.rows * this.columns * index;
   }
 
-  /** All channels' images, [coil, y, columns], the middle `columns` of x; a view where that takes no copy. */
-  channels(echo: number, slice: number, z: number, columns: number): Float32Array {
-    const size = 2 * this.rows * columns;
-    if (columns === this.columns && this.partitions === 1) {
-      const start = (echo * this.slices + slice) * this.coils * size;
-      return this.#data.subarray(start, start + this.coils * size);
-    }
-    const out = new Float32Array(this.coils * size);
-    for (let coil = 0; coil < this.coils; coil++)
-      cropRows(this.image(echo, slice, coil, z), this.columns, columns, out.subarray(coil * size));
-    return out;
-  }
-
-  /** The echoes of one image combined with one set of channel weights, [y, columns] each. */
+  /** The echoes of one image combined with one set of channel weights, [y, columns] each: the middle columns of x. */
   combined(slice: number, z: number, columns: number): Float32Array[] {
-    const echoes = Array.from({ length: this.echoes }, (_, echo) => this.channels(echo, slice, z, columns));
+    const size = 2 * this.rows * this.columns;
+    const echoes = Array.from({ length: this.echoes }, (_, echo) => ({
+      data: this.#data,
+      start: this.#start(echo, slice, 0, z) + 2 * cropStart(this.columns, columns),
+      coilStride: size * this.partitions,
+      rowStride: 2 * this.columns,
+    }));
     const weights = channelWeights(echoes, this.coils, this.rows, columns);
     return combineEchoes(echoes, weights, this.rows, columns);
   }

@@ -50,7 +50,7 @@ export function solve(
   });
   const start = startField(engine, echoes, lines, rows, model, params, noiseDeviation);
   const images = separateFatWater(engine, lines, model, rows, start, {
-    rounds: params["echo-phase"] ? 6 : params.decay ? 5 : 3,
+    rounds: params["echo-phase"] ? 6 : params.decay ? 5 : 2,
     refineField: model.echoes > 2,
     smoothingPixels: params["smoothing-px"],
     noiseDeviation,

@@ -178,8 +178,8 @@ class SpeciesValues {
 /** The middle columns of a real map. */
 function cutColumns(map: Float32Array | Uint8Array, wide: number, columns: number): Float32Array {
   const first = cropStart(wide, columns);
-  return Float32Array.from(
-    { length: (map.length / wide) * columns },
-    (_, i) => map[Math.floor(i / columns) * wide + first + (i % columns)]!,
-  );
+  const out = new Float32Array((map.length / wide) * columns);
+  for (let from = first, to = 0; to < out.length; from += wide, to += columns)
+    out.set(map.subarray(from, from + columns), to);
+  return out;
 }

@@ -34,6 +34,14 @@ function channels(
   return out;
 }
 
+/** Channel images one after the other: [coils, rows, columns]. */
+const packed = (data: Float32Array) => ({
+  data,
+  start: 0,
+  coilStride: 2 * ROWS * LENGTH,
+  rowStride: 2 * LENGTH,
+});
+
 describe("echo combination", () => {
   const mask = Uint8Array.from({ length: ROWS * LENGTH }, (_, i) =>
     water((i % LENGTH) - 30, Math.floor(i / LENGTH)),
@@ -44,7 +52,8 @@ describe("echo combination", () => {
     const normal = seededNormal(2);
     const still = Number.POSITIVE_INFINITY;
     const echoes = [0.002, 0.004].map((seconds) => addNoise(channels(seconds, field, still), 0.002, normal));
-    const combined = combineEchoes(echoes, channelWeights(echoes, COILS, ROWS, LENGTH), ROWS, LENGTH);
+    const images = echoes.map(packed);
+    const combined = combineEchoes(images, channelWeights(images, COILS, ROWS, LENGTH), ROWS, LENGTH);
     const root = Float32Array.from({ length: ROWS * LENGTH }, (_, i) =>
       level((i % LENGTH) - 30, Math.floor(i / LENGTH)),
     );
@@ -64,8 +73,9 @@ describe("echo combination", () => {
     // An echo moved by 2 px and one that is not, under weights of both: their quotient at the object's points is 1.
     const moved = channels(0, () => 200, 100);
     const still = channels(0, () => 0, 100);
-    const weights = channelWeights([still, moved], COILS, ROWS, LENGTH);
-    const [a, b] = combineEchoes([still, moved], weights, ROWS, LENGTH) as [Float32Array, Float32Array];
+    const images = [still, moved].map(packed);
+    const weights = channelWeights(images, COILS, ROWS, LENGTH);
+    const [a, b] = combineEchoes(images, weights, ROWS, LENGTH) as [Float32Array, Float32Array];
     let worst = 0;
     for (let p = 0; p < mask.length; p++) {
       if (!mask[p] || !mask[p + 2] || !mask[p - 2] || !mask[p + 4]) continue;
