@@ -27,6 +27,8 @@ export interface BlockJob {
   readonly lines: number;
   /** As in ReadoutLines. */
   readonly backward: Uint8Array;
+  readonly echoes: Uint16Array;
+  readonly driftHz: Float64Array | undefined;
   /**
    * Byte address of each line's row of coil 0 in its group: rows are written there. Undefined where a line comes
    * again: the rows then go back to the start of `samples`, for the main thread to add in the order of the file.
@@ -84,7 +86,7 @@ export class JobRunner {
     return new Float32Array(currentBuffer(this.#memory), byte, floats);
   }
 
-  #runBlock({ samples, lines, backward, targets }: BlockJob): Omit<JobReply, "timings"> {
+  #runBlock({ samples, lines, backward, echoes, driftHz, targets }: BlockJob): Omit<JobReply, "timings"> {
     const data = this.#view(samples);
     const { channels, encoded } = this.#scan;
     const done = this.#pipeline.runReadouts({
@@ -93,6 +95,8 @@ export class JobRunner {
       samples: encoded.matrix.x,
       coils: channels,
       backward,
+      echoes,
+      driftHz,
     });
     const { placed } = this.#plan;
     const row = 2 * done.samples;

@@ -15,6 +15,7 @@ import { STAGES, stageById } from "../stages/registry.js";
 import {
   axisLength,
   floatCount,
+  type InputArray,
   type InputArrays,
   type Layout,
   type MapPlan,
@@ -43,6 +44,8 @@ export interface PlannedStage {
 /** A recipe worked out for a scan, before any sample is processed: every shape, byte count and physical number. */
 export interface Plan {
   readonly stages: readonly PlannedStage[];
+  /** Where the drift of the resonance is to come from, if a stage asks for it: `navigators`, or a table. */
+  readonly drift: "navigators" | InputArray | undefined;
   /** Frame axes that are processed at once; a group is one combination of the others. */
   readonly together: readonly FrameAxis[];
   /** Number of groups, frames in a group, frames in all. */
@@ -101,6 +104,7 @@ export function planRecipe(
   const framesPerGroup = together.reduce((product, axis) => product * scan.lengths[axis], 1);
   return {
     stages,
+    drift: driftSource(stages),
     together,
     groups: frameCount(scan.lengths) / framesPerGroup,
     framesPerGroup,
@@ -109,6 +113,14 @@ export function planRecipe(
     coils: stages.findLast(({ input }) => input.axes.includes("coil"))!.input,
     result: layout,
   };
+}
+
+function driftSource(stages: readonly PlannedStage[]): Plan["drift"] {
+  for (const { stage, params, arrays } of stages) {
+    const source = stage.kind === "readout" ? stage.drift?.(params) : undefined;
+    if (source !== undefined) return source === "navigators" ? source : arrays.get(source);
+  }
+  return undefined;
 }
 
 function checkOrder(stages: readonly Stage[]): void {

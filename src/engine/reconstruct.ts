@@ -35,6 +35,8 @@ export interface Pass {
   readonly keepCoils: boolean;
   /** Readouts of a group. */
   readonly expected: (group: number) => number;
+  /** Drift of the resonance at each image readout, in the order of the file, Hz; where the plan asks for it. */
+  readonly driftHz: Float64Array | undefined;
   /** Hears every readout of the pass, in the order of the file. */
   readonly index: ScanIndex | undefined;
   readonly signal: AbortSignal | undefined;
@@ -75,6 +77,8 @@ class PassRun {
   readonly #blocks: Promise<void>[] = [];
   readonly #groups = new Set<Promise<void>>();
   #failure: unknown;
+  /** Image readouts so far. */
+  #imageReadouts = 0;
 
   constructor(
     pass: Pass,
@@ -124,7 +128,7 @@ class PassRun {
 
   /** Index a block, decode its image readouts into sample memory, and have the readout stages run on them. */
   #take(block: ReadoutBlock): void {
-    const { timings, index, scan, memory, kernels, raw } = this.#pass;
+    const { timings, index, scan, memory, kernels, raw, driftHz } = this.#pass;
     const { lines, touched } = this.#destinations(block);
     const perLine = 2 * scan.channels * scan.encoded.matrix.x;
     const samples = lines.length ? memory.allocate(lines.length * perLine, false) : undefined;
@@ -156,6 +160,8 @@ class PassRun {
       kind: "block" as const,
       samples: { byte: samples.byteOffset, floats: samples.length },
       lines: lines.length,
+      echoes: Uint16Array.from(lines, ({ row }) => block.heads[row]!.counters.contrast),
+      driftHz: driftHz && Float64Array.from(lines, ({ ordinal }) => driftHz[ordinal]!),
       backward: Uint8Array.from(lines, ({ row }) =>
         runsBackward(block.heads[row]!, scan.overrides.readoutPolarity) ? 1 : 0,
       ),
@@ -181,16 +187,17 @@ class PassRun {
   /** Where the image readouts of a block go; all-zero ones count as not acquired. */
   #destinations(block: ReadoutBlock) {
     const { scan, raw } = this.#pass;
-    const lines: { row: number; to: Destination }[] = [];
+    const lines: { row: number; to: Destination; ordinal: number }[] = [];
     const touched = new Set<OpenGroup>();
     block.heads.forEach((head, row) => {
       checkPayload(head, block.payloadFloats(row), raw.file);
       if (head.encodingSpace !== scan.encoding || roleOf(head, scan.calibrationMode) !== "image") return;
+      const ordinal = this.#imageReadouts++;
       const isZero = block.samples(row).every((value) => value === 0);
       const to = this.#store.arrive(placeLine(head, scan, raw.file), isZero);
       if (!to) return;
       touched.add("open" in to ? to.open : to);
-      if ("open" in to) lines.push({ row, to });
+      if ("open" in to) lines.push({ row, to, ordinal });
     });
     return { lines, touched };
   }

@@ -14,6 +14,7 @@ import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
 import type { Recipe } from "../recipe/recipe.js";
 import { axisLength } from "../stages/stage.js";
 import { Crew, startWorkers, type WorkerSetup } from "./crew.js";
+import { driftOf } from "./drift.js";
 import { JobRunner } from "./jobs.js";
 import { groupOf, type Plan } from "./plan.js";
 import { Contradiction, confirmPreview, previewReadouts, previewScan } from "./preview.js";
@@ -75,7 +76,7 @@ export async function run<A extends Attempt>(
   });
   try {
     const foreseen = previewScan(raw, overrides, options.blockRows ?? DEFAULT_BLOCK_ROWS);
-    if (foreseen && !comparesFrames(foreseen, prepare)) {
+    if (foreseen && !needsIndex(foreseen, prepare)) {
       const result = await attemptRun(raw, { foreseen, overrides }, options, hands, prepare, begin);
       if (result) return result;
     }
@@ -87,10 +88,14 @@ export async function run<A extends Attempt>(
   }
 }
 
-/** Stages that compare echoes or slices need what only the index of all readouts knows: directions and places. */
-function comparesFrames(foreseen: ScanFacts, prepare: (facts: ScanFacts) => PlannedRecipe): boolean {
+/**
+ * Stages that compare echoes or slices need what only the index of all readouts knows, directions and places; and a
+ * drift is known only once all navigators are.
+ */
+function needsIndex(foreseen: ScanFacts, prepare: (facts: ScanFacts) => PlannedRecipe): boolean {
   try {
-    return prepare(foreseen).plan.stages.some(({ stage }) => stage.kind === "series");
+    const { stages, drift } = prepare(foreseen).plan;
+    return drift !== undefined || stages.some(({ stage }) => stage.kind === "series");
   } catch (error) {
     // What a header lets expect of several echoes may be wrong; if the index bears the error out, it comes again.
     if (error instanceof CarillonError && foreseen.lengths.contrast > 1) return true;
@@ -131,6 +136,7 @@ async function attemptRun<A extends Attempt>(
     timings,
     index,
     blockRows,
+    driftHz: scan && driftOf(raw, scan, plan, blockRows),
     keepCoils: options.keepCoils ?? false,
     // What plans and workers have taken already is not for samples.
     budgetBytes: Math.min(memory.usedBytes + (options.memoryBytes ?? totalmem() / 4), MOST_SAMPLE_BYTES),

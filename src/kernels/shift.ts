@@ -49,3 +49,37 @@ function fillRamp(ramp: Float64Array, length: number, shift: number, centre: num
     ramp[2 * j + 1] = Math.sin(angle);
   }
 }
+
+/**
+ * Take a frequency off each line, in place: `exp(+i 2 pi f (echoSeconds + (j - centre) stepSeconds))`.
+ * @param lines interleaved complex64, [line, coil, length], k ascending
+ * @param offsetHz one for each line
+ * @param echoSeconds of each line, time of k = 0
+ * @param stepSeconds of each line, from one sample to the next; negative where it was read backward
+ */
+export function demodulateLines(
+  lines: Float32Array,
+  length: number,
+  coils: number,
+  offsetHz: ArrayLike<number>,
+  echoSeconds: ArrayLike<number>,
+  stepSeconds: ArrayLike<number>,
+): void {
+  const centre = Math.floor(length / 2);
+  const factors = new Float64Array(2 * length);
+  for (let line = 0, at = 0; line < offsetHz.length; line++) {
+    const turn = 2 * Math.PI * offsetHz[line]!;
+    for (let j = 0; j < length; j++) {
+      const angle = turn * (echoSeconds[line]! + (j - centre) * stepSeconds[line]!);
+      factors[2 * j] = Math.cos(angle);
+      factors[2 * j + 1] = Math.sin(angle);
+    }
+    for (let coil = 0; coil < coils; coil++)
+      for (let j = 0; j < factors.length; j += 2, at += 2) {
+        const re = lines[at]!;
+        const im = lines[at + 1]!;
+        lines[at] = re * factors[j]! - im * factors[j + 1]!;
+        lines[at + 1] = re * factors[j + 1]! + im * factors[j]!;
+      }
+  }
+}

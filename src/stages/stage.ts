@@ -56,6 +56,10 @@ export interface ReadoutLines {
   readonly coils: number;
   /** 1 for each line that was read backward in time (its samples are in the order of rising k by now), else 0. */
   readonly backward: Uint8Array;
+  /** Contrast counter of each line. */
+  readonly echoes: Uint16Array;
+  /** How far the resonance had drifted at each line, Hz; where a stage asked for it. */
+  readonly driftHz?: Float64Array | undefined;
 }
 
 /** A map that a stage makes beside its result, announced by its plan: such as a field map. */
@@ -152,6 +156,8 @@ interface StageBase<P> {
 export interface ReadoutStage<P> extends StageBase<P> {
   readonly kind: "readout";
   run(lines: ReadoutLines, params: P, context: StageContext): ReadoutLines;
+  /** Where the drift of each line is to come from: `navigators`, or the file of a table of Hz, one for each image readout. */
+  drift?(params: P): string | undefined;
   /** How the noise state changes. */
   noise?(state: NoiseState, params: P): NoiseState;
 }

@@ -109,6 +109,7 @@ describe.each(STAGES.map((stage) => [stage.id, stage] as const))("%s", (id, stag
       coils: 2,
       samples,
       backward: new Uint8Array(45),
+      echoes: new Uint16Array(45),
     };
     const out = stage.run(lines, params, context);
     expect(out.samples).toBe(planned.layout.shape.at(-1));
