@@ -1,3 +1,4 @@
+import { budget } from "./budget.js";
 import type { Command } from "./command.js";
 import { fieldMap } from "./field-map.js";
 import { inspect } from "./inspect.js";
@@ -6,4 +7,4 @@ import { recon } from "./recon.js";
 import { simulate } from "./simulate.js";
 
 /** Every command, in the order of help. Their modules load the engine only when they run. */
-export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, recipe, simulate];
+export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, budget, recipe, simulate];
