@@ -35,6 +35,7 @@ export interface PlannedStage {
   readonly bytesIn: number;
   readonly bytesOut: number;
   readonly workBytes: number;
+  readonly transformLengths: readonly number[];
   readonly reason: string;
   readonly maps: readonly MapPlan[];
   /** The files that its parameters name. */
@@ -96,6 +97,7 @@ export function planRecipe(
       bytesIn: 4 * floatCount(input),
       bytesOut: 4 * floatCount(layout),
       workBytes: planned.workBytes ?? 0,
+      transformLengths: planned.transformLengths ?? [],
       reason: reasons.get(stage.id) ?? "asked for",
       maps,
       arrays,

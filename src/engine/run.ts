@@ -202,13 +202,15 @@ class Hands {
 /** Every length that a stage of the plan may transform. */
 function transformLengths(plan: Plan): Set<number> {
   const lengths = new Set<number>();
-  for (const { input, output } of plan.stages)
+  for (const { input, output, transformLengths } of plan.stages) {
+    for (const length of transformLengths) lengths.add(length);
     for (const axis of SPATIAL_AXES) {
       lengths.add(axisLength(input, axis));
       lengths.add(axisLength(output, axis));
       // fit-matrix transforms what its crop leaves
       lengths.add(Math.round((axisLength(input, axis) * output.fovMm[axis]) / input.fovMm[axis]));
     }
+  }
   return lengths;
 }
 

@@ -28,6 +28,11 @@ const PRICE_HZ = 400;
 const ZERO_PULL = 1e-4;
 const ROUNDS = 4;
 
+/** Lengths that are transformed to find the first field of rows of so many pixels. */
+export function coarseFieldLengths(length: number): number[] {
+  return [length, Math.min(length, MOST_COARSE)];
+}
+
 export interface CoarseField {
   /** Hz, object's coordinates, [rows, length]. */
   readonly fieldHz: Float32Array;

@@ -32,6 +32,11 @@ const OVERSAMPLING = 2;
 const BETA = 13.8551;
 const TABLE_STEPS = 2048; // per grid point; linear interpolation between them errs by less than 1e-6 of the peak
 
+/** Lengths that are transformed to warp rows of so many pixels. */
+export function warpLengths(inputLength: number): number[] {
+  return [inputLength, OVERSAMPLING * inputLength];
+}
+
 /**
  * Plan to read (or write) rows of `inputLength` pixels at places given in pixels from pixel floor(inputLength / 2).
  * @param places pixels, [rows, outputLength]; places beyond the outermost pixels by more than half a pixel are outside

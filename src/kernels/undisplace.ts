@@ -1,5 +1,5 @@
 import { foldedPixels, resampleMap, stretchFactors } from "./displacement.js";
-import { gatherLines, gatherRows, planRowWarp, type RowWarp } from "./row-warp.js";
+import { gatherLines, gatherRows, planRowWarp, type RowWarp, warpLengths } from "./row-warp.js";
 import type { TransformEngine } from "./transform.js";
 
 /**
@@ -90,6 +90,11 @@ export function planUndisplace(rows: number, inputLength: number, options: Undis
   const apply = (engine: TransformEngine, image: Float32Array, target: Float32Array) =>
     readFiner(engine, { rows, outputLength, fineRows, fineLength, warp, off, on }, image, target);
   return { ...shared, outsideCount, apply };
+}
+
+/** Lengths that are transformed to put images [rows, inputLength] back to [rows, outputLength]. */
+export function undisplaceLengths(rows: number, inputLength: number, outputLength: number): number[] {
+  return [rows, finer(rows), outputLength, finer(outputLength), ...warpLengths(inputLength)];
 }
 
 function finer(length: number): number {

@@ -1,5 +1,6 @@
 import { UsageError } from "../errors.js";
 import { measureField } from "../kernels/field-map.js";
+import { warpLengths } from "../kernels/row-warp.js";
 import { imageNoiseDeviation, signalMask } from "../kernels/signal-mask.js";
 import {
   checkEchoes,
@@ -69,6 +70,7 @@ export const fieldMap: FrameStage<Params> = {
     return {
       layout,
       maps: fieldMapPlans(mapLayout(layout, scan), true),
+      transformLengths: warpLengths(columns),
       workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 2) * scan.lengths.contrast,
       physics: {
         "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),

@@ -1,4 +1,6 @@
+import { coarseFieldLengths } from "../kernels/fat-water-field.js";
 import { fatWaterModel } from "../kernels/fat-water-model.js";
+import { warpLengths } from "../kernels/row-warp.js";
 import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js";
 import { cropStart } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
@@ -53,6 +55,7 @@ export const separateFatWaterStage: FrameStage<Params> = {
     return {
       layout,
       maps: mapPlans(params, mapLayout(layout, scan), scan.lengths.contrast > 2),
+      transformLengths: [...warpLengths(columns), ...coarseFieldLengths(columns)],
       workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 8) * scan.lengths.contrast,
       physics: {
         "echo times, ms": timing.echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),

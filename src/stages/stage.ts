@@ -131,6 +131,8 @@ export interface StagePlan {
   readonly layout: Layout;
   /** Work memory beside input and output, bytes. */
   readonly workBytes?: number;
+  /** Lengths that it transforms beside those of its input and output. */
+  readonly transformLengths?: readonly number[];
   /** Numbers worth knowing, with their units in the name: `{ "bandwidth per pixel, Hz": 390.6 }`. */
   readonly physics: Readonly<Record<string, number | string>>;
   /** Maps that the stage will hand out for every group. */

@@ -2,7 +2,12 @@ import { UsageError } from "../errors.js";
 import { objectField, resampleMap } from "../kernels/displacement.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { signalMask } from "../kernels/signal-mask.js";
-import { planUndisplace, type UndisplaceOptions, type Undisplacer } from "../kernels/undisplace.js";
+import {
+  planUndisplace,
+  type UndisplaceOptions,
+  type Undisplacer,
+  undisplaceLengths,
+} from "../kernels/undisplace.js";
 import { planUndisplaceColumns } from "../kernels/undisplace-columns.js";
 import type { ScanFacts } from "../physics/scan.js";
 import {
@@ -137,6 +142,7 @@ export const undisplace: FrameStage<Params> = {
     return {
       layout: { ...withLength(layout, "x", columns), fovMm: output.fovMm },
       ...(map && { maps: fieldMapPlans(output, false) }),
+      transformLengths: undisplaceLengths(...sizesAlong(params, layout, columns)),
       workBytes: 24 * axisLength(layout, "y") * axisLength(layout, "x"),
       physics: {
         along: params.along === "readout" ? "x" : "y",
@@ -211,6 +217,12 @@ function checkMap({ file, shape }: InputArray, layout: Layout, scan: ScanFacts):
       `must be [y, x] or [${partitions > 1 ? "z" : "slice"}, y, x] with ${images} images`,
       "Any matrix will do; it must cover the image's field of view",
     );
+}
+
+/** Rows, and pixels of a row before and after, of the images as they are put back: turned where y is displaced. */
+function sizesAlong({ along }: Params, layout: Layout, columns: number): [number, number, number] {
+  const rows = axisLength(layout, "y");
+  return along === "readout" ? [rows, axisLength(layout, "x"), columns] : [columns, rows, rows];
 }
 
 /** Hz from one pixel to the next along the direction of displacement, signed. */
