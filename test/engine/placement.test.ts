@@ -1,0 +1,125 @@
+import { readFileSync } from "node:fs";
+import path from "node:path";
+import { beforeAll, describe, expect, test } from "vitest";
+import { readNpy } from "../../src/writers/npy.js";
+import { COMMITTED } from "../support/conformance-cases.js";
+import { carillon, scratchFolder } from "../support/run-carillon.js";
+
+const folder = scratchFolder("placement");
+const at = (...names: string[]) => path.join(folder, ...names);
+const OFF_RESONANCE = `${COMMITTED}/off-resonance.h5`;
+
+async function recon(name: string, raw: string, ...words: readonly string[]) {
+  const { code, stdout, stderr } = await carillon(["recon", raw, "--out", at(name), "--quiet", ...words]);
+  if (code !== 0) throw new Error(stderr);
+  return { stdout, sidecar: JSON.parse(readFileSync(at(name, "image.json"), "utf8")) };
+}
+
+const floats = (...names: string[]) => readNpy(at(...names)).data as Float32Array;
+
+describe("the placement statement", () => {
+  test("says what is not corrected, and what each ppm would move", async () => {
+    const { stdout, sidecar } = await recon("plain", OFF_RESONANCE);
+    const { placement } = sidecar;
+    expect(placement.bandwidthPerPixelHz.x).toBeCloseTo(120, 3); // the generator's
+    expect(placement.bandwidthPerPixelHz.y).toBeNull();
+    expect(placement.field).toBeNull();
+    // 1 ppm in Hz, over 120 Hz per pixel of 2 mm
+    expect(placement.perPpmMm).toBeCloseTo((sidecar.scan.resonanceHz * 1e-6 * 2) / 120, 4);
+    expect(stdout).toContain("the field is not known: each ppm of it moves a pixel by");
+    expect(stdout.replace(/\s+/g, " ")).toContain(
+      "not included: gradient non-linearity, concomitant fields, eddy currents, displacement of the slice itself",
+    );
+  });
+
+  test("says how far the field moved pixels, and what is left: the numbers of the maps", async () => {
+    const { stdout, sidecar } = await recon("measured", OFF_RESONANCE, "--undisplace", "measured");
+    const { field } = sidecar.placement;
+    const mask = floats("measured", "field-mask.npy");
+    const inside = (values: Float32Array) =>
+      values
+        .map(Math.abs)
+        .filter((_, i) => mask[i])
+        .sort();
+    const moved = inside(floats("measured", "displacement-mm.npy"));
+    expect(field.displacementBeforeMm.largest).toBeCloseTo(moved.at(-1)!, 6);
+    expect(field.displacementBeforeMm.percentile95).toBeCloseTo(
+      moved[Math.ceil(0.95 * moved.length) - 1]!,
+      6,
+    );
+    expect(field.displacementBeforeMm.largest / 2).toBeCloseTo(2.5, 0); // the case: up to 2.5 pixels
+    const hz = inside(floats("measured", "field-hz.npy"));
+    expect(moved.at(-1)! / hz.at(-1)!).toBeCloseTo(2 / 120, 5);
+    const errors = inside(floats("measured", "field-standard-error-hz.npy"));
+    expect(field.displacementAfterMm.largest).toBeCloseTo((errors.at(-1)! * 2) / 120, 6);
+    expect(field).toMatchObject({ corrected: true, foldedPixels: 0, source: "measured: field-map" });
+    expect(stdout).toContain("corrected");
+  });
+
+  test("a given map: its file and hash are kept, its error is not known", async () => {
+    const map = `${COMMITTED}/off-resonance.field-hz.npy`;
+    const { sidecar, stdout } = await recon("given", OFF_RESONANCE, "--undisplace", map);
+    expect(sidecar.placement.field).toMatchObject({ source: `given: ${map}`, displacementAfterMm: null });
+    expect(sidecar.inputArrays).toEqual([
+      { file: map, shape: [128, 128], sha256: expect.stringMatching(/^[0-9a-f]{64}$/) },
+    ]);
+    expect(stdout).toContain("the error of the given map, which is not known here");
+  });
+
+  test("shift-readout moves everything, and the statement says so", async () => {
+    const { sidecar } = await recon("shifted", OFF_RESONANCE, "--set", "shift-readout.offset=fat");
+    expect(sidecar.placement.fat.mm).toBeCloseTo(0, 6);
+    expect(sidecar.placement.shiftedMm).toBeCloseTo((-sidecar.placement.fat.offsetHz * 2) / 120, 3);
+    expect(sidecar.placement.statement.join()).toContain("everything was moved by");
+  });
+
+  test("where a map folds, pixels are 0, counted and named", async () => {
+    // A field of 1.25 pixels of displacement per pixel over a tenth of the rows: a fold.
+    const steep = new Float32Array(128 * 128);
+    for (let i = 0; i < steep.length; i++) steep[i] = 2 * 120 * Math.tanh(-((i % 128) - 60) * 0.8);
+    const { npyBytes } = await import("../../src/writers/npy.js");
+    const { writeFileSync } = await import("node:fs");
+    writeFileSync(at("steep.npy"), npyBytes("<f4", [128, 128], steep));
+    const { sidecar, stdout } = await recon("folded", OFF_RESONANCE, "--undisplace", at("steep.npy"));
+    expect(sidecar.placement.field.foldedPixels).toBeGreaterThan(128);
+    expect(stdout).toContain("pixels lie where the field folds: left at 0, nothing is invented there");
+    expect(floats("folded", "image.npy")[64 * 128 + 60]).toBe(0);
+  });
+});
+
+describe("with more than one thread", () => {
+  beforeAll(async () => {
+    const words = ["--slices", "6", "--coils", "6", "--te-ms", "2.3", "--te-ms", "3.9", "--te-ms", "5.5"];
+    const made = await carillon(
+      [
+        "simulate",
+        "--out",
+        at("many.h5"),
+        ...words,
+        "--dwell-us",
+        "16",
+        "--field-slope",
+        "0.8,-0.4",
+        "--quiet",
+      ],
+      { timeoutSeconds: 100 },
+    );
+    expect(made.code).toBe(0);
+  }, 100_000);
+
+  test("series stages give the same bits for 1 and 3 workers, and blocks of 7", async () => {
+    const raw = at("many.h5");
+    const words = ["--separate", "fat-water", "--undisplace", "measured"];
+    const one = await recon("one", raw, ...words, "--workers", "1");
+    for (const more of [
+      ["--workers", "3"],
+      ["--workers", "2", "--block", "7"],
+    ]) {
+      const other = await recon("other", raw, ...words, ...more, "--force");
+      expect(other.sidecar.outputs).toEqual(one.sidecar.outputs);
+    }
+    const slices = await recon("slices", raw, "--undisplace", "measured", "--workers", "3");
+    const alone = await recon("alone", raw, "--undisplace", "measured", "--workers", "1");
+    expect(slices.sidecar.outputs).toEqual(alone.sidecar.outputs);
+  }, 100_000);
+});
