@@ -17,6 +17,15 @@ export interface EchoTiming {
  * @throws UsageError for an echo without its time or with lines of both directions
  */
 export function echoTiming(id: string, layout: Layout, scan: ScanFacts): EchoTiming {
+  const echoSeconds = echoSecondsOf(id, scan);
+  return {
+    echoSeconds,
+    pixelBandwidthHz: echoSeconds.map((_, echo) => signedPixelBandwidthHz(id, layout, scan, echo)),
+  };
+}
+
+/** Echo times, seconds. @throws UsageError for an echo without its time */
+export function echoSecondsOf(id: string, scan: ScanFacts): readonly number[] {
   const { contrast } = scan.lengths;
   const echoSeconds = scan.echoTimesSeconds.slice(0, contrast);
   if (echoSeconds.length < contrast)
@@ -25,10 +34,7 @@ export function echoTiming(id: string, layout: Layout, scan: ScanFacts): EchoTim
       `the header has ${echoSeconds.length} echo times for ${contrast} echoes`,
       "Give them: --set 'scan.echo-ms=[2.3, 4.6]'",
     );
-  return {
-    echoSeconds,
-    pixelBandwidthHz: echoSeconds.map((_, echo) => signedPixelBandwidthHz(id, layout, scan, echo)),
-  };
+  return echoSeconds;
 }
 
 /** Hz from one pixel to the next along x; negative for an echo read backward. @throws UsageError for a mixed one */

@@ -14,7 +14,7 @@ import {
   columnsInView,
   cropRows,
   EchoFrame,
-  echoTiming,
+  echoSecondsOf,
   mapLayout,
   pixelBandwidthHz,
   pixelMm,
@@ -136,7 +136,7 @@ export const undisplace: FrameStage<Params> = {
         "no stage before it measures a field",
         "Add field-map or separate-fat-water, or give a .npy file",
       );
-    if (!params["spin-echo"]) echoTiming("undisplace", layout, scan);
+    if (!params["spin-echo"]) echoSecondsOf("undisplace", scan);
     const columns = columnsInView(layout, scan);
     const output = mapLayout(layout, scan);
     return {
@@ -295,7 +295,7 @@ function planFor(
   echo: number,
 ): Undisplacer {
   const hz = perPixelHz(params, layout, scan, echo);
-  const echoSeconds = params["spin-echo"] ? 0 : echoTiming("undisplace", layout, scan).echoSeconds[echo]!;
+  const echoSeconds = params["spin-echo"] ? 0 : echoSecondsOf("undisplace", scan)[echo]!;
   const key = `${hz} ${echoSeconds}`;
   const known = planned.get(key);
   if (known) return known;
