@@ -5,6 +5,7 @@ import { inspect } from "./inspect.js";
 import { recipe } from "./recipe.js";
 import { recon } from "./recon.js";
 import { simulate } from "./simulate.js";
+import { taper } from "./taper.js";
 
 /** Every command, in the order of help. Their modules load the engine only when they run. */
-export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, budget, recipe, simulate];
+export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, budget, taper, recipe, simulate];

@@ -72,7 +72,7 @@ export function continuousWindow(
   const edgeWeights = new Float64Array(CONTINUOUS_NODES);
   const pointWeights = new Float64Array(CONTINUOUS_NODES);
   const powerWeights = new Float64Array(CONTINUOUS_NODES);
-  const radial = shape === "radial" && dimensions > 1;
+  const radial = shape !== "separable" && dimensions > 1;
   for (let j = 0; j < CONTINUOUS_NODES / 2; j++) {
     const mirror = CONTINUOUS_NODES - 1 - j;
     const u = 1 - (2 * j + 1) / CONTINUOUS_NODES;

@@ -174,6 +174,8 @@ export interface WindowAxis {
   /** Index of the first and last acquired sample, where not all of 0 .. N-1 were (partial Fourier, asymmetric echo). */
   readonly firstSample?: number | undefined;
   readonly lastSample?: number | undefined;
+  /** Spatial frequency at u = 1, cycles per mm; left out where all axes reach as far. */
+  readonly edgePerMm?: number | undefined;
 }
 
 /** The definition behind a name or a spec. */
@@ -222,17 +224,17 @@ export function windowValues(
 }
 
 /** How an axis's gains make a grid: their product, or the window of the distance from k = 0. */
-export type WindowShape = "separable" | "radial";
+export type WindowShape = "separable" | "radial" | "elliptical";
 
 /**
  * Gains on a grid, C order, [axes[0].length, axes[1].length, ...], k = 0 at floor(N/2) of each axis.
  *
- * Separable: the product of the axes' gains. Radial: the window at r = sqrt(sum u^2), each u by its own axis's h (an
- * ellipse in k where these differ), and 0 beyond r = 1 for every window, "none" included: a disc, so that resolution
- * is the same in every direction and the figures of a radial window hold for what is applied.
+ * Separable: the product of the axes' gains. Elliptical: the window at r = sqrt(sum u^2), each u by its own axis's h,
+ * and 0 beyond r = 1 for every window, "none" included. Radial: the same with one h for all axes, in cycles per length
+ * (`edgePerMm`), that of the axis that reaches least: a circle in k, so that resolution is the same in every direction.
  */
 export function windowGrid(spec: WindowSpec, shape: WindowShape, axes: readonly WindowAxis[]): Float64Array {
-  return shape === "separable" ? separableGrid(spec, axes) : radialGrid(spec, axes);
+  return shape === "separable" ? separableGrid(spec, axes) : roundGrid(spec, axes, shape === "radial");
 }
 
 function separableGrid(spec: WindowSpec, axes: readonly WindowAxis[]): Float64Array {
@@ -248,11 +250,12 @@ function separableGrid(spec: WindowSpec, axes: readonly WindowAxis[]): Float64Ar
   return grid;
 }
 
-function radialGrid(spec: WindowSpec, axes: readonly WindowAxis[]): Float64Array {
+function roundGrid(spec: WindowSpec, axes: readonly WindowAxis[], isCircle: boolean): Float64Array {
+  const least = Math.min(...axes.map(({ edgePerMm = 1 }) => edgePerMm));
   let squares = Float64Array.of(0); // u^2 summed over the axes so far
   for (const axis of axes) {
     const centre = Math.floor(axis.length / 2);
-    const edge = windowEdgeSamples(axis);
+    const edge = windowEdgeSamples(axis) * (isCircle ? least / (axis.edgePerMm ?? 1) : 1);
     const next = new Float64Array(squares.length * axis.length);
     for (let i = 0, at = 0; i < squares.length; i++) {
       for (let j = 0; j < axis.length; j++) next[at++] = squares[i]! + ((j - centre) / edge) ** 2;
