@@ -10,7 +10,8 @@ import type { Job, JobReply, JobRunner } from "./jobs.js";
 export interface WorkerSetup {
   readonly place: SimdPlace;
   readonly facts: ScanFacts;
-  readonly recipe: Recipe;
+  /** Of the plan and its variants. */
+  readonly recipes: readonly Recipe[];
 }
 
 export type ToWorker = { readonly setup: WorkerSetup } | { readonly id: number; readonly job: Job };

@@ -26,22 +26,37 @@ export interface GroupOutcome {
   readonly findings: readonly Finding[];
 }
 
-/** Runs a plan's stages on readouts and on groups of frames; the same on the main thread and in a worker. */
+/** Where what a group becomes goes. Its arrays may be reused after a function has returned. */
+export interface GroupTaker {
+  /** The images before the last combination. */
+  coils(variant: number, coils: Float32Array): void;
+  outcome(variant: number, outcome: GroupOutcome): void;
+}
+
+/**
+ * Runs the stages of a plan on readouts and on groups of frames; the same on the main thread and in a worker. Of several
+ * plans whose readout stages are alike (variants), the stages that they begin with in common run once a group.
+ */
 export class Pipeline {
   readonly #plan: Plan;
   readonly #scan: ScanFacts;
   readonly #kernels: Kernels;
   readonly #timings: Timings;
   readonly #readoutStages: readonly PlannedStage[];
-  readonly #frameStages: readonly PlannedStage[];
+  readonly #common: readonly PlannedStage[];
+  /** The stages of each variant after the common ones. */
+  readonly #branches: readonly (readonly PlannedStage[])[];
 
-  constructor(plan: Plan, scan: ScanFacts, kernels: Kernels, timings: Timings) {
-    this.#plan = plan;
+  constructor(plans: readonly Plan[], scan: ScanFacts, kernels: Kernels, timings: Timings) {
+    this.#plan = plans[0]!;
     this.#scan = scan;
     this.#kernels = kernels;
     this.#timings = timings;
-    this.#readoutStages = plan.stages.filter(({ stage }) => stage.kind === "readout");
-    this.#frameStages = plan.stages.filter(({ stage }) => stage.kind !== "readout");
+    this.#readoutStages = this.#plan.stages.filter(({ stage }) => stage.kind === "readout");
+    const frameStages = plans.map(({ stages }) => stages.filter(({ stage }) => stage.kind !== "readout"));
+    const shared = plans.length > 1 ? commonLength(frameStages) : 0;
+    this.#common = frameStages[0]!.slice(0, shared);
+    this.#branches = frameStages.map((stages) => stages.slice(shared));
   }
 
   /** The readout stages on a block of lines. The block's memory stays the caller's; the result's becomes it. */
@@ -76,31 +91,62 @@ export class Pipeline {
   }
 
   /**
-   * The k-space stages to the combination on one group. `data` is worked on in place and stays the caller's; the
-   * result's memory becomes the caller's where it is another.
+   * The k-space stages to the combination on one group, for each variant. `data` is worked on in place and stays the
+   * caller's.
    * @param data [...together, coil, z, y, x] of the placed layout
    * @param counters of the group's first frame
-   * @param takeCoils hears the images before the last combination; their memory may be reused after it returns, unless
-   * it is `data`
    */
-  runGroup(
-    data: Float32Array,
-    sampling: Sampling,
-    counters: PerFrameAxis,
-    takeCoils: (coils: Float32Array) => void,
-  ): GroupOutcome {
+  runGroup(data: Float32Array, sampling: Sampling, counters: PerFrameAxis, taker: GroupTaker): void {
+    const start: Frame = { data, layout: this.#plan.placed, sampling, noise: this.#noiseOf(sampling) };
     const maps: MapValues[] = [];
     const findings: Finding[] = [];
-    let frame: Frame = { data, layout: this.#plan.placed, sampling, noise: this.#noiseOf(sampling) };
-    for (const { stage, params, arrays } of this.#frameStages) {
+    const shared = this.#runStages(this.#common, start, data, counters, maps, findings, () => undefined);
+    this.#branches.forEach((branch, variant) => {
+      const isLast = variant === this.#branches.length - 1;
+      const frame = isLast ? shared : { ...shared, data: this.#copy(shared.data) };
+      const outcome = { maps: [...maps], findings: [...findings] };
+      const takeCoils = (coils: Float32Array) => taker.coils(variant, coils);
+      const result = this.#runStages(
+        branch,
+        frame,
+        data,
+        counters,
+        outcome.maps,
+        outcome.findings,
+        takeCoils,
+      );
+      taker.outcome(variant, { result, ...outcome });
+      if (result.data.byteOffset !== data.byteOffset || result.data.buffer !== data.buffer)
+        this.#kernels.transform.release(result.data);
+    });
+  }
+
+  /** @param kept memory that is not given back: the caller's */
+  #runStages(
+    stages: readonly PlannedStage[],
+    start: Frame,
+    kept: Float32Array,
+    counters: PerFrameAxis,
+    maps: MapValues[],
+    findings: Finding[],
+    takeCoils: (coils: Float32Array) => void,
+  ): Frame {
+    let frame = start;
+    for (const { stage, params, arrays } of stages) {
       if (stage.kind === "readout") continue;
       const context = this.#context(counters, arrays, maps, findings);
       if (stage.kind === "combine") takeCoils(frame.data);
       const next = this.#step(stage.id, () => stage.run(frame, params, context));
-      if (next.data !== frame.data && frame.data !== data) context.release(frame.data);
+      if (next.data !== frame.data && frame.data !== kept) context.release(frame.data);
       frame = next;
     }
-    return { result: frame, maps, findings };
+    return frame;
+  }
+
+  #copy(data: Float32Array): Float32Array {
+    const copy = this.#kernels.transform.allocate(data.length, false);
+    copy.set(data);
+    return copy;
   }
 
   /** Noise of a pixel against that of a sample: lines that were averaged have less of it, missing ones none. */
@@ -149,4 +195,18 @@ export class Pipeline {
       });
     }
   }
+}
+
+/** How many stages several lists begin with in common, parameters included; the combination is never among them. */
+function commonLength(lists: readonly (readonly PlannedStage[])[]): number {
+  const key = (each: PlannedStage | undefined) => each && JSON.stringify([each.stage.id, each.params]);
+  let length = 0;
+  while (
+    lists.every(
+      (list) => key(list[length]) === key(lists[0]![length]) && list[length]?.stage.kind !== "combine",
+    ) &&
+    lists[0]![length]
+  )
+    length++;
+  return length;
 }

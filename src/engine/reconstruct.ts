@@ -6,33 +6,50 @@ import type { ScanIndex } from "../ingest/scan-index.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { currentBuffer, type SampleMemory } from "../kernels/sample-memory.js";
 import type { ScanFacts } from "../physics/scan.js";
-import { axisLength, type Finding, type Frame, floatCount, type MapValues } from "../stages/stage.js";
+import {
+  axisLength,
+  type Finding,
+  type Frame,
+  floatCount,
+  type Layout,
+  type MapValues,
+} from "../stages/stage.js";
 import type { Crew } from "./crew.js";
 import { type Destination, GroupStore, type OpenGroup } from "./group-store.js";
 import { frameAt, type JobReply } from "./jobs.js";
 import type { Plan } from "./plan.js";
+import type { Replicas } from "./replica-noise.js";
 import type { Timings } from "./timings.js";
 
-/** What became of a group of frames. Its arrays are valid only while it is used. */
+/** What became of a group of frames under one variant. Its arrays are valid only while it is used. */
 export interface GroupResult {
   readonly result: Frame;
   readonly coils: Frame | undefined;
   readonly maps: readonly MapValues[];
   readonly findings: readonly Finding[];
+  /** Noise of each value over pseudo-replicas, where they were asked for. */
+  readonly deviation: Float32Array | undefined;
 }
+
+/** Takes the results of a group, those of each variant together: one where there is one plan. */
+export type UseGroup = (group: number, results: readonly GroupResult[]) => Promise<void>;
 
 /** All that one pass over a file needs. */
 export interface Pass {
   readonly raw: RawFile;
   readonly scan: ScanFacts;
   readonly plan: Plan;
+  /** The plan and its variants. */
+  readonly plans: readonly Plan[];
+  /** Pseudo-replicas of these groups. */
+  readonly replicas: (Replicas & { readonly groups: ReadonlySet<number> }) | undefined;
   readonly crew: Crew;
   readonly memory: SampleMemory;
   readonly kernels: Kernels;
   readonly budgetBytes: number;
   readonly timings: Timings;
   readonly blockRows: number;
-  readonly keepCoils: boolean;
+  readonly keepCoils: (group: number) => boolean;
   /** Readouts of a group. */
   readonly expected: (group: number) => number;
   /** Drift of the resonance at each image readout, in the order of the file, Hz; where the plan asks for it. */
@@ -51,13 +68,10 @@ const BLOCKS_AHEAD = 12;
  * Groups for which memory was lacking are done in further passes.
  * @throws InputError for a faulty file; Contradiction where readouts are not as `expected`; the signal's reason
  */
-export async function runPasses(
-  pass: Pass,
-  use: (group: number, result: GroupResult) => Promise<void>,
-): Promise<void> {
+export async function runPasses(pass: Pass, use: UseGroup): Promise<void> {
   const finished = new Set<number>();
-  const useAndNote = async (group: number, result: GroupResult) => {
-    await use(group, result);
+  const useAndNote: UseGroup = async (group, results) => {
+    await use(group, results);
     finished.add(group);
   };
   let { index } = pass;
@@ -70,7 +84,7 @@ export async function runPasses(
 class PassRun {
   readonly #pass: Pass;
   readonly #store: GroupStore;
-  readonly #use: (group: number, result: GroupResult) => Promise<void>;
+  readonly #use: UseGroup;
   /** Blocks are finished in the order of the file, whoever processed them. */
   #tail: Promise<void> = Promise.resolve();
   /** The ends of the blocks on their way, the oldest first. */
@@ -80,11 +94,7 @@ class PassRun {
   /** Image readouts so far. */
   #imageReadouts = 0;
 
-  constructor(
-    pass: Pass,
-    finished: ReadonlySet<number>,
-    use: (group: number, result: GroupResult) => Promise<void>,
-  ) {
+  constructor(pass: Pass, finished: ReadonlySet<number>, use: UseGroup) {
     this.#pass = pass;
     this.#use = use;
     const { plan, scan, memory, budgetBytes, expected } = pass;
@@ -231,31 +241,36 @@ class PassRun {
   }
 
   async #runGroup(open: OpenGroup): Promise<void> {
-    const { plan, memory, keepCoils, crew, timings } = this.#pass;
-    const result = memory.allocate(floatCount(plan.result), false);
-    const coils = keepCoils ? memory.allocate(floatCount(plan.coils), false) : undefined;
+    const { plans, memory, keepCoils, replicas, crew, timings } = this.#pass;
+    const allocate = (layout: Layout) => memory.allocate(floatCount(layout), false);
+    const results = plans.map(({ result }) => allocate(result));
+    const coils = keepCoils(open.group) ? plans.map((plan) => allocate(plan.coils)) : undefined;
     const span = (array: Float32Array) => ({ byte: array.byteOffset, floats: array.length });
     const reply: JobReply = await crew.submit({
       kind: "group",
       group: open.group,
       data: span(open.data),
       counts: open.counts,
-      result: span(result),
-      coils: coils && span(coils),
+      results: results.map(span),
+      coils: coils?.map(span),
+      replicas: replicas?.groups.has(open.group) ? { count: replicas.count, seed: replicas.seed } : undefined,
     });
     timings.addAll(reply.timings);
     const start = performance.now();
-    await this.#use(open.group, {
-      result: frameAt(plan, memory.memory, span(result), "result", reply.noise!),
-      coils:
-        coils &&
-        frameAt(plan, memory.memory, span(reply.coilsInData ? open.data : coils), "coils", reply.noise!),
-      maps: reply.maps!,
-      findings: reply.findings!,
+    const used = plans.map((plan, v): GroupResult => {
+      const { noise, maps, findings, deviation } = reply.variants![v]!;
+      const coilsAt = coils && span(reply.coilsInData ? open.data : coils[v]!);
+      return {
+        result: frameAt(plan, memory.memory, span(results[v]!), "result", noise),
+        coils: coilsAt && frameAt(plan, memory.memory, coilsAt, "coils", noise),
+        maps,
+        findings,
+        deviation,
+      };
     });
+    await this.#use(open.group, used);
     timings.add("write", (performance.now() - start) / 1e3);
-    memory.release(result);
-    if (coils) memory.release(coils);
+    for (const array of [...results, ...(coils ?? [])]) memory.release(array);
     this.#store.release(open);
   }
 }

@@ -19,6 +19,7 @@ import { JobRunner } from "./jobs.js";
 import { groupOf, type Plan } from "./plan.js";
 import { Contradiction, confirmPreview, previewReadouts, previewScan } from "./preview.js";
 import { type GroupResult, type Pass, runPasses } from "./reconstruct.js";
+import type { Replicas } from "./replica-noise.js";
 import { completeOverrides, indexRaw, type ReadOptions, type Scan, scanOf } from "./scan.js";
 import { Timings } from "./timings.js";
 
@@ -30,19 +31,23 @@ export interface RunOptions extends ReadOptions {
   readonly memoryBytes?: number;
   /** Default: SIMD where the machine has it, else plain. The two agree to rounding, not to the bit. */
   readonly transform?: "simd" | "plain";
-  /** Whether the images before the last combination are wanted. */
-  readonly keepCoils?: boolean;
+  /** Whether the images before the last combination are wanted, of all groups or of some. */
+  readonly keepCoils?: boolean | ((facts: ScanFacts, plan: Plan, group: number) => boolean);
+  /** Pseudo-replicas, of the groups that `groups` names. */
+  readonly replicas?: Replicas & { groups(facts: ScanFacts, plan: Plan): ReadonlySet<number> };
 }
 
 export interface PlannedRecipe {
   readonly plan: Plan;
   readonly recipe: Recipe;
+  /** Others whose readout stages, and frames that belong together, are the same: they share the pass over the file. */
+  readonly variants?: readonly PlannedRecipe[];
 }
 
-/** Takes the results of one attempt. An attempt that the file contradicts is aborted, and another begun. */
+/** Takes the results of one attempt, those of the plan first. An attempt that the file contradicts is aborted, and another begun. */
 export interface Attempt {
   /** The result's arrays may be reused once the promise has settled. */
-  use(group: number, result: GroupResult): Promise<void>;
+  use(group: number, results: readonly GroupResult[]): Promise<void>;
   abort(): void;
 }
 
@@ -123,7 +128,9 @@ async function attemptRun<A extends Attempt>(
   const blockRows = options.blockRows ?? blockRowsFor(facts);
   const planned = prepare(facts);
   const { plan, recipe } = planned;
-  const { memory, kernels, crew, timings } = await hands.setUp(plan, facts, recipe, blockRows);
+  const all = [planned, ...(planned.variants ?? [])];
+  const { memory, kernels, crew, timings } = await hands.setUp(all, facts, blockRows);
+  const { keepCoils = false, replicas } = options;
   const attempt = begin(facts, planned, kernels);
   const index = scan ? undefined : new ScanIndex(raw.file, raw.header, overrides);
   const pass: Pass = {
@@ -137,7 +144,9 @@ async function attemptRun<A extends Attempt>(
     index,
     blockRows,
     driftHz: scan && driftOf(raw, scan, plan, blockRows),
-    keepCoils: options.keepCoils ?? false,
+    plans: all.map((each) => each.plan),
+    keepCoils: typeof keepCoils === "boolean" ? () => keepCoils : (group) => keepCoils(facts, plan, group),
+    replicas: replicas && { ...replicas, groups: replicas.groups(facts, plan) },
     // What plans and workers have taken already is not for samples.
     budgetBytes: Math.min(memory.usedBytes + (options.memoryBytes ?? totalmem() / 4), MOST_SAMPLE_BYTES),
     expected: scan ? countedReadouts(scan, plan) : () => previewReadouts(facts, raw, plan.framesPerGroup),
@@ -145,7 +154,7 @@ async function attemptRun<A extends Attempt>(
     progress: options.progress ?? (() => undefined),
   };
   try {
-    await runPasses(pass, (group, result) => attempt.use(group, result));
+    await runPasses(pass, (group, results) => attempt.use(group, results));
     const found = scan ?? scanOf(raw, index!, overrides);
     if (foreseen) confirmPreview(foreseen, found.facts);
     return { attempt, scan: found, plan, recipe, kernels: kernels.id, timings };
@@ -180,15 +189,18 @@ class Hands {
   }
 
   /** Memory, kernels and crew for one attempt. */
-  async setUp(plan: Plan, facts: ScanFacts, recipe: Recipe, blockRows: number) {
+  async setUp(planned: readonly PlannedRecipe[], facts: ScanFacts, blockRows: number) {
+    const plans = planned.map(({ plan }) => plan);
     const memory = new SampleMemory();
     const kernels = await createKernels(memory, this.#useSimd ? "simd" : "plain");
     const timings = new Timings();
-    const own = new JobRunner(plan, facts, kernels, memory.memory, new Timings());
-    const work = { lengths: transformLengths(plan), channels: facts.channels };
+    const own = new JobRunner(plans, facts, kernels, memory.memory, new Timings());
+    const lengths = new Set(plans.flatMap((plan) => [...transformLengths(plan)]));
+    const work = { lengths, channels: facts.channels };
+    const bytes = Math.max(...plans.map((plan) => workspaceBytes(plan, blockRows)));
     const setups = this.#workers.map((): WorkerSetup => {
-      const place = createSimdPlace(memory, work, workspaceBytes(plan, blockRows));
-      return { place, facts, recipe };
+      const place = createSimdPlace(memory, work, bytes);
+      return { place, facts, recipes: planned.map(({ recipe }) => recipe) };
     });
     return { memory, kernels, timings, crew: new Crew(own, this.#workers, setups) };
   }

@@ -11,9 +11,9 @@ let runner: JobRunner | undefined;
 
 port.on("message", (message: ToWorker) => {
   if ("setup" in message) {
-    const { place, facts, recipe } = message.setup;
+    const { place, facts, recipes } = message.setup;
     runner = new JobRunner(
-      planRecipe(facts, recipe),
+      recipes.map((recipe) => planRecipe(facts, recipe)),
       facts,
       createSimdKernels(place),
       place.memory,

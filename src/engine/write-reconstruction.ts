@@ -156,7 +156,8 @@ class Writing implements Attempt {
     return placementOf(scan.facts, this.#prepared.plan, this.#placement);
   }
 
-  async use(group: number, result: GroupResult): Promise<void> {
+  async use(group: number, [result]: readonly GroupResult[]): Promise<void> {
+    if (!result) return;
     this.#noise.add(result.result);
     this.#placement.add(group, result);
     await Promise.all(this.#writers.map((writer) => writer.add(group, result)));

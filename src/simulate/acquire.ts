@@ -1,9 +1,8 @@
 import { FLAG, type FlagName } from "../ingest/flags.js";
+import { addNoise, RandomStream } from "../kernels/random.js";
 import { noiseCovarianceFactor } from "../physics/noise-statistics.js";
 import { type Acquisition, acquiredLines, acquiredSamples, centerSample } from "./acquisition.js";
 import { sliceGeometry } from "./geometry.js";
-import { addNoise } from "./noise.js";
-import { RandomStream } from "./random.js";
 import type { HeadValues, RawReadout } from "./raw-writer.js";
 import { ExactKSpace, echoPhases, readoutSignal } from "./signal.js";
 

@@ -1,7 +1,7 @@
 import { readFileSync, rmSync, writeFileSync } from "node:fs";
 import path from "node:path";
 import { beforeAll, expect, test } from "vitest";
-import { RandomStream } from "../../src/simulate/random.js";
+import { RandomStream } from "../../src/kernels/random.js";
 import { writeRawFile } from "../support/raw-files.js";
 import { carillon, scratchFolder } from "../support/run-carillon.js";
 

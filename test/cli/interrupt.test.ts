@@ -1,7 +1,7 @@
 import { existsSync, mkdirSync, readdirSync, readFileSync, rmSync } from "node:fs";
 import path from "node:path";
 import { beforeAll, describe, test } from "vitest";
-import { RandomStream } from "../../src/simulate/random.js";
+import { RandomStream } from "../../src/kernels/random.js";
 import { writeLongFile } from "../support/raw-files.js";
 import { carillon, scratchFolder } from "../support/run-carillon.js";
 

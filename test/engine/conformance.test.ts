@@ -44,8 +44,8 @@ async function difference(
       return { recipe, plan: planRecipe(facts, recipe) };
     },
     () => ({
-      use: async (group, result) => {
-        const { data } = result[which]!;
+      use: async (group, [result]) => {
+        const { data } = result![which]!;
         found.set(data, group * data.length);
       },
       abort: () => undefined,

@@ -39,7 +39,8 @@ export async function reconstructed(
       return { recipe, plan: planRecipe(facts, recipe) };
     },
     () => ({
-      use: async (group, done) => {
+      use: async (group, [done]) => {
+        if (!done) return;
         results[group] = done.result.data.slice();
         coils[group] = done.coils!.data.slice();
         maps[group] = new Map(done.maps.map(({ name, data }) => [name, data]));

@@ -62,3 +62,34 @@ function mix(value: number): number {
   h = Math.imul(h ^ (h >>> 13), 0xc2b2ae35);
   return (h ^ (h >>> 16)) >>> 0;
 }
+
+/**
+ * Add noise `scale * L z`, z of independent parts with `E|z|^2 = 1`, to every sample.
+ * @param factor  L, [coil, coil] interleaved, lower triangular
+ * @param samples interleaved complex64, [coil, sample]; added to
+ */
+export function addNoise(
+  samples: Float32Array | Float64Array,
+  factor: Float64Array,
+  coils: number,
+  random: RandomStream,
+  scale = 1,
+): void {
+  const count = samples.length / (2 * coils);
+  const z = new Float64Array(2 * coils);
+  for (let n = 0; n < count; n++) {
+    random.fillGaussian(z);
+    for (let i = 0; i < coils; i++) {
+      let re = 0;
+      let im = 0;
+      for (let j = 0; j <= i; j++) {
+        const at = 2 * (i * coils + j);
+        re += factor[at]! * z[2 * j]! - factor[at + 1]! * z[2 * j + 1]!;
+        im += factor[at]! * z[2 * j + 1]! + factor[at + 1]! * z[2 * j]!;
+      }
+      const at = 2 * (i * count + n);
+      samples[at]! += re * scale * Math.SQRT1_2;
+      samples[at + 1]! += im * scale * Math.SQRT1_2;
+    }
+  }
+}

@@ -1,5 +1,5 @@
 import { describe, expect, test } from "vitest";
-import { RandomStream } from "../../src/simulate/random.js";
+import { RandomStream } from "../../src/kernels/random.js";
 
 describe("xoshiro128**", () => {
   test("gives the numbers of its authors' C program", () => {
