@@ -1,5 +1,6 @@
 import { budget } from "./budget.js";
 import type { Command } from "./command.js";
+import { compare } from "./compare.js";
 import { fieldMap } from "./field-map.js";
 import { inspect } from "./inspect.js";
 import { recipe } from "./recipe.js";
@@ -8,4 +9,13 @@ import { simulate } from "./simulate.js";
 import { taper } from "./taper.js";
 
 /** Every command, in the order of help. Their modules load the engine only when they run. */
-export const COMMANDS: readonly Command[] = [inspect, recon, fieldMap, budget, taper, recipe, simulate];
+export const COMMANDS: readonly Command[] = [
+  inspect,
+  recon,
+  compare,
+  fieldMap,
+  budget,
+  taper,
+  recipe,
+  simulate,
+];

@@ -62,6 +62,8 @@ export interface VariantReply {
   readonly noise: NoiseState;
   readonly maps: readonly MapValues[];
   readonly findings: readonly Finding[];
+  /** Of the stages that are its own. */
+  readonly seconds: number;
   /** Standard deviation of the noise of each value of the result, over pseudo-replicas. */
   readonly deviation?: Float32Array;
 }
@@ -155,10 +157,10 @@ export class JobRunner {
         if (isInData && this.#plans.length === 1) coilsInData = true;
         else if (job.coils) this.#view(job.coils[variant]!).set(coils);
       },
-      outcome: (variant, { result, maps, findings }) => {
+      outcome: (variant, { result, maps, findings }, seconds) => {
         this.#view(job.results[variant]!).set(result.data);
         const deviation = deviations?.[variant];
-        variants.push({ noise: result.noise, maps, findings, ...(deviation && { deviation }) });
+        variants.push({ noise: result.noise, maps, findings, seconds, ...(deviation && { deviation }) });
       },
     });
     return { variants, coilsInData };

@@ -30,7 +30,8 @@ export interface GroupOutcome {
 export interface GroupTaker {
   /** The images before the last combination. */
   coils(variant: number, coils: Float32Array): void;
-  outcome(variant: number, outcome: GroupOutcome): void;
+  /** @param seconds that the variant's own stages took */
+  outcome(variant: number, outcome: GroupOutcome, seconds: number): void;
 }
 
 /**
@@ -102,6 +103,7 @@ export class Pipeline {
     const findings: Finding[] = [];
     const shared = this.#runStages(this.#common, start, data, counters, maps, findings, () => undefined);
     this.#branches.forEach((branch, variant) => {
+      const begin = performance.now();
       const isLast = variant === this.#branches.length - 1;
       const frame = isLast ? shared : { ...shared, data: this.#copy(shared.data) };
       const outcome = { maps: [...maps], findings: [...findings] };
@@ -115,7 +117,7 @@ export class Pipeline {
         outcome.findings,
         takeCoils,
       );
-      taker.outcome(variant, { result, ...outcome });
+      taker.outcome(variant, { result, ...outcome }, (performance.now() - begin) / 1e3);
       if (result.data.byteOffset !== data.byteOffset || result.data.buffer !== data.buffer)
         this.#kernels.transform.release(result.data);
     });

@@ -27,6 +27,8 @@ export interface GroupResult {
   readonly coils: Frame | undefined;
   readonly maps: readonly MapValues[];
   readonly findings: readonly Finding[];
+  /** Of the stages that are the variant's own, over one thread. */
+  readonly seconds: number;
   /** Noise of each value over pseudo-replicas, where they were asked for. */
   readonly deviation: Float32Array | undefined;
 }
@@ -258,13 +260,14 @@ class PassRun {
     timings.addAll(reply.timings);
     const start = performance.now();
     const used = plans.map((plan, v): GroupResult => {
-      const { noise, maps, findings, deviation } = reply.variants![v]!;
+      const { noise, maps, findings, seconds, deviation } = reply.variants![v]!;
       const coilsAt = coils && span(reply.coilsInData ? open.data : coils[v]!);
       return {
         result: frameAt(plan, memory.memory, span(results[v]!), "result", noise),
         coils: coilsAt && frameAt(plan, memory.memory, coilsAt, "coils", noise),
         maps,
         findings,
+        seconds,
         deviation,
       };
     });

@@ -186,6 +186,30 @@ function productGrid(line: ArrayLike<number>, axes: number): Float64Array {
   return grid;
 }
 
+/** The gains along one axis, k = 0 of the others. @param params what `apodize.parse` gave */
+export function lineGains(
+  layout: Layout,
+  params: unknown,
+  axis: SpatialAxis,
+  arrays: InputArrays,
+): Float64Array {
+  const own = params as Params; // as the caller promises
+  const length = axisLength(layout, axis);
+  const axes = usedAxes(layout, own);
+  if (!axes.includes(axis)) return new Float64Array(length).fill(1);
+  const grid = axesGrid(layout, axes, own, arrays);
+  const strides = new Map<SpatialAxis, number>();
+  let step = 1;
+  for (const each of [...axes].reverse()) {
+    strides.set(each, step);
+    step *= axisLength(layout, each);
+  }
+  let start = 0;
+  for (const each of axes)
+    if (each !== axis) start += strides.get(each)! * Math.floor(axisLength(layout, each) / 2);
+  return Float64Array.from({ length }, (_, i) => grid[start + i * strides.get(axis)!]!);
+}
+
 /** The grid that these parameters gave last, with the layout that it is for: the groups of a scan share one. */
 const lastGrids = new WeakMap<Params, { layout: Layout; grid: Float32Array }>();
 

@@ -14,7 +14,7 @@ beforeAll(async () => {
   await writeRawFile(gaps, { readouts: (all) => all.slice(0, -3) });
 });
 
-const COMMANDS = ["inspect", "recon", "field-map", "budget", "taper", "recipe", "simulate"];
+const COMMANDS = ["inspect", "recon", "compare", "field-map", "budget", "taper", "recipe", "simulate"];
 const version: string = JSON.parse(readFileSync("package.json", "utf8")).version;
 
 describe.concurrent("the twenty points of a good command line, 1 to 11", () => {
@@ -74,7 +74,7 @@ describe.concurrent("the twenty points of a good command line, 1 to 11", () => {
       [["recon", raw, "-x"], "-x: no such flag. See: carillon recon --help"],
       [
         ["inspect", raw, "--force"],
-        "--force: no such flag. It is a flag of recon, field-map, budget, taper and simulate. See: carillon inspect --help",
+        "--force: no such flag. It is a flag of recon, compare, field-map, budget, taper and simulate. See: carillon inspect --help",
       ],
       [["--verison"], "--verison: no such flag. Did you mean --version?"],
       [["recn", raw], "recn: no such command. Did you mean recon?"],
