@@ -320,7 +320,7 @@ function page(parts: Parts, range: GreyRange, charts: Readonly<Record<string, Ch
       ...settings.describe,
       [
         "time of each variant's own stages",
-        variants.map(({ name, seconds }) => `${name}: ${seconds.toFixed(2)} s`).join("; "),
+        variants.map(({ name, seconds }) => `${name}: ${(1e3 * seconds).toFixed(1)} ms`).join("; "),
       ],
     ],
     reference: reference.name,
