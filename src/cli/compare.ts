@@ -4,6 +4,7 @@ import { type Command, type Flags, RAW_ARGUMENT, READ_OPTIONS, SERIES_OPTIONS } 
 import { ENGINE_OPTIONS, runOptions } from "./engine-flags.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 import type { Terminal } from "./terminal.js";
+import { wrap } from "./text.js";
 
 /** `carillon compare`: variants of a recipe side by side, theory beside measurement. */
 export const compare: Command = {
@@ -45,7 +46,7 @@ export const compare: Command = {
       type: "whole",
       least: 1,
       value: "N",
-      fallback: 8,
+      fallback: 4,
       describe: "most images that differences are measured on",
     },
     region: {
@@ -147,16 +148,17 @@ async function settingsOf(flags: Flags): Promise<SettingsOf> {
   });
 }
 
-function report({ files, compared, values, reference, edge }: Written, terminal: Terminal): void {
+function report({ files, compared, values, reference, remarks }: Written, terminal: Terminal): void {
   terminal.discrepancies(compared.scan.discrepancies);
   terminal.document({
     files,
     reference,
+    remarks,
     variants: compared.variants.map(({ name, seconds }, v) => ({ name, values: values[v], seconds })),
     discrepancies: compared.scan.discrepancies,
   });
   terminal.result(comparisonTable(compared.variants, values));
-  if (!edge) terminal.result("no straight edge was found: name one with --edge");
+  for (const remark of remarks) terminal.result(wrap(`note: ${remark}`, 80, "  "));
   for (const file of files) terminal.result(file);
   const { passes } = compared;
   terminal.result(

@@ -109,6 +109,8 @@ export interface Measured {
   readonly values: readonly MeasureValues[];
   readonly edge: Edge | undefined;
   readonly profiles: readonly Profile[];
+  /** What a reader of the figures must know. */
+  readonly remarks: readonly string[];
   /** By propagation, of the shown image: standard deviation of each pixel. */
   readonly noiseMaps: readonly Float32Array[];
 }
@@ -138,15 +140,31 @@ export function measureVariants(
   return {
     values: measured.map(({ values }) => values),
     edge,
+    remarks: remarksOn(measured[variants.indexOf(reference)]!.values, edge),
     profiles: measured.flatMap(({ profile }) => (profile ? [profile] : [])),
     noiseMaps,
   };
 }
 
+/** An edge this much wider than the windows allow is not sharp itself. */
+const SOFT_EDGE = 1.5;
+
+function remarksOn(
+  { widthMeasuredMm: measured, widthTheoryMm: theory }: MeasureValues,
+  edge: Edge | undefined,
+): string[] {
+  if (!edge) return ["no straight edge was found: name one with --edge"];
+  if (!measured || !theory || measured < SOFT_EDGE * theory) return [];
+  const [found, least] = [measured, theory].map((mm) => Number(mm.toPrecision(3)));
+  return [
+    `the edge is softer than the resolution (${found} mm, ${least} by theory): widths and ringing are the object's; name a sharper one with --edge`,
+  ];
+}
+
 const finite = (value: number | undefined) => (value !== undefined && Number.isFinite(value) ? value : null);
 
 /** Lines averaged for an edge, to each side, and pixels to each side along them. */
-const EDGE = { sideLines: 4, reachPixels: 8 };
+const EDGE = { sideLines: 3, reachPixels: 8 };
 
 function edgeImage(variant: VariantImages, shown: number) {
   const { height, width, channels } = variant;
@@ -228,15 +246,21 @@ function propagatedNoise({ images, coils, noise }: VariantImages, shown: number)
   );
 }
 
+const deviationTables = new Map<number, Float64Array>();
+const TABLE_STEP = 0.05;
+
 /** Deviation over signal, both in units of the noise, from a table: the hypergeometric series is slow. */
 function deviationTable(coils: number): (signal: number) => number {
-  const step = 0.05;
+  const known = deviationTables.get(coils);
   const most = 4 * Math.sqrt(coils) + 12; // beyond, it is 1 within a hundredth
-  const table = Float64Array.from({ length: Math.ceil(most / step) + 2 }, (_, i) =>
-    rssStandardDeviation(coils, 1, i * step),
-  );
+  const table =
+    known ??
+    Float64Array.from({ length: Math.ceil(most / TABLE_STEP) + 2 }, (_, i) =>
+      rssStandardDeviation(coils, 1, i * TABLE_STEP),
+    );
+  deviationTables.set(coils, table);
   return (signal) => {
-    const at = Math.min(table.length - 2, signal / step);
+    const at = Math.min(table.length - 2, signal / TABLE_STEP);
     const cell = Math.floor(at);
     return table[cell]! + (at - cell) * (table[cell + 1]! - table[cell]!);
   };

@@ -29,12 +29,16 @@ export const YOUNG_HEAP = { maxYoungGenerationSizeMb: 4 };
 
 /** Jobs that wait at a worker beside the one it does: enough that it never idles while the main thread reads. */
 const AHEAD = 8;
+/** Groups at a worker: with more, the main thread would wait for them at the end with nothing to do. */
+const MOST_GROUPS = 2;
 
 interface Hand {
   readonly worker: Worker;
   /** Loaded and set up: until then others do what would have to wait for it. */
   isReady: boolean;
   busy: number;
+  /** Groups among its jobs: each is as long as many blocks. */
+  groups: number;
 }
 
 /**
@@ -46,7 +50,7 @@ export class Crew {
   readonly #own: JobRunner;
   readonly #waiting = new Map<
     number,
-    { resolve(reply: JobReply): void; reject(error: unknown): void; hand: Hand }
+    { resolve(reply: JobReply): void; reject(error: unknown): void; hand: Hand; job: Job }
   >();
   #next = 0;
   #failure: unknown;
@@ -54,7 +58,7 @@ export class Crew {
   /** @param workers started before, with `startWorkers`; each gets its setup now */
   constructor(own: JobRunner, workers: readonly Worker[], setups: readonly WorkerSetup[]) {
     this.#own = own;
-    this.#hands = workers.map((worker) => ({ worker, isReady: false, busy: 0 }));
+    this.#hands = workers.map((worker) => ({ worker, isReady: false, busy: 0, groups: 0 }));
     this.#hands.forEach((hand, i) => {
       const { worker } = hand;
       worker.on("message", (message: FromWorker) => {
@@ -70,14 +74,15 @@ export class Crew {
   submit(job: Job): Promise<JobReply> {
     if (this.#failure) return Promise.reject(this.#failure);
     const hand = this.#hands.reduce<Hand | undefined>(
-      (best, each) => (each.isReady && each.busy < AHEAD && (!best || each.busy < best.busy) ? each : best),
+      (best, each) => (hasRoom(each, job) && (!best || each.busy < best.busy) ? each : best),
       undefined,
     );
     if (!hand) return new Promise((resolve) => resolve(this.#own.run(job)));
     hand.busy++;
+    if (job.kind === "group") hand.groups++;
     const id = this.#next++;
     return new Promise((resolve, reject) => {
-      this.#waiting.set(id, { resolve, reject, hand });
+      this.#waiting.set(id, { resolve, reject, hand, job });
       hand.worker.postMessage({ id, job } satisfies ToWorker);
     });
   }
@@ -87,6 +92,7 @@ export class Crew {
     if (!entry) return;
     this.#waiting.delete(message.id);
     entry.hand.busy--;
+    if (entry.job.kind === "group") entry.hand.groups--;
     if ("reply" in message) entry.resolve(message.reply);
     else entry.reject(message.error);
   }
@@ -97,6 +103,10 @@ export class Crew {
     for (const { reject } of this.#waiting.values()) reject(error);
     this.#waiting.clear();
   }
+}
+
+function hasRoom({ isReady, busy, groups }: Hand, job: Job): boolean {
+  return isReady && busy < AHEAD && (job.kind !== "group" || groups < MOST_GROUPS);
 }
 
 /**

@@ -6,12 +6,12 @@ import { axisLength } from "../stages/stage.js";
 import { VERSION } from "../version.js";
 import type { Chart } from "../writers/chart.js";
 import { chartPng, chartSvg } from "../writers/chart.js";
-import { signedMapPicture } from "../writers/colour-map.js";
+import { divergingColour } from "../writers/colour-map.js";
 import { comparisonPage } from "../writers/comparison-page.js";
 import { csvText } from "../writers/csv.js";
 import { automaticRange, type GreyRange, toGrey8 } from "../writers/grey-range.js";
 import { montage } from "../writers/montage.js";
-import { type FileHashes, hashFile } from "../writers/output-file.js";
+import type { FileHashes } from "../writers/output-file.js";
 import { OutputSet } from "../writers/output-set.js";
 import { encodePng } from "../writers/png.js";
 import { resample, squareSize } from "../writers/square-pixels.js";
@@ -30,6 +30,7 @@ import {
   type MeasureSettings,
   measureVariants,
 } from "./compare-measures.js";
+import { Hasher } from "./hasher.js";
 import { pixelSizeMm } from "./plan.js";
 import { CAUTION } from "./sidecar.js";
 
@@ -81,6 +82,7 @@ export async function writeComparison(
       "is none of the variants",
       `Choose one of ${variants.map(({ name }) => name).join("; ")}`,
     );
+  const hasher = new Hasher(file);
   const set = new OutputSet({
     folder: options.out,
     names: NAMES,
@@ -88,7 +90,7 @@ export async function writeComparison(
     force: options.force ?? false,
   });
   try {
-    const hashing = hashFile(file, undefined);
+    const hashing = hasher.hash(file);
     hashing.catch(() => undefined); // awaited below; until then a fault of the reconstruction comes first
     const compared = await reconstructVariants(file, variants, options);
     const reference = compared.variants.find(({ name }) => name === referenceName)!;
@@ -109,6 +111,8 @@ export async function writeComparison(
   } catch (error) {
     set.abort();
     throw error;
+  } finally {
+    hasher.dismiss();
   }
 }
 
@@ -141,6 +145,7 @@ function document(
     passesOverTheFile: passes,
     settings: Object.fromEntries(settings.describe),
     edge: measured.edge ?? null,
+    remarks: measured.remarks,
     discrepancies: scan.discrepancies,
     columns: MEASURES,
     variants: variants.map(({ name, recipe, plan, noise }, v) => ({
@@ -298,9 +303,6 @@ function spreadChart(variants: readonly VariantImages[], { edge }: Measured): Ch
   };
 }
 
-/** Longer side of an image on the page, pixels. */
-const PAGE_IMAGE_PX = 512;
-
 function page(parts: Parts, range: GreyRange, charts: Readonly<Record<string, Chart>>): string {
   const { file, compared, reference, measured, settings, input } = parts;
   const { variants, shown, places, imagesInAll, passes } = compared;
@@ -316,6 +318,7 @@ function page(parts: Parts, range: GreyRange, charts: Readonly<Record<string, Ch
       ["program", `carillon ${VERSION}`],
       ["image shown", placeLabel(compared, reference)],
       ["differences measured on", `${places.length} of ${imagesInAll} images`],
+      ...measured.remarks.map((remark) => ["note", remark] as const),
       ["passes over the file", String(passes)],
       ...settings.describe,
       [
@@ -330,8 +333,9 @@ function page(parts: Parts, range: GreyRange, charts: Readonly<Record<string, Ch
       values: measured.values[v]!,
       recipe: formatRecipe(variant.recipe),
       image: plainPicture(variant, shown, range),
-      difference: differences[v] && coloured(differences[v], reference, variant.name, limit),
+      difference: differences[v] && coloured(differences[v], reference, limit),
     })),
+    differenceLimit: limit,
     greyRange: { black: range.low, white: range.high, rule: range.rule },
     figures: [
       {
@@ -351,13 +355,13 @@ function page(parts: Parts, range: GreyRange, charts: Readonly<Record<string, Ch
 /** One limit for all difference pictures. */
 function differenceLimit(differences: readonly (Float32Array | undefined)[]): number {
   const ranges = differences.flatMap((values) => (values ? [automaticRange("signed", values).high] : []));
-  return Math.max(...ranges, Number.MIN_VALUE);
+  return Number(Math.max(...ranges, Number.MIN_VALUE).toPrecision(2));
 }
 
 /** The image alone, without labels, for the page's divider. */
 function plainPicture(variant: VariantImages, shown: number, range: GreyRange): Uint8Array {
   const { height, width, images, plan } = variant;
-  const size = squareSize(width, height, pixelSizeMm(plan.result), PAGE_IMAGE_PX);
+  const size = squareSize(width, height, pixelSizeMm(plan.result), 1);
   const pixels = toGrey8(resample(images[shown]!, width, height, size, true), range);
   return encodePng(
     { width: size.width, height: size.height, colour: "grey", pixels },
@@ -365,17 +369,14 @@ function plainPicture(variant: VariantImages, shown: number, range: GreyRange): 
   );
 }
 
-function coloured(
-  values: Float32Array,
-  { height, width, plan }: VariantImages,
-  name: string,
-  limit: number,
-): Uint8Array {
-  return signedMapPicture(values, height, width, {
-    unit: "signal",
-    pixelMm: pixelSizeMm(plan.result),
-    title: shortName(name),
-    quantity: "difference",
-    limit: Number(limit.toPrecision(2)),
-  }).png;
+/** Signed values in colour, pixel by pixel, for the page, which states the scale. */
+function coloured(values: Float32Array, { height, width, plan }: VariantImages, limit: number): Uint8Array {
+  const size = squareSize(width, height, pixelSizeMm(plan.result), 1);
+  const shown = resample(values, width, height, size, false);
+  const pixels = new Uint8Array(3 * shown.length);
+  shown.forEach((value, i) => void pixels.set(divergingColour(value / limit), 3 * i));
+  return encodePng(
+    { width: size.width, height: size.height, colour: "rgb", pixels },
+    { pixelMm: size.pixelMm },
+  );
 }

@@ -352,9 +352,12 @@ function interpolated(image: EdgeImage, axis: "x" | "y", line: number, position:
   if (image.channels === undefined) return weightedSum(image.data, weights, first, step);
   let squares = 0;
   for (let channel = 0; channel < image.channels.length; channel += 2 * count * length) {
-    for (const part of [0, 1]) {
-      squares += weightedSum(image.channels, weights, channel + 2 * first + part, 2 * step) ** 2;
+    let [re, im] = [0, 0];
+    for (let i = 0, at = channel + 2 * first; i < length; i++, at += 2 * step) {
+      re += weights[i]! * image.channels[at]!;
+      im += weights[i]! * image.channels[at + 1]!;
     }
+    squares += re * re + im * im;
   }
   return Math.sqrt(squares);
 }

@@ -85,20 +85,28 @@ export function structuralSimilarityMap(
       `SSIM needs at least ${SSIM_TAPS} x ${SSIM_TAPS} pixels; the image has ${height} x ${width}`,
     );
   }
-  const taps = ssimTaps();
-  const local = (values: (i: number) => number) => weightedMeans(values, height, width, taps);
-  const meanA = local((i) => image[i]!);
-  const meanB = local((i) => reference[i]!);
-  const squareA = local((i) => image[i]! ** 2);
-  const squareB = local((i) => reference[i]! ** 2);
-  const product = local((i) => image[i]! * reference[i]!);
+  const [means, squares, product] = [0, 1, 2].map(() => new Float64Array(height * width)) as [
+    Float64Array,
+    Float64Array,
+    Float64Array,
+  ];
+  for (let i = 0; i < product.length; i++) {
+    const [a, b] = [image[i]!, reference[i]!];
+    means[i] = b;
+    squares[i] = a * a + b * b; // only the sum of both variances is needed
+    product[i] = a * b;
+  }
+  const meanA = weightedMeans(new Float64Array(image), height, width);
+  const meanB = weightedMeans(means, height, width);
+  const square = weightedMeans(squares, height, width);
+  const cross = weightedMeans(product, height, width);
   const c1 = (0.01 * dynamicRange) ** 2;
   const c2 = (0.03 * dynamicRange) ** 2;
   return meanA.map((a, i) => {
     const b = meanB[i]!;
     const luminance = (2 * a * b + c1) / (a * a + b * b + c1);
-    const varianceSum = squareA[i]! - a * a + squareB[i]! - b * b;
-    return (luminance * (2 * (product[i]! - a * b) + c2)) / (varianceSum + c2);
+    const varianceSum = square[i]! - a * a - b * b;
+    return (luminance * (2 * (cross[i]! - a * b) + c2)) / (varianceSum + c2);
   });
 }
 
@@ -127,30 +135,38 @@ export function structuralSimilarity(
   return sum / count;
 }
 
-/** Separable weighted mean wherever all taps fit: [height - taps + 1, width - taps + 1]. */
-function weightedMeans(
-  values: (i: number) => number,
-  height: number,
-  width: number,
-  taps: Float64Array,
-): Float64Array {
-  const validHeight = height - taps.length + 1;
-  const validWidth = width - taps.length + 1;
+/** Separable weighted mean wherever all taps fit: [height - 10, width - 10]. */
+function weightedMeans(values: Float64Array, height: number, width: number): Float64Array {
+  const validHeight = height - SSIM_TAPS + 1;
+  const validWidth = width - SSIM_TAPS + 1;
   const rows = new Float64Array(height * validWidth);
-  for (let y = 0; y < height; y++) {
-    for (let x = 0; x < validWidth; x++) {
-      let sum = 0;
-      for (let t = 0; t < taps.length; t++) sum += taps[t]! * values(y * width + x + t);
-      rows[y * validWidth + x] = sum;
-    }
-  }
+  for (let y = 0, to = 0; y < height; y++)
+    for (let x = 0, from = y * width; x < validWidth; x++, from++, to++) rows[to] = tapSum(values, from, 1);
   const out = new Float64Array(validHeight * validWidth);
-  for (let i = 0; i < out.length; i++) {
-    let sum = 0;
-    for (let t = 0; t < taps.length; t++) sum += taps[t]! * rows[i + t * validWidth]!;
-    out[i] = sum;
-  }
+  for (let i = 0; i < out.length; i++) out[i] = tapSum(rows, i, validWidth);
   return out;
+}
+
+const [TAP_0, TAP_1, TAP_2, TAP_3, TAP_4, TAP_5] = ssimTaps() as unknown as number[] as [
+  number,
+  number,
+  number,
+  number,
+  number,
+  number,
+];
+
+/** The taps, the same from both ends, on eleven values `step` apart. */
+function tapSum(values: Float64Array, from: number, step: number): number {
+  const to = from + 10 * step;
+  return (
+    TAP_0 * (values[from]! + values[to]!) +
+    TAP_1 * (values[from + step]! + values[to - step]!) +
+    TAP_2 * (values[from + 2 * step]! + values[to - 2 * step]!) +
+    TAP_3 * (values[from + 3 * step]! + values[to - 3 * step]!) +
+    TAP_4 * (values[from + 4 * step]! + values[to - 4 * step]!) +
+    TAP_5 * values[from + 5 * step]!
+  );
 }
 
 /**

@@ -130,7 +130,15 @@ function drawMap(
   outlineMask: ArrayLike<number> | undefined,
 ): void {
   raster.fillBox(MARGIN_PX - 1, top - 1, size.width + 2, size.height + 2, INK);
-  const shown = resample(values, columns, rows, size, false);
+  // Colours belong to the map's pixels; the picture repeats them.
+  const colours = Array.from(values, (value) => divergingColour(value / limit));
+  const source = resample(
+    Float32Array.from({ length: values.length }, (_, i) => i),
+    columns,
+    rows,
+    size,
+    false,
+  );
   const mask = outlineMask && resample(outlineMask, columns, rows, size, false);
   const isIn = (x: number, y: number) =>
     x >= 0 && x < size.width && y >= 0 && y < size.height && mask?.[y * size.width + x] !== 0;
@@ -138,7 +146,7 @@ function drawMap(
     [isIn(x - 1, y), isIn(x + 1, y), isIn(x, y - 1), isIn(x, y + 1)].some((side) => side !== isIn(x, y));
   for (let y = 0; y < size.height; y++) {
     for (let x = 0; x < size.width; x++) {
-      const colour = divergingColour((shown[y * size.width + x] ?? Number.NaN) / limit);
+      const colour = colours[source[y * size.width + x]!]!;
       raster.fillBox(MARGIN_PX + x, top + y, 1, 1, mask && isEdge(x, y) ? INK : colour);
     }
   }

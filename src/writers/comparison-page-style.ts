@@ -32,7 +32,10 @@ thead button::after { content: " \\2195"; color: var(--faint); }
 .stack .over figcaption { right: auto; left: 0; }
 .line { position: absolute; top: 0; bottom: 0; left: var(--split); width: 2px; margin-left: -1px; background: #fff; box-shadow: 0 0 0 1px #000; }
 .grid { display: grid; grid-template-columns: repeat(auto-fill, minmax(min(100%, 20rem), 1fr)); gap: 1rem; }
+.scale { display: flex; gap: 0.5rem; align-items: center; }
+.bar { width: 14rem; height: 0.9rem; border: 1px solid var(--faint); background: linear-gradient(to right, rgb(19 88 139), rgb(17 129 203), rgb(89 171 248), rgb(184 212 250), #fff, rgb(243 201 174), rgb(224 148 95), rgb(188 101 30), rgb(133 67 8)); print-color-adjust: exact; }
 .grid figure { margin: 0; }
+.grid img { image-rendering: pixelated; }
 .grid img, .grid svg { width: 100%; height: auto; display: block; background: #fff; }
 figcaption { font-size: 0.9rem; color: var(--faint); }
 pre { overflow-x: auto; padding: 0.75rem; border: 1px solid var(--rule); border-radius: 4px; font-size: 0.85rem; }

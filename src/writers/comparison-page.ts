@@ -22,9 +22,11 @@ export interface ComparisonPage {
     readonly recipe: string;
     /** PNG, all at one grey range. */
     readonly image: Uint8Array;
-    /** PNG, signed, with its scale; the reference has none. */
+    /** PNG, signed, all in one scale of colours; the reference has none. */
     readonly difference: Uint8Array | undefined;
   }[];
+  /** The value shown in the darkest orange; minus this in the darkest blue. */
+  readonly differenceLimit: number;
   readonly greyRange: { readonly black: number; readonly white: number; readonly rule: string };
   readonly figures: readonly { readonly title: string; readonly svg: string; readonly describe: string }[];
 }
@@ -75,6 +77,7 @@ ${table(data)}
 </section>
 <section aria-labelledby="differences">
 <h2 id="differences">Differences from the reference</h2>
+<p class="scale"><span>${number(-data.differenceLimit)}</span><span class="bar" role="img" aria-label="Colours from blue over white to orange"></span><span>+${number(data.differenceLimit)}</span></p>
 <div class="grid">
 ${variants.map(({ name, difference }) => (difference ? `<figure><img alt="Difference of ${attribute(name)} from the reference" src="${png(difference)}"><figcaption>${text(name)}</figcaption></figure>` : "")).join("\n")}
 </div>

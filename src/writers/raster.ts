@@ -34,7 +34,12 @@ export class Raster {
     const { x0, x1, y0, y1 } = this.#inside(left, top, left + width, top + height);
     for (let y = y0; y < y1; y++) {
       if (this.channels === 1) this.pixels.fill(levels[0] ?? 0, y * this.width + x0, y * this.width + x1);
-      else for (let x = x0; x < x1; x++) this.#blend(x, y, levels, 1);
+      else
+        for (let x = x0, at = 3 * (y * this.width + x0); x < x1; x++, at += 3) {
+          this.pixels[at] = levels[0]!;
+          this.pixels[at + 1] = levels[1]!;
+          this.pixels[at + 2] = levels[2]!;
+        }
     }
   }
 

@@ -52,6 +52,7 @@ const DATA: ComparisonPage = {
       difference: grey(130),
     },
   ],
+  differenceLimit: 2.5,
   greyRange: { black: 0, white: 1, rule: "as given" },
   figures: [
     {
