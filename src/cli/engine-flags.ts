@@ -23,7 +23,6 @@ export const ENGINE_OPTIONS: Readonly<Record<string, Option>> = {
     describe: "transform engine",
     byDefault: "simd where the machine has it",
   },
-  timings: { type: "switch", describe: "print the time by part of the work" },
   block: { type: "whole", least: 1, value: "N", hidden: true, describe: "readouts read at a time" },
 };
 
@@ -39,3 +38,6 @@ export function runOptions(flags: Flags) {
     ...(transform !== undefined && { transform }),
   };
 }
+
+/** With commands that say where the time goes. */
+export const TIMINGS_OPTION: Option = { type: "switch", describe: "print the time by part of the work" };

@@ -1,5 +1,5 @@
 import { type Command, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
-import { ENGINE_OPTIONS, runOptions } from "./engine-flags.js";
+import { ENGINE_OPTIONS, runOptions, TIMINGS_OPTION } from "./engine-flags.js";
 import { report } from "./report.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 
@@ -27,6 +27,7 @@ export const fieldMap: Command = {
     strict: { type: "switch", describe: "fail where header and readouts disagree or lines are missing" },
     ...READ_OPTIONS,
     ...ENGINE_OPTIONS,
+    timings: TIMINGS_OPTION,
   },
   examples: [
     ["field-map scan.h5 --out field", "field-hz.npy, its mask, standard error and pictures in field/"],

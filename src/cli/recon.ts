@@ -7,7 +7,7 @@ import {
   READ_OPTIONS,
   SERIES_OPTIONS,
 } from "./command.js";
-import { ENGINE_OPTIONS, runOptions } from "./engine-flags.js";
+import { ENGINE_OPTIONS, runOptions, TIMINGS_OPTION } from "./engine-flags.js";
 import type { Request } from "./plan-file.js";
 import { report } from "./report.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
@@ -37,6 +37,7 @@ export const recon: Command = {
     "grey-high": { type: "number", value: "V", describe: "value shown white in image.png" },
     ...READ_OPTIONS,
     ...ENGINE_OPTIONS,
+    timings: TIMINGS_OPTION,
   },
   examples: [
     ["recon scan.h5 --out result", "image.npy, image.png and image.json in result/"],
