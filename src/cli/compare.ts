@@ -81,7 +81,7 @@ export const compare: Command = {
   },
   examples: [
     ["compare scan.h5 --out cmp --vary apodize.window=none,hann,tukey:0.5", "three windows"],
-    ["compare scan.h5 --out cmp --vary prewhiten=on,off --vary apodize=on,off", "four combinations"],
+    ["compare scan.h5 --out c --vary prewhiten=on,off --vary apodize=on,off", "four combinations"],
     ["compare scan.h5 --out cmp --recipe a.yaml --recipe b.yaml", "two recipes"],
   ],
   notes: stageNotes,

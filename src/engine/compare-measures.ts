@@ -124,13 +124,15 @@ export function measureVariants(
 ): Measured {
   const edge = edgeOf(reference, shown, settings);
   const noiseMaps = variants.map((variant) => propagatedNoise(variant, shown));
+  const all = joined(reference.images);
+  const peak = all.reduce((most, value) => Math.max(most, value), 0);
   const measured = variants.map((variant, v) => {
     const found = edge && edgeOn(variant, shown, edge, reference);
     const values = {
       ...theoryOf(variant, edge?.axis ?? "x"),
       ...found?.figures,
       ...noiseOf(variant, shown, noiseMaps[v]!, settings, reference),
-      ...differenceOf(variant, reference),
+      ...differenceOf(variant, reference, all, peak),
     };
     return {
       values: Object.fromEntries(MEASURES.map(({ id }) => [id, finite(values[id as keyof typeof values])])),
@@ -289,10 +291,10 @@ function noiseOf(
 }
 
 /** Against the reference, over all chosen images. */
-function differenceOf(variant: VariantImages, reference: VariantImages) {
+function differenceOf(variant: VariantImages, reference: VariantImages, other: Float32Array, peak: number) {
   if (variant.height !== reference.height || variant.width !== reference.width) return {};
-  const [own, other] = [joined(variant.images), joined(reference.images)];
-  const peak = other.reduce((most, value) => Math.max(most, value), 0);
+  if (variant === reference) return { nrmse: 0, ssim: 1 };
+  const own = joined(variant.images);
   const shape = [variant.height, variant.width] as const;
   const isLarge = shape.every((length) => length >= 11);
   const similar = isLarge
@@ -300,7 +302,7 @@ function differenceOf(variant: VariantImages, reference: VariantImages) {
     : [Number.NaN];
   return {
     nrmse: 100 * normalizedRmsError(own, other, "norm"),
-    psnrDb: variant === reference ? undefined : peakSnrDb(own, other, peak),
+    psnrDb: peakSnrDb(own, other, peak),
     ssim: similar.reduce((sum, value) => sum + value, 0) / similar.length,
   };
 }

@@ -280,7 +280,7 @@ function edgeChart({ profiles, edge }: Measured): Chart {
 }
 
 const SPREAD_REACH_PIXELS = 5;
-const SPREAD_STEPS = 32;
+const SPREAD_STEPS = 16;
 const FLOOR_DB = -60;
 
 function spreadChart(variants: readonly VariantImages[], { edge }: Measured): Chart {
