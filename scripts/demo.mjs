@@ -22,3 +22,19 @@ carillon(
 );
 carillon("inspect", "demo-output/bell.h5", "--quiet");
 carillon("recon", "demo-output/bell.h5", "--out", "demo-output/bell", "--force", "--quiet");
+
+// The same bell in three echoes, the middle one read backward, under a shim that is off: water, oil and field in their places.
+carillon(
+  ...["simulate", "--out", "demo-output/tower.h5", "--te-ms", "2.3", "--te-ms", "3.9", "--te-ms", "5.5"],
+  ...["--reversed-echoes", "odd", "--dwell-us", "16", "--field-slope", "0.8,-0.4", "--force", "--quiet"],
+);
+carillon(
+  ...["recon", "demo-output/tower.h5", "--out", "demo-output/placed", "--force", "--quiet"],
+  ...["--separate", "fat-water", "--undisplace", "measured"],
+);
+
+// Three windows side by side: open demo-output/windows/compare.html.
+carillon(
+  ...["compare", "demo-output/bell.h5", "--out", "demo-output/windows", "--force", "--quiet"],
+  ...["--vary", "apodize.window=none,hann,tukey:0.5", "--noise-by", "replicas"],
+);
