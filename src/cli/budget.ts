@@ -1,6 +1,7 @@
 import { UsageError } from "../errors.js";
 import type { BudgetPoint, BudgetQuestions, ReadoutPlan } from "../physics/readout-budget.js";
 import { type Command, type Flags, type Option, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
+import { scanOfFlags } from "./read-scan.js";
 import type { Terminal } from "./terminal.js";
 
 const number = (value: string, describe: string, byDefault?: string): Option => ({
@@ -164,16 +165,8 @@ function dwellOf(
 }
 
 async function scannedPlan(raw: string, flags: Flags, terminal: Terminal, signal: AbortSignal) {
-  const { readScan } = await import("../engine/scan.js");
   const { fieldFromLarmorT } = await import("../physics/larmor.js");
-  const { facts } = await readScan(raw, {
-    overrides: {
-      ...(flags.group !== undefined && { group: flags.group as string }),
-      ...(flags.encoding !== undefined && { encoding: flags.encoding as number }),
-    },
-    signal,
-    progress: (done, total) => terminal.progress("reading", done, total),
-  });
+  const { facts } = await scanOfFlags(raw, flags, terminal, signal);
   const { encoded, reconstructed, dwellSeconds, resonanceHz } = facts;
   const plan: ReadoutPlan = {
     fieldT: facts.fieldT ?? fieldFromLarmorT(resonanceHz),

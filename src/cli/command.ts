@@ -67,6 +67,27 @@ export const READ_OPTIONS: Readonly<Record<string, Option>> = {
   },
 };
 
+/** Flags of every command that writes into a folder. */
+export const OUTPUT_OPTIONS: Readonly<Record<string, Option>> = {
+  out: {
+    type: "text",
+    value: "FOLDER",
+    required: true,
+    describe: "folder to write into; made if it is missing",
+  },
+  force: { type: "switch", describe: "replace files that exist" },
+};
+
+/** The recipe of every command that runs one. */
+export const RECIPE_OPTIONS: Readonly<Record<string, Option>> = {
+  recipe: {
+    type: "text",
+    value: "FILE",
+    describe: "recipe to run",
+    byDefault: "the one that suits the file",
+  },
+};
+
 /** Flags that add stages which look across echoes. */
 export const SERIES_OPTIONS: Readonly<Record<string, Option>> = {
   undisplace: {

@@ -1,6 +1,13 @@
 import path from "node:path";
 import { UsageError } from "../errors.js";
-import { type Command, type Flags, RAW_ARGUMENT, READ_OPTIONS, SERIES_OPTIONS } from "./command.js";
+import {
+  type Command,
+  type Flags,
+  OUTPUT_OPTIONS,
+  RAW_ARGUMENT,
+  READ_OPTIONS,
+  SERIES_OPTIONS,
+} from "./command.js";
 import { ENGINE_OPTIONS, runOptions } from "./engine-flags.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
 import type { Terminal } from "./terminal.js";
@@ -13,13 +20,7 @@ export const compare: Command = {
   summary: "variants of a recipe side by side: resolution, ringing, noise, differences",
   arguments: [RAW_ARGUMENT],
   options: {
-    out: {
-      type: "text",
-      value: "FOLDER",
-      required: true,
-      describe: "folder to write into; made if it is missing",
-    },
-    force: { type: "switch", describe: "replace files that exist" },
+    ...OUTPUT_OPTIONS,
     vary: {
       type: "text",
       value: "STAGE.KEY=A,B,...",

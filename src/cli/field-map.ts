@@ -1,4 +1,4 @@
-import { type Command, RAW_ARGUMENT, READ_OPTIONS } from "./command.js";
+import { type Command, OUTPUT_OPTIONS, RAW_ARGUMENT, READ_OPTIONS, RECIPE_OPTIONS } from "./command.js";
 import { ENGINE_OPTIONS, runOptions, TIMINGS_OPTION } from "./engine-flags.js";
 import { report } from "./report.js";
 import { SET_OPTION, stageNotes } from "./stage-notes.js";
@@ -10,19 +10,8 @@ export const fieldMap: Command = {
   summary: "measure the off-resonance field from the echoes of a raw file",
   arguments: [RAW_ARGUMENT],
   options: {
-    out: {
-      type: "text",
-      value: "FOLDER",
-      required: true,
-      describe: "folder to write into; made if it is missing",
-    },
-    force: { type: "switch", describe: "replace files that exist" },
-    recipe: {
-      type: "text",
-      value: "FILE",
-      describe: "recipe to run",
-      byDefault: "the one that suits the file",
-    },
+    ...OUTPUT_OPTIONS,
+    ...RECIPE_OPTIONS,
     set: SET_OPTION,
     strict: { type: "switch", describe: "fail where header and readouts disagree or lines are missing" },
     ...READ_OPTIONS,

@@ -5,6 +5,7 @@ import {
   type Origins,
   RAW_ARGUMENT,
   READ_OPTIONS,
+  RECIPE_OPTIONS,
   SERIES_OPTIONS,
 } from "./command.js";
 import { ENGINE_OPTIONS, runOptions, TIMINGS_OPTION } from "./engine-flags.js";
@@ -23,12 +24,7 @@ export const recon: Command = {
     out: { type: "text", value: "FOLDER", describe: "folder to write into; made if it is missing" },
     force: { type: "switch", describe: "replace files that exist" },
     save: { type: "text", value: "WHAT", choices: SAVES, repeatable: true, describe: "also write" },
-    recipe: {
-      type: "text",
-      value: "FILE",
-      describe: "recipe to run",
-      byDefault: "the one that suits the file",
-    },
+    ...RECIPE_OPTIONS,
     set: SET_OPTION,
     ...SERIES_OPTIONS,
     explain: { type: "switch", describe: "print the plan and stop; needs no --out" },

@@ -2,6 +2,7 @@ import { UsageError } from "../errors.js";
 import type { AxisWindow, WindowFigures } from "../kernels/point-spread.js";
 import type { WindowAxis, WindowShape, WindowSpec } from "../kernels/window.js";
 import { type Command, type Flags, READ_OPTIONS } from "./command.js";
+import { scanOfFlags } from "./read-scan.js";
 import type { Terminal } from "./terminal.js";
 import { wrap } from "./text.js";
 
@@ -110,20 +111,12 @@ async function rulerOf(flags: Flags, terminal: Terminal, signal: AbortSignal): P
 
 /** An axis of a raw file as the window meets it: after trimming, with what was acquired of it. */
 async function rawAxis(flags: Flags, terminal: Terminal, signal: AbortSignal): Promise<Ruler> {
-  const { readScan } = await import("../engine/scan.js");
   const { planRecipe } = await import("../engine/plan.js");
   const { defaultRecipe } = await import("../recipe/default-recipe.js");
   const { axisLength } = await import("../stages/stage.js");
   const raw = flags.raw as string;
   const name = flags.axis as "x" | "y" | "z";
-  const { facts } = await readScan(raw, {
-    overrides: {
-      ...(flags.group !== undefined && { group: flags.group as string }),
-      ...(flags.encoding !== undefined && { encoding: flags.encoding as number }),
-    },
-    signal,
-    progress: (done, total) => terminal.progress("reading", done, total),
-  });
+  const { facts } = await scanOfFlags(raw, flags, terminal, signal);
   const { placed } = planRecipe(facts, defaultRecipe(facts, raw).recipe);
   const length = axisLength(placed, name);
   if (length < 2)

@@ -11,6 +11,7 @@ import { rssStandardDeviation } from "../physics/noise-statistics.js";
 import { lineGains } from "../stages/apodize.js";
 import { axisLength } from "../stages/stage.js";
 import type { VariantImages } from "./compare.js";
+import { joined } from "./placement.js";
 import { pixelSizeMm } from "./plan.js";
 
 /** One column of a comparison: a theory and a measurement are two. */
@@ -305,14 +306,4 @@ function differenceOf(variant: VariantImages, reference: VariantImages, other: F
     psnrDb: peakSnrDb(own, other, peak),
     ssim: similar.reduce((sum, value) => sum + value, 0) / similar.length,
   };
-}
-
-function joined(images: readonly Float32Array[]): Float32Array {
-  const out = new Float32Array(images.reduce((sum, { length }) => sum + length, 0));
-  let at = 0;
-  for (const image of images) {
-    out.set(image, at);
-    at += image.length;
-  }
-  return out;
 }

@@ -84,7 +84,8 @@ export class PlacementTally {
   }
 }
 
-function joined(parts: readonly Float32Array[]): Float32Array {
+/** Arrays one after the other. */
+export function joined(parts: readonly Float32Array[]): Float32Array {
   const out = new Float32Array(parts.reduce((sum, { length }) => sum + length, 0));
   let at = 0;
   for (const part of parts) {

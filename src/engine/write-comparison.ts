@@ -31,6 +31,7 @@ import {
   measureVariants,
 } from "./compare-measures.js";
 import { Hasher } from "./hasher.js";
+import { joined } from "./placement.js";
 import { pixelSizeMm } from "./plan.js";
 import { CAUTION } from "./sidecar.js";
 
@@ -182,14 +183,7 @@ function writeAll(set: OutputSet, parts: Parts): void {
 
 /** One grey range for all: that of the shown images together. */
 function commonRange(variants: readonly VariantImages[], shown: number): GreyRange {
-  const total = variants.reduce((sum, { images }) => sum + images[shown]!.length, 0);
-  const all = new Float32Array(total);
-  let at = 0;
-  for (const { images } of variants) {
-    all.set(images[shown]!, at);
-    at += images[shown]!.length;
-  }
-  return automaticRange("magnitude", all);
+  return automaticRange("magnitude", joined(variants.map(({ images }) => images[shown]!)));
 }
 
 /** The shown image under every variant on the reference's matrix, labelled. */

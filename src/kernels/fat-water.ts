@@ -1,3 +1,4 @@
+import { fillUnknown } from "./fill.js";
 import { unwrapPhase, type VolumeSize } from "./unwrap.js";
 
 /**
@@ -17,8 +18,8 @@ export interface DixonImages {
 /**
  * Two points: `W = (I + O) / 2`, `F = (I - O) / 2` with the magnitude I of the in-phase echo and the signed opposed-phase
  * echo O. The sign is what is left of the phase between the echoes when the field's part of it is taken off: half of
- * the unwrapped doubled phase, in which the sign drops out. In each connected region the sign is that under which water
- * has the larger sum.
+ * the unwrapped doubled phase, in which the sign drops out. In the largest connected region the sign is that under which
+ * water has the larger sum; in the others that under which their field is nearest to the largest one's, extended to them.
  * @param inPhase interleaved complex64, [slices, rows, columns]
  * @param mask    1 where there is signal; outside, the sign of O is taken as it is
  * Source: Dixon 1984, Radiology 153:189; phase correction: Coombs, Szumowski, Coshow 1997, Magn Reson Med 38:884.
@@ -34,7 +35,7 @@ export function twoPointDixon(
     const im = opposed[i + 1]! * inPhase[i]! - opposed[i]! * inPhase[i + 1]!;
     return 2 * Math.atan2(im, re);
   });
-  return signedHalves(field, (p) => {
+  return signedHalves(field, size, (p) => {
     const i = 2 * p;
     const length = Math.hypot(inPhase[i]!, inPhase[i + 1]!);
     const re = opposed[i]! * inPhase[i]! + opposed[i + 1]! * inPhase[i + 1]!;
@@ -64,7 +65,7 @@ export function threePointDixon(
       third[i]! * first[i]! + third[i + 1]! * first[i + 1]!,
     ),
   );
-  return signedHalves(field, (p) => {
+  return signedHalves(field, size, (p) => {
     const i = 2 * p;
     const c = Math.cos(field.radians[p]!);
     const s = Math.sin(field.radians[p]!);
@@ -91,25 +92,53 @@ function halfUnwrapped(mask: Uint8Array, size: VolumeSize, doubled: (i: number) 
   return { radians: Float32Array.from(radians, (value) => value / 2), regions, regionCount };
 }
 
-/** Half the sum and half the difference, each region's opposed echo with the sign under which water prevails. */
+/** Half the sum and half the difference, each region's opposed echo with its own sign. */
 function signedHalves(
   field: HalfPhase,
+  size: VolumeSize,
   echoes: (pixel: number) => readonly [inPhase: number, opposed: number],
 ): DixonImages {
-  const { radians, regions, regionCount } = field;
+  const { radians, regions } = field;
   const inPhase = new Float32Array(radians.length);
   const opposed = new Float32Array(radians.length);
-  const sums = new Float64Array(regionCount);
+  let largest = 0; // sum of the opposed echo over the largest region, number 0
   for (let p = 0; p < radians.length; p++) {
     [inPhase[p], opposed[p]] = echoes(p);
-    if (regions[p]! >= 0) sums[regions[p]!]! += opposed[p]!;
+    if (regions[p] === 0) largest += opposed[p]!;
   }
-  const turned = (p: number) => regions[p]! >= 0 && sums[regions[p]!]! < 0;
+  const turns = halfTurns(field, size, largest < 0 ? 1 : 0);
+  const turnsOf = (p: number) => (regions[p]! >= 0 ? turns[regions[p]!]! : 0);
+  const sign = (p: number) => (turnsOf(p) % 2 === 0 ? 1 : -1);
   return {
-    water: inPhase.map((value, p) => (turned(p) ? value - opposed[p]! : value + opposed[p]!) / 2),
-    fat: inPhase.map((value, p) => (turned(p) ? value + opposed[p]! : value - opposed[p]!) / 2),
-    radians: radians.map((value, p) => (turned(p) ? value + Math.PI : value)),
+    water: inPhase.map((value, p) => (value + sign(p) * opposed[p]!) / 2),
+    fat: inPhase.map((value, p) => (value - sign(p) * opposed[p]!) / 2),
+    radians: radians.map((value, p) => value + turnsOf(p) * Math.PI),
   };
+}
+
+/** Half turns to add to each region's phase, so that it continues that of the largest, whose own are given. */
+function halfTurns(
+  { radians, regions, regionCount }: HalfPhase,
+  size: VolumeSize,
+  ofLargest: number,
+): Int32Array {
+  const { slices, rows, columns } = size;
+  const extended = radians.map((value) => value + ofLargest * Math.PI);
+  for (let z = 0; z < slices; z++) {
+    const at = [z * rows * columns, (z + 1) * rows * columns] as const;
+    const known = Uint8Array.from(regions.subarray(...at), (region) => (region === 0 ? 1 : 0));
+    if (known.includes(1)) fillUnknown(extended.subarray(...at), known, rows, columns);
+  }
+  const sums = new Float64Array(regionCount);
+  const counts = new Float64Array(regionCount);
+  for (let p = 0; p < radians.length; p++) {
+    if (regions[p]! < 0) continue;
+    sums[regions[p]!]! += extended[p]! - radians[p]!;
+    counts[regions[p]!]!++;
+  }
+  return Int32Array.from(sums, (sum, region) =>
+    region === 0 ? ofLargest : Math.round(sum / counts[region]! / Math.PI),
+  );
 }
 
 /**
