@@ -1,5 +1,6 @@
 import type { Plan } from "../engine/plan.js";
 import { arrayShape } from "../engine/plan.js";
+import { gridOf, mapProducts } from "../engine/products.js";
 import type { Scan } from "../engine/scan.js";
 import type { Flags, Origins } from "./command.js";
 import { counted, wrap } from "./text.js";
@@ -30,6 +31,17 @@ export function explain(scan: Scan, plan: Plan, source: string, flags: Flags, or
   }
   const { axes, shape } = arrayShape(scan.facts, plan.result);
   lines.push("", `image.npy: [${axes.join(", ")}] = ${shape.join(" x ")} float32`);
+  for (const product of mapProducts(plan)) {
+    const grid = gridOf(scan.facts, plan, product);
+    const map = arrayShape(grid.facts, grid.layout);
+    lines.push(
+      wrap(
+        `${product.stem}.npy: [${map.axes.join(", ")}] = ${map.shape.join(" x ")} float32, ${product.unit}: ${product.describe}`,
+        80,
+        "  ",
+      ),
+    );
+  }
   return lines.join("\n");
 }
 

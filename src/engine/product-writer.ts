@@ -19,6 +19,7 @@ export class ProductWriter {
     product: string;
     dtype: string;
     unit?: string;
+    describe?: string;
     axes: readonly string[];
     shape: readonly number[];
   };
@@ -38,8 +39,9 @@ export class ProductWriter {
     this.#grid = gridOf(facts, plan, product);
     const { axes, shape } = arrayShape(this.#grid.facts, this.#grid.layout);
     const name = `${product.stem}.npy`;
-    const unit = product.unit === undefined ? {} : { unit: product.unit };
-    this.record = { file: name, product: product.id, dtype: product.dtype, ...unit, axes, shape };
+    const { id, dtype, unit, describe } = product;
+    const meaning = unit === undefined || describe === undefined ? {} : { unit, describe };
+    this.record = { file: name, product: id, dtype, ...meaning, axes, shape };
     this.#npy = set.createNpy(name, product.dtype, shape);
     if (outputs.pictures && product.picture)
       this.#picture = new PictureCollector(file, this.#grid, outputs, product);

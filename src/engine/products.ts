@@ -16,8 +16,9 @@ export interface Product {
   readonly dtype: "<f4" | "<c8";
   /** How its picture shows it: in grey, a share from 0 to 1, signed in colour, or not at all but as outline of those. */
   readonly picture: ValueKind | "share" | "colour" | "outline" | undefined;
-  /** Of the values, where they are no signal. */
+  /** Of the values, and what they are; of maps. */
   readonly unit?: string;
+  readonly describe?: string;
   /** Whether its picture leaves out what lies outside the outline. */
   readonly insideOnly?: boolean;
   /** Where its values come from: the combined images, the channels' images, or a map that a stage hands out. */
@@ -59,9 +60,18 @@ export function productsOf(plan: Plan, saves: readonly Save[]): Product[] {
 /** The maps that a plan's stages hand out. */
 export function mapProducts(plan: Plan): Product[] {
   return plan.stages.flatMap(({ maps }) =>
-    maps.map(({ name, unit, picture, insideOnly = false }): Product => {
+    maps.map(({ name, unit, describe, picture, insideOnly = false }): Product => {
       const shown = picture === "signed" ? "colour" : name === "field-mask" ? "outline" : picture;
-      return { id: name, stem: name, dtype: "<f4", unit, picture: shown, insideOnly, source: "map" };
+      return {
+        id: name,
+        stem: name,
+        dtype: "<f4",
+        unit,
+        describe,
+        picture: shown,
+        insideOnly,
+        source: "map",
+      };
     }),
   );
 }

@@ -1,5 +1,4 @@
 import { UsageError } from "../errors.js";
-import { objectField, resampleMap } from "../kernels/displacement.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { signalMask } from "../kernels/signal-mask.js";
 import {
@@ -22,15 +21,9 @@ import {
   signedPixelBandwidthHz,
 } from "./echo-frame.js";
 import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
+import { checkMap, givenField } from "./given-field.js";
 import { parseBySchema } from "./parameters.js";
-import {
-  axisLength,
-  type FrameStage,
-  type InputArray,
-  type Layout,
-  type StageContext,
-  withLength,
-} from "./stage.js";
+import { axisLength, type FrameStage, type Layout, withLength } from "./stage.js";
 
 interface Params {
   /** `measured`, or the file of a map in Hz. */
@@ -162,7 +155,13 @@ export const undisplace: FrameStage<Params> = {
     const size = images.rows * columns;
     const map = context.arrays.get(params.field);
     const field = map
-      ? givenField(map, params, images, columns, frame.layout, context)
+      ? givenField(
+          map,
+          { ...params, pixelHz: perPixelHz(params, frame.layout, scan, 0) },
+          images,
+          columns,
+          context,
+        )
       : context.emitted("field-hz")!;
     const out = context.allocate((frame.data.length / images.columns) * columns);
     const mask = new Float32Array(field.length);
@@ -206,19 +205,6 @@ export const undisplace: FrameStage<Params> = {
 /** Pixels above this share of the bright level are the object. */
 const OBJECT_SHARE = 0.1;
 
-/** @throws UsageError for a map whose axes are not those of the images */
-function checkMap({ file, shape }: InputArray, layout: Layout, scan: ScanFacts): void {
-  const leading = shape.slice(0, -2).reduce((product, length) => product * length, 1);
-  const partitions = axisLength(layout, "z");
-  const images = scan.lengths.slice * partitions;
-  if (shape.length < 2 || (leading !== 1 && leading !== images))
-    throw new UsageError(
-      { file, field: "shape", value: shape.join(" x ") },
-      `must be [y, x] or [${partitions > 1 ? "z" : "slice"}, y, x] with ${images} images`,
-      "Any matrix will do; it must cover the image's field of view",
-    );
-}
-
 /** Rows, and pixels of a row before and after, of the images as they are put back: turned where y is displaced. */
 function sizesAlong({ along }: Params, layout: Layout, columns: number): [number, number, number] {
   const rows = axisLength(layout, "y");
@@ -237,51 +223,6 @@ function perPixelHz(params: Params, layout: Layout, scan: ScanFacts, echo: numbe
 function mmPerHz(params: Params, layout: Layout, scan: ScanFacts): number {
   if (params.along === "readout") return pixelMm(layout) / pixelBandwidthHz(layout, scan);
   return layout.fovMm.y / axisLength(layout, "y") / perPixelHz(params, layout, scan, 0);
-}
-
-/** A given map on the grid of the images in the reconstructed field of view, object's coordinates, [slice, z, y, x]. */
-function givenField(
-  map: InputArray,
-  params: Params,
-  images: EchoFrame,
-  columns: number,
-  layout: Layout,
-  context: StageContext,
-): Float32Array {
-  const [rows, length] = map.shape.slice(-2) as [number, number];
-  const { scan, counters } = context;
-  const size = images.rows * columns;
-  const out = new Float32Array(images.slices * images.partitions * size);
-  for (let slice = 0; slice < images.slices; slice++)
-    for (let z = 0; z < images.partitions; z++) {
-      const counter = images.slices > 1 ? slice : counters.slice;
-      const isSingle = map.data.length === rows * length;
-      const from = isSingle ? 0 : (counter * images.partitions + z) * rows * length;
-      const given = map.data.subarray(from, from + rows * length);
-      const resampled = resampleMap(given, rows, length, images.rows, columns);
-      const hz = perPixelHz(params, layout, scan, 0);
-      const field =
-        params.coordinates === "object" ? resampled : toObject(params, resampled, images.rows, columns, hz);
-      out.set(field, (slice * images.partitions + z) * size);
-    }
-  return out;
-}
-
-/** A map in the coordinates of the displaced image carried to those of the object. */
-function toObject(
-  params: Params,
-  map: Float32Array,
-  rows: number,
-  columns: number,
-  hz: number,
-): Float32Array {
-  if (params.along === "readout") return objectField(map, rows, columns, hz).fieldHz;
-  const turned = objectField(transposed(map, rows, columns), columns, rows, hz).fieldHz;
-  return transposed(turned, columns, rows);
-}
-
-function transposed(map: Float32Array, rows: number, columns: number): Float32Array {
-  return map.map((_, i) => map[(i % rows) * columns + Math.floor(i / rows)]!);
 }
 
 /** The plan of an echo; those displaced alike, at the same time, share one. */
