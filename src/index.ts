@@ -39,6 +39,7 @@ export {
   windowFigures,
 } from "./kernels/point-spread.js";
 export { parseWindow, type WindowSpec, windowValues } from "./kernels/window.js";
+export { type EchoBudget, echoBudgets, type PlannedEcho } from "./physics/echo-budget.js";
 export type { Axis, FrameAxis, SpatialAxis, Xyz } from "./physics/layout.js";
 export {
   type Budget,

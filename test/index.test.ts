@@ -13,6 +13,7 @@ test("what the library exports is what others build on: a change here is a chang
     "budgetPoint",
     "continuousWindow",
     "defaultRecipe",
+    "echoBudgets",
     "formatRecipe",
     "outputSettings",
     "parseWindow",

@@ -67,3 +67,29 @@ export function spectrumSignal(
   }
   return [re, im];
 }
+
+/** The spectrum with its main peak at `mainPpm` and all others moved with it: water moves with temperature, fat does not. */
+export function fatSpectrumAt(mainPpm: number): readonly SpectralPeak[] {
+  const move = mainPpm - FAT_MAIN_PEAK_PPM;
+  return FAT_SPECTRUM.map(({ ppm, share }) => ({ ppm: ppm + move, share }));
+}
+
+/**
+ * The echo time, seconds, at which a spectrum is most opposed to water: where the real part of its signal is least, near
+ * the opposed phase of its main peak, `offsetHz` from water.
+ */
+export function mostOpposedEchoSeconds(
+  peaks: readonly SpectralPeak[],
+  resonanceHz: number,
+  offsetHz: number,
+): number {
+  const real = (seconds: number) => spectrumSignal(peaks, resonanceHz, seconds)[0];
+  let from = 0.5 * opposedPhaseEchoSeconds(offsetHz);
+  let to = 3 * from;
+  for (let i = 0; i < 60; i++) {
+    const third = (to - from) / 3;
+    if (real(from + third) < real(to - third)) to -= third;
+    else from += third;
+  }
+  return (from + to) / 2;
+}

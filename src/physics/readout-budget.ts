@@ -7,9 +7,9 @@ import {
 } from "./bandwidth.js";
 import {
   chemicalShiftHz,
-  FAT_MAIN_PEAK_PPM,
   inPhaseEchoSeconds,
   opposedPhaseEchoSeconds,
+  shiftPixels,
 } from "./chemical-shift.js";
 import { concomitantOffsetHz } from "./concomitant-field.js";
 
@@ -20,7 +20,7 @@ export interface ReadoutPlan {
   /** Samples and field of view with oversampling. */
   readonly encodedSamples: number;
   readonly encodedFovMm: number;
-  /** Pixels and field of view that are kept. */
+  /** Pixels and field of view of the image. */
   readonly pixels: number;
   readonly fovMm: number;
   readonly dwellSeconds: number;
@@ -28,6 +28,8 @@ export interface ReadoutPlan {
 
 /** What the plan is to be judged by. */
 export interface BudgetQuestions {
+  /** Fat's main peak against water, ppm. */
+  readonly fatPpm: number;
   /** An offset of the field that nobody corrects, Hz. */
   readonly fieldErrorHz: number;
   /** Share of a pixel that a displacement may reach. */
@@ -38,7 +40,7 @@ export interface BudgetQuestions {
   readonly isocentreM: number;
 }
 
-/** One bandwidth and what follows from it. Displacements are those of a forward readout. */
+/** One bandwidth and what follows from it. Pixels are those of the image; displacements those of a forward readout. */
 export interface BudgetPoint {
   readonly pixelBandwidthHz: number;
   readonly bandwidthHz: number;
@@ -51,8 +53,9 @@ export interface BudgetPoint {
   readonly fieldErrorMm: number;
   /** Signal to noise against the plan's own bandwidth: the root of the ratio of sampling times. */
   readonly relativeSnr: number;
-  /** Full width at half maximum of the point spread with decay, pixels. */
+  /** Full width at half maximum of the point spread with decay. */
   readonly blurPixels: number;
+  readonly blurMm: number;
   /** Of the readout gradient at the distance from the isocentre, if the gradient is transverse. */
   readonly concomitantHz: number;
   readonly concomitantPixels: number;
@@ -65,6 +68,9 @@ export interface Budget {
   /** Smallest bandwidths per pixel that keep fat and the field error within the share of a pixel. */
   readonly smallestForFatHz: number;
   readonly smallestForFieldErrorHz: number;
+  /** The budget at those bandwidths; null where there is no offset. */
+  readonly atSmallestForFat: BudgetPoint | null;
+  readonly atSmallestForFieldError: BudgetPoint | null;
   readonly inPhaseSeconds: readonly number[];
   readonly opposedPhaseSeconds: readonly number[];
 }
@@ -74,14 +80,20 @@ const ECHO_TIMES = 4;
 
 /** What a readout plan costs and gives. Formulas and sources: bandwidth.ts, chemical-shift.ts, concomitant-field.ts. */
 export function readoutBudget(plan: ReadoutPlan, questions: BudgetQuestions): Budget {
-  const fatHz = chemicalShiftHz(FAT_MAIN_PEAK_PPM, plan.resonanceHz);
+  const fatHz = chemicalShiftHz(questions.fatPpm, plan.resonanceHz);
   const times = Array.from({ length: ECHO_TIMES }, (_, i) => i + 1);
+  const smallestForFatHz = Math.abs(fatHz) / questions.withinPixels;
+  const smallestForFieldErrorHz = Math.abs(questions.fieldErrorHz) / questions.withinPixels;
+  const at = (pixelHz: number) =>
+    pixelHz > 0 ? budgetPoint(plan, questions, dwellSecondsAt(plan, pixelHz)) : null;
   return {
     present: budgetPoint(plan, questions, plan.dwellSeconds),
     fatHz,
     fieldErrorHz: questions.fieldErrorHz,
-    smallestForFatHz: Math.abs(fatHz) / questions.withinPixels,
-    smallestForFieldErrorHz: Math.abs(questions.fieldErrorHz) / questions.withinPixels,
+    smallestForFatHz,
+    smallestForFieldErrorHz,
+    atSmallestForFat: at(smallestForFatHz),
+    atSmallestForFieldError: at(smallestForFieldErrorHz),
     inPhaseSeconds: times.map((count) => inPhaseEchoSeconds(fatHz, count)),
     opposedPhaseSeconds: times.map((count) => opposedPhaseEchoSeconds(fatHz, count)),
   };
@@ -94,12 +106,15 @@ export function budgetPoint(
   dwellSeconds: number,
 ): BudgetPoint {
   const bandwidthHz = readoutBandwidthHz(dwellSeconds);
-  // Hz per pixel of the image: the encoded pixel where nothing is interpolated.
   const pixelMm = plan.fovMm / plan.pixels;
   const pixelBandwidthHz = (bandwidthHz * pixelMm) / plan.encodedFovMm;
   const gradientTPerM = readoutGradientTPerM(bandwidthHz, plan.encodedFovMm * 1e-3);
-  const fatPixels = chemicalShiftHz(FAT_MAIN_PEAK_PPM, plan.resonanceHz) / pixelBandwidthHz;
-  const fieldErrorPixels = questions.fieldErrorHz / pixelBandwidthHz;
+  const fatPixels = shiftPixels(chemicalShiftHz(questions.fatPpm, plan.resonanceHz), pixelBandwidthHz);
+  const fieldErrorPixels = shiftPixels(questions.fieldErrorHz, pixelBandwidthHz);
+  // Samples limit the resolution, so the blur is one of acquired pixels: an interpolated image has more of them.
+  const acquiredMm = plan.encodedFovMm / plan.encodedSamples;
+  const blurMm =
+    acquiredMm * t2StarBlurWidthPixels(questions.t2StarSeconds, bandwidthHz / plan.encodedSamples);
   const concomitantHz = concomitantOffsetHz([gradientTPerM, 0, 0], [0, 0, questions.isocentreM], plan.fieldT);
   return {
     pixelBandwidthHz,
@@ -112,17 +127,22 @@ export function budgetPoint(
     fieldErrorPixels,
     fieldErrorMm: fieldErrorPixels * pixelMm,
     relativeSnr: Math.sqrt(dwellSeconds / plan.dwellSeconds),
-    blurPixels: t2StarBlurWidthPixels(questions.t2StarSeconds, pixelBandwidthHz),
+    blurPixels: blurMm / pixelMm,
+    blurMm,
     concomitantHz,
     concomitantPixels: concomitantHz / pixelBandwidthHz,
   };
 }
 
+/** The dwell time of a bandwidth per pixel of the image. */
+export function dwellSecondsAt(plan: ReadoutPlan, pixelHz: number): number {
+  return plan.fovMm / plan.pixels / (pixelHz * plan.encodedFovMm);
+}
+
 /** Dwell times whose bandwidths per pixel are spaced evenly on a logarithmic scale, from `lowHz` to `highHz`. */
 export function sweepDwellSeconds(plan: ReadoutPlan, lowHz: number, highHz: number, count: number): number[] {
-  const dwellAt = (pixelHz: number) => plan.fovMm / plan.pixels / (pixelHz * plan.encodedFovMm);
   return Array.from({ length: count }, (_, i) =>
-    dwellAt(count === 1 ? lowHz : lowHz * (highHz / lowHz) ** (i / (count - 1))),
+    dwellSecondsAt(plan, count === 1 ? lowHz : lowHz * (highHz / lowHz) ** (i / (count - 1))),
   );
 }
 
