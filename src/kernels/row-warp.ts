@@ -1,5 +1,5 @@
 import { besselI0 } from "./special-functions.js";
-import type { TransformEngine } from "./transform.js";
+import type { Taps, TransformEngine } from "./transform.js";
 
 /**
  * Band-limited resampling of image rows at displaced places, and its transpose.
@@ -17,10 +17,8 @@ export interface RowWarp {
   readonly inputLength: number;
   /** Places per row. */
   readonly outputLength: number;
-  /** First fine grid point under the kernel, [rows, outputLength]; may lie outside [0, 2 inputLength). */
-  readonly start: Int32Array;
-  /** Kernel values, [rows, outputLength, 6]; all zero for a place outside the image. */
-  readonly taps: Float32Array;
+  /** On the fine grid of 2 inputLength points. */
+  readonly taps: Taps;
   /** Gain of each k of a row: one over the transform of the kernel. */
   readonly gain: Float32Array;
   /** Places that fall outside the image and read as zero. */
@@ -44,7 +42,7 @@ export function warpLengths(inputLength: number): number[] {
 export function planRowWarp(places: ArrayLike<number>, rows: number, inputLength: number): RowWarp {
   const outputLength = places.length / rows;
   const start = new Int32Array(places.length);
-  const taps = new Float32Array(places.length * TAPS);
+  const taps = new Float32Array(places.length * TAPS + 2);
   const table = TABLE;
   const lowest = -Math.floor(inputLength / 2) - 0.5;
   let outside = 0;
@@ -64,7 +62,7 @@ export function planRowWarp(places: ArrayLike<number>, rows: number, inputLength
       taps[i * TAPS + t] = table[from]! + share * (table[from + TAPS]! - table[from]!);
     }
   }
-  return { rows, inputLength, outputLength, start, taps, gain: kernelGain(inputLength), outside };
+  return { rows, inputLength, outputLength, taps: { start, taps }, gain: kernelGain(inputLength), outside };
 }
 
 /**
@@ -103,10 +101,10 @@ export function gatherLines(
   lines: Float32Array,
   target: Float32Array,
 ): void {
-  const { rows, inputLength, outputLength, start, taps } = warp;
+  const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length, false);
-  scaleLines(lines, warp.gain);
+  scaleLines(engine, lines, warp.gain);
   engine.transformAxis({
     source: lines,
     target: grid,
@@ -117,6 +115,14 @@ export function gatherLines(
     inverse: true,
     scale: Math.sqrt(OVERSAMPLING),
   });
+  if (!engine.loops?.gatherTaps(grid, warp.taps, rows, target)) gatherPlainly(warp, grid, target);
+  engine.release(grid);
+}
+
+function gatherPlainly(warp: RowWarp, grid: Float32Array, target: Float32Array): void {
+  const { rows, inputLength, outputLength } = warp;
+  const { start, taps } = warp.taps;
+  const length = OVERSAMPLING * inputLength;
   for (let row = 0, i = 0; row < rows; row++) {
     const base = 2 * row * length;
     for (let p = 0; p < outputLength; p++, i++) {
@@ -157,7 +163,6 @@ export function gatherLines(
       target[2 * i + 1] = im;
     }
   }
-  engine.release(grid);
 }
 
 /**
@@ -171,9 +176,28 @@ export function scatterRows(
   values: Float32Array,
   lines: Float32Array,
 ): void {
-  const { rows, inputLength, outputLength, start, taps } = warp;
+  const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length);
+  if (!engine.loops?.scatterTaps(grid, warp.taps, rows, values)) scatterPlainly(warp, grid, values);
+  engine.transformAxis({
+    source: grid,
+    target: lines,
+    outer: rows,
+    inner: 1,
+    length,
+    outputLength: inputLength,
+    inverse: false,
+    scale: Math.sqrt(OVERSAMPLING),
+  });
+  engine.release(grid);
+  scaleLines(engine, lines, warp.gain);
+}
+
+function scatterPlainly(warp: RowWarp, grid: Float32Array, values: Float32Array): void {
+  const { rows, inputLength, outputLength } = warp;
+  const { start, taps } = warp.taps;
+  const length = OVERSAMPLING * inputLength;
   for (let row = 0, i = 0; row < rows; row++) {
     const base = 2 * row * length;
     for (let p = 0; p < outputLength; p++, i++) {
@@ -210,21 +234,10 @@ export function scatterRows(
       }
     }
   }
-  engine.transformAxis({
-    source: grid,
-    target: lines,
-    outer: rows,
-    inner: 1,
-    length,
-    outputLength: inputLength,
-    inverse: false,
-    scale: Math.sqrt(OVERSAMPLING),
-  });
-  engine.release(grid);
-  scaleLines(lines, warp.gain);
 }
 
-function scaleLines(lines: Float32Array, gain: Float32Array): void {
+function scaleLines(engine: TransformEngine, lines: Float32Array, gain: Float32Array): void {
+  if (engine.loops?.scaleRows(lines, gain)) return;
   const length = gain.length;
   for (let at = 0; at < lines.length; ) {
     for (let k = 0; k < length; k++, at += 2) {

@@ -22,7 +22,39 @@ export interface AxisTransform {
   readonly scale?: number;
 }
 
+/** Where the kernel of each place lies on a grid, and its values there. */
+export interface Taps {
+  /** First grid point under the kernel, [rows, places]; may lie outside the row, which is periodic. */
+  readonly start: Int32Array;
+  /** [rows, places, 6], and two more floats; all zero for a place outside the image. */
+  readonly taps: Float32Array;
+}
+
+/**
+ * Loops beside the transforms that an engine may do faster than plain ones: each returns false where its arrays do not
+ * lie in the engine's memory, and the caller does it itself. The two agree to float32 rounding.
+ */
+export interface FastLoops {
+  /** Read rows of a periodic grid at places; see row-warp.ts. `target` is [rows, places of a row]. */
+  gatherTaps(grid: Float32Array, taps: Taps, rows: number, target: Float32Array): boolean;
+  /** The transpose: add values at places to the rows of a grid. */
+  scatterTaps(grid: Float32Array, taps: Taps, rows: number, values: Float32Array): boolean;
+  /** `values *= factors`, complex; the factors serve many values. */
+  multiplyComplex(values: Float32Array, factors: Float32Array): boolean;
+  /** Complex rows times a real gain for each sample of a row. */
+  scaleRows(rows: Float32Array, gain: Float32Array): boolean;
+  /** `target += conj(weights) source` of complex samples, `source` and `target` from the given floats on. */
+  addWeighted(
+    source: Float32Array,
+    from: number,
+    weights: Float32Array,
+    target: Float32Array,
+    to: number,
+  ): boolean;
+}
+
 export interface TransformEngine {
+  readonly loops?: FastLoops;
   readonly id: "plain" | "simd";
   /**
    * Floats that this engine can transform fastest.
