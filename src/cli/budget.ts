@@ -59,19 +59,21 @@ export const budget: Command = {
   async run(flags, terminal, signal) {
     const { readoutBudget, budgetPoint, sweepDwellSeconds } = await import("../physics/readout-budget.js");
     const { budgetTable, budgetRows } = await import("./budget-table.js");
+    const asked = sweepOf(flags);
     const { plan, source, directions } = await planOf(flags, terminal, signal);
     const questions = questionsOf(flags, plan);
     await refuseImpossible(flags, plan);
     const found = readoutBudget(plan, questions);
-    const points = sweepOf(flags, found.present.pixelBandwidthHz, (low, high, count) =>
-      sweepDwellSeconds(plan, low, high, count),
-    ).map((dwell) => budgetPoint(plan, questions, dwell));
+    const presentHz = found.present.pixelBandwidthHz;
+    const { low, high, count } = asked ?? { low: presentHz / 4, high: presentHz * 4, count: 9 };
+    const points = sweepDwellSeconds(plan, low, high, count).map((dwell) =>
+      budgetPoint(plan, questions, dwell),
+    );
     const most = flags["max-gradient"] as number | undefined;
     const sweep = points.map((point) => ({
       ...point,
       withinGradient: most === undefined || point.gradientTPerM <= 1e-3 * most,
     }));
-    const [low, high] = [points[0]!.pixelBandwidthHz, points.at(-1)!.pixelBandwidthHz];
     const curve = sweepDwellSeconds(plan, low, high, CURVE_POINTS).map((dwell) =>
       budgetPoint(plan, questions, dwell),
     );
@@ -221,18 +223,14 @@ function digits(value: number): string {
   return String(Number(value.toPrecision(4)));
 }
 
-/** @param dwells dwell times from the lowest to the highest bandwidth */
-function sweepOf(
-  flags: Flags,
-  presentHz: number,
-  dwells: (low: number, high: number, count: number) => number[],
-): number[] {
+/** Bandwidths per pixel to go through; those about the present one if left out. @throws UsageError */
+function sweepOf(flags: Flags): { low: number; high: number; count: number } | undefined {
   const text = flags.sweep as string | undefined;
-  if (text === undefined) return dwells(presentHz / 4, presentHz * 4, 9);
+  if (text === undefined) return undefined;
   const [low, high, count, ...more] = text.split(":").map(Number);
   const isRight =
     more.length === 0 && low! > 0 && high! > low! && Number.isInteger(count) && count! >= 2 && count! <= 1000;
-  if (isRight) return dwells(low!, high!, count!);
+  if (isRight) return { low: low!, high: high!, count: count! };
   throw new UsageError(
     { field: "--sweep", value: text },
     "must be two bandwidths per pixel, the lower first, and a count of 2 to 1000",
