@@ -89,8 +89,7 @@ export function combineEchoes(
       for (let e = 0; e < echoes.length; e++) {
         const { data, start, coilStride, rowStride } = echoes[e]!;
         const from = start + coil * coilStride + y * rowStride;
-        if (!engine.loops?.addWeighted(data, from, line, out[e]!, 2 * y * columns))
-          addWeighted(data, from, line, out[e]!, 2 * y * columns);
+        engine.loops.addWeighted(data, from, line, out[e]!, 2 * y * columns);
       }
     }
     scaleRow(out, 2 * y * columns, knots, across, coils);
@@ -99,22 +98,6 @@ export function combineEchoes(
   const combined = out.map((image) => image.slice());
   for (const image of out) engine.release(image);
   return combined;
-}
-
-/** `target += conj(weight) source`, along one line, from the given floats on. */
-function addWeighted(
-  source: Float32Array,
-  from: number,
-  weight: Float32Array,
-  target: Float32Array,
-  to: number,
-): void {
-  for (let i = 0; i < weight.length; i += 2) {
-    const re = source[from + i]!;
-    const im = source[from + i + 1]!;
-    target[to + i]! += weight[i]! * re + weight[i + 1]! * im;
-    target[to + i + 1]! += weight[i]! * im - weight[i + 1]! * re;
-  }
 }
 
 interface Cells {

@@ -104,7 +104,7 @@ export function gatherLines(
   const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length, false);
-  scaleLines(engine, lines, warp.gain);
+  engine.loops.scaleRows(lines, warp.gain);
   engine.transformAxis({
     source: lines,
     target: grid,
@@ -115,54 +115,8 @@ export function gatherLines(
     inverse: true,
     scale: Math.sqrt(OVERSAMPLING),
   });
-  if (!engine.loops?.gatherTaps(grid, warp.taps, rows, target)) gatherPlainly(warp, grid, target);
+  engine.loops.gatherTaps(grid, warp.taps, rows, target);
   engine.release(grid);
-}
-
-function gatherPlainly(warp: RowWarp, grid: Float32Array, target: Float32Array): void {
-  const { rows, inputLength, outputLength } = warp;
-  const { start, taps } = warp.taps;
-  const length = OVERSAMPLING * inputLength;
-  for (let row = 0, i = 0; row < rows; row++) {
-    const base = 2 * row * length;
-    for (let p = 0; p < outputLength; p++, i++) {
-      const first = start[i]!;
-      let re = 0;
-      let im = 0;
-      if (first >= 0 && first + TAPS <= length) {
-        const at = base + 2 * first;
-        const k = i * TAPS;
-        const a = taps[k]!;
-        const b = taps[k + 1]!;
-        const c = taps[k + 2]!;
-        const d = taps[k + 3]!;
-        const e = taps[k + 4]!;
-        const f = taps[k + 5]!;
-        re =
-          a * grid[at]! +
-          b * grid[at + 2]! +
-          c * grid[at + 4]! +
-          d * grid[at + 6]! +
-          e * grid[at + 8]! +
-          f * grid[at + 10]!;
-        im =
-          a * grid[at + 1]! +
-          b * grid[at + 3]! +
-          c * grid[at + 5]! +
-          d * grid[at + 7]! +
-          e * grid[at + 9]! +
-          f * grid[at + 11]!;
-      } else {
-        for (let t = 0, k = i * TAPS; t < TAPS; t++, k++) {
-          const at = base + 2 * ((first + t + length) % length); // the grid is periodic
-          re += taps[k]! * grid[at]!;
-          im += taps[k]! * grid[at + 1]!;
-        }
-      }
-      target[2 * i] = re;
-      target[2 * i + 1] = im;
-    }
-  }
 }
 
 /**
@@ -179,7 +133,7 @@ export function scatterRows(
   const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length);
-  if (!engine.loops?.scatterTaps(grid, warp.taps, rows, values)) scatterPlainly(warp, grid, values);
+  engine.loops.scatterTaps(grid, warp.taps, rows, values);
   engine.transformAxis({
     source: grid,
     target: lines,
@@ -191,60 +145,7 @@ export function scatterRows(
     scale: Math.sqrt(OVERSAMPLING),
   });
   engine.release(grid);
-  scaleLines(engine, lines, warp.gain);
-}
-
-function scatterPlainly(warp: RowWarp, grid: Float32Array, values: Float32Array): void {
-  const { rows, inputLength, outputLength } = warp;
-  const { start, taps } = warp.taps;
-  const length = OVERSAMPLING * inputLength;
-  for (let row = 0, i = 0; row < rows; row++) {
-    const base = 2 * row * length;
-    for (let p = 0; p < outputLength; p++, i++) {
-      const first = start[i]!;
-      const re = values[2 * i]!;
-      const im = values[2 * i + 1]!;
-      if (first >= 0 && first + TAPS <= length) {
-        const at = base + 2 * first;
-        const k = i * TAPS;
-        const a = taps[k]!;
-        const b = taps[k + 1]!;
-        const c = taps[k + 2]!;
-        const d = taps[k + 3]!;
-        const e = taps[k + 4]!;
-        const f = taps[k + 5]!;
-        grid[at]! += a * re;
-        grid[at + 1]! += a * im;
-        grid[at + 2]! += b * re;
-        grid[at + 3]! += b * im;
-        grid[at + 4]! += c * re;
-        grid[at + 5]! += c * im;
-        grid[at + 6]! += d * re;
-        grid[at + 7]! += d * im;
-        grid[at + 8]! += e * re;
-        grid[at + 9]! += e * im;
-        grid[at + 10]! += f * re;
-        grid[at + 11]! += f * im;
-      } else {
-        for (let t = 0, k = i * TAPS; t < TAPS; t++, k++) {
-          const at = base + 2 * ((first + t + length) % length);
-          grid[at]! += taps[k]! * re;
-          grid[at + 1]! += taps[k]! * im;
-        }
-      }
-    }
-  }
-}
-
-function scaleLines(engine: TransformEngine, lines: Float32Array, gain: Float32Array): void {
-  if (engine.loops?.scaleRows(lines, gain)) return;
-  const length = gain.length;
-  for (let at = 0; at < lines.length; ) {
-    for (let k = 0; k < length; k++, at += 2) {
-      lines[at]! *= gain[k]!;
-      lines[at + 1]! *= gain[k]!;
-    }
-  }
+  engine.loops.scaleRows(lines, warp.gain);
 }
 
 /** The six kernel values for each offset of the first grid point under the kernel, [TABLE_STEPS + 2, TAPS]; peak 1. */

@@ -1,5 +1,6 @@
+import { PLAIN_LOOPS } from "./plain-loops.js";
 import type { SimdInstance } from "./simd-module.js";
-import type { FastLoops, Taps } from "./transform.js";
+import type { Loops, Taps } from "./transform.js";
 
 /** Memory that arrays are brought into. */
 interface Memory {
@@ -10,8 +11,8 @@ interface Memory {
 /** Arrays that stay in the memory: those of the plans in use, which serve many images one after the other. */
 const KEPT = 12;
 
-/** The loops of row-warp.ts and combine-echoes.ts in WebAssembly SIMD. */
-export function createSimdLoops({ run, locate }: SimdInstance, memory: Memory): FastLoops {
+/** The loops in WebAssembly SIMD; the plain ones where there is no room in the memory. */
+export function createSimdLoops({ run, locate }: SimdInstance, memory: Memory): Loops {
   const kept = new Kept(memory);
   /** Call with the addresses of taps and values, which are copied in where they lie elsewhere. */
   const warp = (
@@ -39,31 +40,32 @@ export function createSimdLoops({ run, locate }: SimdInstance, memory: Memory): 
     return canRun;
   };
   return {
-    gatherTaps: (grid, taps, rows, target) =>
-      warp(grid, taps, target, true, (g, s, t, y) =>
+    gatherTaps(grid, taps, rows, target) {
+      const isDone = warp(grid, taps, target, true, (g, s, t, y) =>
         run.gatherTaps(g, s, t, y, rows, grid.length / (2 * rows), taps.start.length / rows),
-      ),
-    scatterTaps: (grid, taps, rows, values) =>
-      warp(grid, taps, values, false, (g, s, t, x) =>
+      );
+      if (!isDone) PLAIN_LOOPS.gatherTaps(grid, taps, rows, target);
+    },
+    scatterTaps(grid, taps, rows, values) {
+      const isDone = warp(grid, taps, values, false, (g, s, t, x) =>
         run.scatterTaps(g, s, t, x, rows, grid.length / (2 * rows), taps.start.length / rows),
-      ),
+      );
+      if (!isDone) PLAIN_LOOPS.scatterTaps(grid, taps, rows, values);
+    },
     multiplyComplex(values, factors) {
       const [y, x] = [locate(values), locate(kept.of(factors))];
-      if (x < 0 || y < 0) return false;
-      run.multiplyComplex(y, x, values.length / 2);
-      return true;
+      if (x < 0 || y < 0) PLAIN_LOOPS.multiplyComplex(values, factors);
+      else run.multiplyComplex(y, x, values.length / 2);
     },
     scaleRows(rows, gain) {
       const [y, x] = [locate(rows), locate(kept.of(gain))];
-      if (x < 0 || y < 0) return false;
-      run.multiplyAxis(y, y, x, gain.length, 1, rows.length / (2 * gain.length), 8 * gain.length);
-      return true;
+      if (x < 0 || y < 0) PLAIN_LOOPS.scaleRows(rows, gain);
+      else run.multiplyAxis(y, y, x, gain.length, 1, rows.length / (2 * gain.length), 8 * gain.length);
     },
     addWeighted(source, from, weights, target, to) {
       const [x, w, y] = [locate(source), locate(weights), locate(target)];
-      if (x < 0 || w < 0 || y < 0) return false;
-      run.addWeighted(x + 4 * from, w, y + 4 * to, weights.length / 2);
-      return true;
+      if (x < 0 || w < 0 || y < 0) PLAIN_LOOPS.addWeighted(source, from, weights, target, to);
+      else run.addWeighted(x + 4 * from, w, y + 4 * to, weights.length / 2);
     },
   };
 }

@@ -4,7 +4,7 @@ import { createSimdLoops } from "./simd-loops.js";
 import { SimdInstance, simdModule } from "./simd-module.js";
 import { type Plan, PlanBook } from "./simd-plan.js";
 import { PrivateRegion, type RegionPlace } from "./simd-region.js";
-import type { AxisTransform, FastLoops, TransformEngine } from "./transform.js";
+import type { AxisTransform, Loops, TransformEngine } from "./transform.js";
 
 /** What another thread needs to build an engine on this memory; all of it can be posted. */
 export interface SimdPlace extends RegionPlace {
@@ -33,7 +33,7 @@ interface Run extends AxisLengths {
  */
 export class SimdEngine implements TransformEngine {
   readonly id = "simd";
-  readonly loops: FastLoops;
+  readonly loops: Loops;
   private readonly book: PlanBook;
 
   constructor(

@@ -30,19 +30,16 @@ export interface Taps {
   readonly taps: Float32Array;
 }
 
-/**
- * Loops beside the transforms that an engine may do faster than plain ones: each returns false where its arrays do not
- * lie in the engine's memory, and the caller does it itself. The two agree to float32 rounding.
- */
-export interface FastLoops {
+/** Loops beside the transforms that engines do: float32 operations in a fixed order, the same bits in all of them. */
+export interface Loops {
   /** Read rows of a periodic grid at places; see row-warp.ts. `target` is [rows, places of a row]. */
-  gatherTaps(grid: Float32Array, taps: Taps, rows: number, target: Float32Array): boolean;
+  gatherTaps(grid: Float32Array, taps: Taps, rows: number, target: Float32Array): void;
   /** The transpose: add values at places to the rows of a grid. */
-  scatterTaps(grid: Float32Array, taps: Taps, rows: number, values: Float32Array): boolean;
-  /** `values *= factors`, complex; the factors serve many values. */
-  multiplyComplex(values: Float32Array, factors: Float32Array): boolean;
-  /** Complex rows times a real gain for each sample of a row. */
-  scaleRows(rows: Float32Array, gain: Float32Array): boolean;
+  scatterTaps(grid: Float32Array, taps: Taps, rows: number, values: Float32Array): void;
+  /** `values *= factors`, complex. The factors serve many values, and must not change between them. */
+  multiplyComplex(values: Float32Array, factors: Float32Array): void;
+  /** Complex rows times a real gain for each sample of a row; the gains as the factors. */
+  scaleRows(rows: Float32Array, gain: Float32Array): void;
   /** `target += conj(weights) source` of complex samples, `source` and `target` from the given floats on. */
   addWeighted(
     source: Float32Array,
@@ -50,11 +47,11 @@ export interface FastLoops {
     weights: Float32Array,
     target: Float32Array,
     to: number,
-  ): boolean;
+  ): void;
 }
 
 export interface TransformEngine {
-  readonly loops?: FastLoops;
+  readonly loops: Loops;
   readonly id: "plain" | "simd";
   /**
    * Floats that this engine can transform fastest.
