@@ -89,7 +89,13 @@ export async function writeComparison(
     const compared = await reconstructVariants(file, variants, options);
     const reference = compared.variants.find(({ name }) => name === referenceName)!;
     const settings = options.settings(reference, compared.shown);
-    const measured = measureVariants(compared.variants, reference, compared.shown, settings);
+    const measured = measureVariants(
+      compared.variants,
+      reference,
+      compared.shown,
+      settings,
+      compared.scan.facts,
+    );
     const input = await hashing;
     writeAll(set, { file, compared, reference, measured, settings, input });
     const outputs = await set.seal();
