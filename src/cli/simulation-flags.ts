@@ -84,7 +84,11 @@ export function inFlags(error: unknown, flags: Flags): unknown {
   const echo = /^echoTimesSeconds\[(\d+)\]$/.exec(field)?.[1];
   if (echo !== undefined) {
     const value = (flags["te-ms"] as number[] | undefined)?.[Number(echo)];
-    return new UsageError({ field: "--te-ms", value }, error.rule, error.mend, {
+    const rule = error.rule.replace(
+      /([\d.e-]+) s\b/,
+      (_, seconds) => `${Number((1e3 * seconds).toPrecision(6))} ms`,
+    );
+    return new UsageError({ field: "--te-ms", value }, rule, error.mend, {
       cause: error,
     });
   }

@@ -7,7 +7,8 @@ import {
 } from "../kernels/image-quality.js";
 import { type AxisWindow, sampledWindow, windowFigures } from "../kernels/point-spread.js";
 import { regionStatistics } from "../kernels/region.js";
-import { rssStandardDeviation } from "../physics/noise-statistics.js";
+import { noiseCovarianceFactor, rssStandardDeviation } from "../physics/noise-statistics.js";
+import type { ScanFacts } from "../physics/scan.js";
 import { lineGains } from "../stages/apodize.js";
 import { axisLength } from "../stages/stage.js";
 import type { VariantImages } from "./compare.js";
@@ -122,9 +123,10 @@ export function measureVariants(
   reference: VariantImages,
   shown: number,
   settings: MeasureSettings,
+  scan: ScanFacts,
 ): Measured {
   const edge = edgeOf(reference, shown, settings);
-  const noiseMaps = variants.map((variant) => propagatedNoise(variant, shown));
+  const noiseMaps = variants.map((variant) => propagatedNoise(variant, shown, scan));
   const all = joined(reference.images);
   const peak = all.reduce((most, value) => Math.max(most, value), 0);
   const measured = variants.map((variant, v) => {
@@ -236,17 +238,35 @@ function theoryOf(variant: VariantImages, axis: "x" | "y") {
 
 /**
  * Standard deviation of each pixel by propagation: noise keeps its gain through the linear stages; the root of the sum
- * of squares of n channels of that noise about the signal has the deviation of the noncentral chi distribution.
+ * of squares of n channels of that noise about the signal has the deviation of the noncentral chi distribution. Without whitening the
+ * channels' noise is taken as uncorrelated, of its root mean square over them; unknown without noise readouts.
  * Source: Kellman and McVeigh 2005, Magn Reson Med 54:1439; Constantinides et al. 1997, Magn Reson Med 38:852.
  */
-function propagatedNoise({ images, coils, noise }: VariantImages, shown: number): Float32Array {
-  const { gain } = noise;
+function propagatedNoise(
+  { images, coils, noise }: VariantImages,
+  shown: number,
+  scan: ScanFacts,
+): Float32Array {
+  const gain = noise.gain * (noise.whitened ? 1 : receiverNoise(scan));
   if (!(gain > 0)) return new Float32Array(images[shown]!.length);
   const deviationAt = deviationTable(coils);
   // The mean square of the magnitude is the signal's and that of the noise.
   return images[shown]!.map(
     (value) => gain * deviationAt(Math.sqrt(Math.max(0, (value / gain) ** 2 - 2 * coils))),
   );
+}
+
+/** Of a part of a stored sample, root mean square over the channels; 0 where no noise readouts tell. */
+function receiverNoise({
+  noise,
+  channels,
+  dwellSeconds,
+  relativeReceiverNoiseBandwidth: share,
+}: ScanFacts): number {
+  if (!noise) return 0;
+  let trace = 0;
+  for (let c = 0; c < channels; c++) trace += noise.covariance[2 * (c * channels + c)]!;
+  return Math.sqrt((trace * noiseCovarianceFactor(noise.dwellSeconds, dwellSeconds, share)) / (2 * channels));
 }
 
 const deviationTables = new Map<number, Float64Array>();
@@ -287,7 +307,7 @@ function noiseOf(
   return {
     noiseTheory: noiseTheory || undefined,
     noiseMeasured,
-    snr: regionStatistics(image, region).mean / noise,
+    snr: noise > 0 ? regionStatistics(image, region).mean / noise : undefined,
   };
 }
 

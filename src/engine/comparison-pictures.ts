@@ -44,8 +44,26 @@ export function imagesPicture({ file, compared, reference }: ComparisonParts, ra
     compared,
     `${path.basename(file)}: ${placeLabel(compared, reference)}`,
     "magnitude",
-    (variant) => onMatrix(variant, reference, compared.shown),
+    (variant) => onMatrix(variant, reference, variant.images[compared.shown]!),
     range,
+  );
+}
+
+/** Noise of the shown image under every variant on the reference's matrix, [variant, y, x]: measured where it was, else propagated. */
+export function noiseMaps({ compared, reference, measured }: ComparisonParts): Float32Array {
+  return joined(
+    compared.variants.map((variant, v) =>
+      onMatrix(variant, reference, variant.deviation ?? measured.noiseMaps[v]!),
+    ),
+  );
+}
+
+/** The same as a picture, at one grey range. */
+export function noisePicture({ compared, reference }: ComparisonParts, maps: Float32Array) {
+  const how = reference.deviation ? "over pseudo-replicas" : "by propagation";
+  const size = reference.height * reference.width;
+  return tiles(reference, compared, `standard deviation of the noise, ${how}`, "magnitude", (_, v) =>
+    maps.subarray(v * size, (v + 1) * size),
   );
 }
 
@@ -61,12 +79,12 @@ function tiles(
   { variants }: Compared,
   title: string,
   kind: "magnitude" | "signed",
-  valuesOf: (variant: VariantImages) => Float32Array,
+  valuesOf: (variant: VariantImages, v: number) => Float32Array,
   range?: GreyRange,
 ) {
   const { height, width } = reference;
   const values = new Float32Array(variants.length * height * width);
-  variants.forEach((variant, v) => void values.set(valuesOf(variant), v * height * width));
+  variants.forEach((variant, v) => void values.set(valuesOf(variant, v), v * height * width));
   return montage({
     values,
     rows: 1,
@@ -87,8 +105,7 @@ function shortName(name: string): string {
 }
 
 /** A variant of another matrix covers the same field of view: its pixels nearest to the reference's. */
-function onMatrix(variant: VariantImages, reference: VariantImages, shown: number): Float32Array {
-  const image = variant.images[shown]!;
+function onMatrix(variant: VariantImages, reference: VariantImages, image: Float32Array): Float32Array {
   const { height, width } = reference;
   if (variant.height === height && variant.width === width) return image;
   return Float32Array.from({ length: height * width }, (_, i) => {
@@ -100,7 +117,7 @@ function onMatrix(variant: VariantImages, reference: VariantImages, shown: numbe
 
 function differenceFrom(variant: VariantImages, reference: VariantImages, shown: number): Float32Array {
   const other = reference.images[shown]!;
-  return onMatrix(variant, reference, shown).map((value, i) => value - other[i]!);
+  return onMatrix(variant, reference, variant.images[shown]!).map((value, i) => value - other[i]!);
 }
 
 function placeLabel({ scan, places, shown }: Compared, reference: VariantImages): string {

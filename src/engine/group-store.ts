@@ -124,7 +124,9 @@ export class GroupStore {
         throw new UsageError(
           { field: "--memory" },
           `too little: one image needs ${Math.ceil((4 * floats) / 1e6)} MB of samples beside the blocks that are read`,
-          "Allow more memory",
+          this.#plan.together.includes("slice")
+            ? "Allow more memory, or take slices one by one: --set field-map.through-slices=false"
+            : "Allow more memory",
         );
       this.#deferred.add(group);
       return undefined;

@@ -48,7 +48,8 @@ export interface Pass {
   readonly crew: Crew;
   readonly memory: SampleMemory;
   readonly kernels: Kernels;
-  readonly budgetBytes: number;
+  /** Most memory for groups of samples. */
+  readonly sampleBytes: number;
   readonly timings: Timings;
   readonly blockRows: number;
   readonly keepCoils: (group: number) => boolean;
@@ -61,6 +62,9 @@ export interface Pass {
   readonly signal: AbortSignal | undefined;
   readonly progress: (done: number, total: number) => void;
 }
+
+/** The sample memory ends below 4 GiB; blocks on their way and results need some of it beside the groups. */
+const MOST_SAMPLE_BYTES = 3.5 * 2 ** 30;
 
 /** Blocks whose readouts are being processed at a time: what bounds the memory of samples on their way. */
 const BLOCKS_AHEAD = 12;
@@ -99,7 +103,9 @@ class PassRun {
   constructor(pass: Pass, finished: ReadonlySet<number>, use: UseGroup) {
     this.#pass = pass;
     this.#use = use;
-    const { plan, scan, memory, budgetBytes, expected } = pass;
+    const { plan, scan, memory, sampleBytes, expected } = pass;
+    // What plans, workers and their kernels have taken by now is not for samples.
+    const budgetBytes = Math.min(memory.usedBytes + sampleBytes, MOST_SAMPLE_BYTES);
     this.#store = new GroupStore(plan, scan, memory, budgetBytes, expected, finished);
   }
 

@@ -147,8 +147,7 @@ async function attemptRun<A extends Attempt>(
     plans: all.map((each) => each.plan),
     keepCoils: typeof keepCoils === "boolean" ? () => keepCoils : (group) => keepCoils(facts, plan, group),
     replicas: replicas && { ...replicas, groups: replicas.groups(facts, plan) },
-    // What plans and workers have taken already is not for samples.
-    budgetBytes: Math.min(memory.usedBytes + (options.memoryBytes ?? totalmem() / 4), MOST_SAMPLE_BYTES),
+    sampleBytes: options.memoryBytes ?? totalmem() / 4,
     expected: scan ? countedReadouts(scan, plan) : () => previewReadouts(facts, raw, plan.framesPerGroup),
     signal: options.signal,
     progress: options.progress ?? (() => undefined),
@@ -225,9 +224,6 @@ function transformLengths(plan: Plan): Set<number> {
   }
   return lengths;
 }
-
-/** The sample memory ends below 4 GiB; blocks on their way and results need some of it beside the groups. */
-const MOST_SAMPLE_BYTES = 3.5 * 2 ** 30;
 
 /** Bytes of samples that are read at a time: few enough to stay in a core's cache from one stage to the next. */
 const BLOCK_BYTES = 2 ** 20;

@@ -3,6 +3,7 @@ import { UsageError } from "../errors.js";
 import { VERSION } from "../version.js";
 import { chartPng, chartSvg } from "../writers/chart.js";
 import { csvText } from "../writers/csv.js";
+import { npyBytes } from "../writers/npy.js";
 import type { FileHashes } from "../writers/output-file.js";
 import { OutputSet } from "../writers/output-set.js";
 import {
@@ -20,6 +21,8 @@ import {
   differencesPicture,
   edgeChart,
   imagesPicture,
+  noiseMaps,
+  noisePicture,
   pageOf,
   spreadChart,
 } from "./comparison-pictures.js";
@@ -45,6 +48,8 @@ const NAMES = [
   "compare.csv",
   "images.png",
   "differences.png",
+  "noise.npy",
+  "noise.png",
   "edge-profiles.svg",
   "edge-profiles.png",
   "point-spreads.svg",
@@ -84,7 +89,13 @@ export async function writeComparison(
     const compared = await reconstructVariants(file, variants, options);
     const reference = compared.variants.find(({ name }) => name === referenceName)!;
     const settings = options.settings(reference, compared.shown);
-    const measured = measureVariants(compared.variants, reference, compared.shown, settings);
+    const measured = measureVariants(
+      compared.variants,
+      reference,
+      compared.shown,
+      settings,
+      compared.scan.facts,
+    );
     const input = await hashing;
     writeAll(set, { file, compared, reference, measured, settings, input });
     const outputs = await set.seal();
@@ -128,6 +139,14 @@ function document(
     remarks: measured.remarks,
     discrepancies: scan.discrepancies,
     columns: MEASURES,
+    arrays: [
+      {
+        file: "noise.npy",
+        axes: ["variant", "y", "x"],
+        describe:
+          "standard deviation of the noise of the shown image, measured where it was, else propagated",
+      },
+    ],
     variants: variants.map(({ name, recipe, plan, noise }, v) => ({
       name,
       values: measured.values[v],
@@ -151,6 +170,11 @@ function writeAll(set: OutputSet, parts: ComparisonParts): void {
   set.write("images.png", images.png, images.picture.pixels);
   const differences = differencesPicture(parts);
   set.write("differences.png", differences.png, differences.picture.pixels);
+  const maps = noiseMaps(parts);
+  const { height, width } = parts.reference;
+  set.write("noise.npy", npyBytes("<f4", [variants.length, height, width], maps));
+  const noise = noisePicture(parts, maps);
+  set.write("noise.png", noise.png, noise.picture.pixels);
   const charts = { "edge-profiles": edgeChart(measured), "point-spreads": spreadChart(variants, measured) };
   for (const [name, chart] of Object.entries(charts)) {
     set.write(`${name}.svg`, chartSvg(chart));

@@ -1,3 +1,5 @@
+import type { TransformEngine } from "./transform.js";
+
 /**
  * Combine the channels of several echoes with one set of complex weights per pixel, the same for all echoes, so that the
  * phases between echoes stay and the level is that of the root of the sum of squares.
@@ -72,10 +74,11 @@ export function combineEchoes(
   weights: ChannelWeights,
   rows: number,
   columns: number,
+  engine: TransformEngine,
 ): Float32Array[] {
   const { coils, block, blockRows, blockColumns } = weights;
-  const out = echoes.map(() => new Float32Array(2 * rows * columns));
-  const line = new Float64Array(2 * columns);
+  const out = echoes.map(() => engine.allocate(2 * rows * columns));
+  const line = engine.allocate(2 * columns, false);
   const across = cells(columns, block, blockColumns);
   const along = cells(rows, block, blockRows);
   const knots = new Float64Array(2 * coils * (blockColumns + 1));
@@ -85,28 +88,16 @@ export function combineEchoes(
       interpolateRow(knots.subarray(2 * coil * (blockColumns + 1)), across, line);
       for (let e = 0; e < echoes.length; e++) {
         const { data, start, coilStride, rowStride } = echoes[e]!;
-        addWeighted(data, start + coil * coilStride + y * rowStride, line, out[e]!, 2 * y * columns);
+        const from = start + coil * coilStride + y * rowStride;
+        engine.loops.addWeighted(data, from, line, out[e]!, 2 * y * columns);
       }
     }
     scaleRow(out, 2 * y * columns, knots, across, coils);
   }
-  return out;
-}
-
-/** `target += conj(weight) source`, along one line, from the given floats on. */
-function addWeighted(
-  source: Float32Array,
-  from: number,
-  weight: Float64Array,
-  target: Float32Array,
-  to: number,
-): void {
-  for (let i = 0; i < weight.length; i += 2) {
-    const re = source[from + i]!;
-    const im = source[from + i + 1]!;
-    target[to + i]! += weight[i]! * re + weight[i + 1]! * im;
-    target[to + i + 1]! += weight[i]! * im - weight[i + 1]! * re;
-  }
+  engine.release(line);
+  const combined = out.map((image) => image.slice());
+  for (const image of out) engine.release(image);
+  return combined;
 }
 
 interface Cells {
@@ -139,7 +130,7 @@ function rowKnots(weights: ChannelWeights, top: number, share: number, knots: Fl
 }
 
 /** Weights of one channel at the pixels of a row, interleaved complex, linear between its knots. */
-function interpolateRow(knots: Float64Array, across: Cells, line: Float64Array): void {
+function interpolateRow(knots: Float64Array, across: Cells, line: Float32Array): void {
   for (let x = 0, i = 0; i < line.length; x++, i += 2) {
     const a = 2 * across.cell[x]!;
     const u = across.share[x]!;

@@ -1,6 +1,7 @@
 import ndarray from "ndarray";
 import fft from "ndarray-fft";
 import { axisLengths } from "./axis-lengths.js";
+import { PLAIN_LOOPS } from "./plain-loops.js";
 import type { AxisTransform, TransformEngine } from "./transform.js";
 
 /**
@@ -10,6 +11,7 @@ import type { AxisTransform, TransformEngine } from "./transform.js";
 export function createPlainEngine(): TransformEngine {
   return {
     id: "plain",
+    loops: PLAIN_LOOPS,
     allocate: (floats) => new Float32Array(floats),
     release: () => {}, // the garbage collector's work
     transformAxis,

@@ -1,5 +1,5 @@
 import { besselI0 } from "./special-functions.js";
-import type { TransformEngine } from "./transform.js";
+import type { Taps, TransformEngine } from "./transform.js";
 
 /**
  * Band-limited resampling of image rows at displaced places, and its transpose.
@@ -17,10 +17,8 @@ export interface RowWarp {
   readonly inputLength: number;
   /** Places per row. */
   readonly outputLength: number;
-  /** First fine grid point under the kernel, [rows, outputLength]; may lie outside [0, 2 inputLength). */
-  readonly start: Int32Array;
-  /** Kernel values, [rows, outputLength, 6]; all zero for a place outside the image. */
-  readonly taps: Float32Array;
+  /** On the fine grid of 2 inputLength points. */
+  readonly taps: Taps;
   /** Gain of each k of a row: one over the transform of the kernel. */
   readonly gain: Float32Array;
   /** Places that fall outside the image and read as zero. */
@@ -44,7 +42,7 @@ export function warpLengths(inputLength: number): number[] {
 export function planRowWarp(places: ArrayLike<number>, rows: number, inputLength: number): RowWarp {
   const outputLength = places.length / rows;
   const start = new Int32Array(places.length);
-  const taps = new Float32Array(places.length * TAPS);
+  const taps = new Float32Array(places.length * TAPS + 2);
   const table = TABLE;
   const lowest = -Math.floor(inputLength / 2) - 0.5;
   let outside = 0;
@@ -64,7 +62,7 @@ export function planRowWarp(places: ArrayLike<number>, rows: number, inputLength
       taps[i * TAPS + t] = table[from]! + share * (table[from + TAPS]! - table[from]!);
     }
   }
-  return { rows, inputLength, outputLength, start, taps, gain: kernelGain(inputLength), outside };
+  return { rows, inputLength, outputLength, taps: { start, taps }, gain: kernelGain(inputLength), outside };
 }
 
 /**
@@ -103,10 +101,10 @@ export function gatherLines(
   lines: Float32Array,
   target: Float32Array,
 ): void {
-  const { rows, inputLength, outputLength, start, taps } = warp;
+  const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length, false);
-  scaleLines(lines, warp.gain);
+  engine.loops.scaleRows(lines, warp.gain);
   engine.transformAxis({
     source: lines,
     target: grid,
@@ -117,46 +115,7 @@ export function gatherLines(
     inverse: true,
     scale: Math.sqrt(OVERSAMPLING),
   });
-  for (let row = 0, i = 0; row < rows; row++) {
-    const base = 2 * row * length;
-    for (let p = 0; p < outputLength; p++, i++) {
-      const first = start[i]!;
-      let re = 0;
-      let im = 0;
-      if (first >= 0 && first + TAPS <= length) {
-        const at = base + 2 * first;
-        const k = i * TAPS;
-        const a = taps[k]!;
-        const b = taps[k + 1]!;
-        const c = taps[k + 2]!;
-        const d = taps[k + 3]!;
-        const e = taps[k + 4]!;
-        const f = taps[k + 5]!;
-        re =
-          a * grid[at]! +
-          b * grid[at + 2]! +
-          c * grid[at + 4]! +
-          d * grid[at + 6]! +
-          e * grid[at + 8]! +
-          f * grid[at + 10]!;
-        im =
-          a * grid[at + 1]! +
-          b * grid[at + 3]! +
-          c * grid[at + 5]! +
-          d * grid[at + 7]! +
-          e * grid[at + 9]! +
-          f * grid[at + 11]!;
-      } else {
-        for (let t = 0, k = i * TAPS; t < TAPS; t++, k++) {
-          const at = base + 2 * ((first + t + length) % length); // the grid is periodic
-          re += taps[k]! * grid[at]!;
-          im += taps[k]! * grid[at + 1]!;
-        }
-      }
-      target[2 * i] = re;
-      target[2 * i + 1] = im;
-    }
-  }
+  engine.loops.gatherTaps(grid, warp.taps, rows, target);
   engine.release(grid);
 }
 
@@ -171,45 +130,10 @@ export function scatterRows(
   values: Float32Array,
   lines: Float32Array,
 ): void {
-  const { rows, inputLength, outputLength, start, taps } = warp;
+  const { rows, inputLength } = warp;
   const length = OVERSAMPLING * inputLength;
   const grid = engine.allocate(2 * rows * length);
-  for (let row = 0, i = 0; row < rows; row++) {
-    const base = 2 * row * length;
-    for (let p = 0; p < outputLength; p++, i++) {
-      const first = start[i]!;
-      const re = values[2 * i]!;
-      const im = values[2 * i + 1]!;
-      if (first >= 0 && first + TAPS <= length) {
-        const at = base + 2 * first;
-        const k = i * TAPS;
-        const a = taps[k]!;
-        const b = taps[k + 1]!;
-        const c = taps[k + 2]!;
-        const d = taps[k + 3]!;
-        const e = taps[k + 4]!;
-        const f = taps[k + 5]!;
-        grid[at]! += a * re;
-        grid[at + 1]! += a * im;
-        grid[at + 2]! += b * re;
-        grid[at + 3]! += b * im;
-        grid[at + 4]! += c * re;
-        grid[at + 5]! += c * im;
-        grid[at + 6]! += d * re;
-        grid[at + 7]! += d * im;
-        grid[at + 8]! += e * re;
-        grid[at + 9]! += e * im;
-        grid[at + 10]! += f * re;
-        grid[at + 11]! += f * im;
-      } else {
-        for (let t = 0, k = i * TAPS; t < TAPS; t++, k++) {
-          const at = base + 2 * ((first + t + length) % length);
-          grid[at]! += taps[k]! * re;
-          grid[at + 1]! += taps[k]! * im;
-        }
-      }
-    }
-  }
+  engine.loops.scatterTaps(grid, warp.taps, rows, values);
   engine.transformAxis({
     source: grid,
     target: lines,
@@ -221,17 +145,7 @@ export function scatterRows(
     scale: Math.sqrt(OVERSAMPLING),
   });
   engine.release(grid);
-  scaleLines(lines, warp.gain);
-}
-
-function scaleLines(lines: Float32Array, gain: Float32Array): void {
-  const length = gain.length;
-  for (let at = 0; at < lines.length; ) {
-    for (let k = 0; k < length; k++, at += 2) {
-      lines[at]! *= gain[k]!;
-      lines[at + 1]! *= gain[k]!;
-    }
-  }
+  engine.loops.scaleRows(lines, warp.gain);
 }
 
 /** The six kernel values for each offset of the first grid point under the kernel, [TABLE_STEPS + 2, TAPS]; peak 1. */

@@ -42,6 +42,26 @@ export interface SimdExports {
   scale(x: number, count: number, factor: number): void;
   swapWords(x: number, count: number): void;
   addEnergy(x: number, row: number, rows: number, profile: number, count: number): void;
+  gatherTaps(
+    grid: number,
+    start: number,
+    taps: number,
+    y: number,
+    rows: number,
+    length: number,
+    count: number,
+  ): void;
+  scatterTaps(
+    grid: number,
+    start: number,
+    taps: number,
+    x: number,
+    rows: number,
+    length: number,
+    count: number,
+  ): void;
+  multiplyComplex(y: number, x: number, count: number): void;
+  addWeighted(x: number, weights: number, y: number, count: number): void;
   rootSumOfSquares(x: number, y: number, outer: number, channels: number, inner: number): void;
 }
 

@@ -1,9 +1,10 @@
 import { type AxisLengths, axisLengths } from "./axis-lengths.js";
 import { SampleMemory, SamplePart, type SampleSource } from "./sample-memory.js";
+import { createSimdLoops } from "./simd-loops.js";
 import { SimdInstance, simdModule } from "./simd-module.js";
 import { type Plan, PlanBook } from "./simd-plan.js";
 import { PrivateRegion, type RegionPlace } from "./simd-region.js";
-import type { AxisTransform, TransformEngine } from "./transform.js";
+import type { AxisTransform, Loops, TransformEngine } from "./transform.js";
 
 /** What another thread needs to build an engine on this memory; all of it can be posted. */
 export interface SimdPlace extends RegionPlace {
@@ -32,6 +33,7 @@ interface Run extends AxisLengths {
  */
 export class SimdEngine implements TransformEngine {
   readonly id = "simd";
+  readonly loops: Loops;
   private readonly book: PlanBook;
 
   constructor(
@@ -40,6 +42,7 @@ export class SimdEngine implements TransformEngine {
     private readonly samples: SampleSource,
   ) {
     this.book = new PlanBook(instance.region);
+    this.loops = createSimdLoops(instance, samples);
     instance.region.onEmptied(() => this.book.clear());
   }
 

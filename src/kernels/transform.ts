@@ -22,7 +22,36 @@ export interface AxisTransform {
   readonly scale?: number;
 }
 
+/** Where the kernel of each place lies on a grid, and its values there. */
+export interface Taps {
+  /** First grid point under the kernel, [rows, places]; may lie outside the row, which is periodic. */
+  readonly start: Int32Array;
+  /** [rows, places, 6], and two more floats; all zero for a place outside the image. */
+  readonly taps: Float32Array;
+}
+
+/** Loops beside the transforms that engines do: float32 operations in a fixed order, the same bits in all of them. */
+export interface Loops {
+  /** Read rows of a periodic grid at places; see row-warp.ts. `target` is [rows, places of a row]. */
+  gatherTaps(grid: Float32Array, taps: Taps, rows: number, target: Float32Array): void;
+  /** The transpose: add values at places to the rows of a grid. */
+  scatterTaps(grid: Float32Array, taps: Taps, rows: number, values: Float32Array): void;
+  /** `values *= factors`, complex. The factors serve many values, and must not change between them. */
+  multiplyComplex(values: Float32Array, factors: Float32Array): void;
+  /** Complex rows times a real gain for each sample of a row; the gains as the factors. */
+  scaleRows(rows: Float32Array, gain: Float32Array): void;
+  /** `target += conj(weights) source` of complex samples, `source` and `target` from the given floats on. */
+  addWeighted(
+    source: Float32Array,
+    from: number,
+    weights: Float32Array,
+    target: Float32Array,
+    to: number,
+  ): void;
+}
+
 export interface TransformEngine {
+  readonly loops: Loops;
   readonly id: "plain" | "simd";
   /**
    * Floats that this engine can transform fastest.

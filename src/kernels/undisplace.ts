@@ -183,7 +183,7 @@ function readFiner(
   const fine = engine.allocate(2 * fineRows * fineLength, false);
   gatherLines(engine, warp, lines, fine);
   engine.release(lines);
-  multiply(fine, off);
+  engine.loops.multiplyComplex(fine, off);
   // back to the output's resolution: the centre of k-space of the finer grid
   const half = engine.allocate(2 * fineRows * outputLength, false);
   engine.transformAxis({
@@ -225,17 +225,7 @@ function readFiner(
     length: rows,
     inverse: true,
   });
-  multiply(coarse, on);
+  engine.loops.multiplyComplex(coarse, on);
   target.set(coarse);
   engine.release(coarse);
-}
-
-/** `values *= factors`, both interleaved complex64. */
-function multiply(values: Float32Array, factors: Float32Array): void {
-  for (let i = 0; i < values.length; i += 2) {
-    const re = values[i]!;
-    const im = values[i + 1]!;
-    values[i] = re * factors[i]! - im * factors[i + 1]!;
-    values[i + 1] = re * factors[i + 1]! + im * factors[i]!;
-  }
 }

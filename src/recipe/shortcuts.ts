@@ -15,8 +15,10 @@ export interface Shortcuts {
 export function withShortcuts(recipe: Recipe, { undisplace, fieldCoordinates, separate }: Shortcuts): Recipe {
   if (undisplace === undefined && separate === undefined) return recipe;
   let changed = withStage(without(recipe, "trim-oversampling"), "fit-matrix", { "readout-margin": "keep" });
+  // undisplace takes the margin off itself; where it is switched off, something else must.
+  changed = withStage(changed, "trim-margin", {});
   if (separate) changed = withStage(changed, "separate-fat-water", {});
-  if (undisplace === undefined) return withStage(changed, "trim-margin", {});
+  if (undisplace === undefined) return changed;
   // The separation finds the field as well, and better where there is fat.
   if (undisplace === "measured" && !separate) changed = withStage(changed, "field-map", {});
   const coordinates = fieldCoordinates === undefined ? {} : { coordinates: fieldCoordinates };

@@ -1,5 +1,6 @@
 import { UsageError } from "../errors.js";
 import { channelWeights, combineEchoes } from "../kernels/combine-echoes.js";
+import type { TransformEngine } from "../kernels/transform.js";
 import { cropStart, type FrameAxis } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { axisLength, type Frame, type Layout } from "./stage.js";
@@ -129,7 +130,7 @@ export class EchoFrame {
   }
 
   /** The echoes of one image combined with one set of channel weights, [y, columns] each: the middle columns of x. */
-  combined(slice: number, z: number, columns: number): Float32Array[] {
+  combined(slice: number, z: number, columns: number, engine: TransformEngine): Float32Array[] {
     const size = 2 * this.rows * this.columns;
     const echoes = Array.from({ length: this.echoes }, (_, echo) => ({
       data: this.#data,
@@ -138,7 +139,7 @@ export class EchoFrame {
       rowStride: 2 * this.columns,
     }));
     const weights = channelWeights(echoes, this.coils, this.rows, columns);
-    return combineEchoes(echoes, weights, this.rows, columns);
+    return combineEchoes(echoes, weights, this.rows, columns, engine);
   }
 }
 

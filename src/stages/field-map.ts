@@ -89,7 +89,9 @@ export const fieldMap: FrameStage<Params> = {
     const values = new FieldValues(images.slices * images.partitions * size, true);
     let foldedCount = 0;
     for (const volume of volumesOf(images, scan.sliceOrder)) {
-      const echoes = joined(volume.map(([slice, z]) => images.combined(slice, z, columns)));
+      const echoes = joined(
+        volume.map(([slice, z]) => images.combined(slice, z, columns, context.kernels.transform)),
+      );
       const noiseDeviation = noiseOf(frame, echoes[0]!, images.rows, columns);
       const measured = measureField(
         context.kernels.transform,

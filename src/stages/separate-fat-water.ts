@@ -83,7 +83,7 @@ export const separateFatWaterStage: FrameStage<Params> = {
     );
     for (let slice = 0; slice < images.slices; slice++)
       for (let z = 0; z < images.partitions; z++) {
-        const echoes = images.combined(slice, z, wide);
+        const echoes = images.combined(slice, z, wide, transform);
         const noiseDeviation = noiseOf(frame, echoes[0]!, images.rows, wide);
         const solved = solve(transform, echoes, images.rows, model, spectrum, params, noiseDeviation);
         context.note({ name: "folded pixels", value: solved.foldedCount });

@@ -23,7 +23,7 @@ import {
 import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
 import { checkMap, givenField } from "./given-field.js";
 import { parseBySchema } from "./parameters.js";
-import { axisLength, type FrameStage, type Layout, withLength } from "./stage.js";
+import { axisLength, type FrameStage, type Layout, type StageContext, withLength } from "./stage.js";
 
 interface Params {
   /** `measured`, or the file of a map in Hz. */
@@ -104,6 +104,12 @@ export const undisplace: FrameStage<Params> = {
         "is needed for along: phase",
         "Give the time from one line to the next",
       );
+    if (params.along === "phase" && params.field === MEASURED)
+      throw new UsageError(
+        { field: "undisplace.field", value: MEASURED },
+        "is measured for displacement along the readout",
+        "For along: phase give a map, a .npy of Hz",
+      );
     if (params.field === MEASURED || params.field.endsWith(".npy")) return params;
     throw new UsageError(
       { field: "undisplace.field", value: params.field },
@@ -169,29 +175,18 @@ export const undisplace: FrameStage<Params> = {
     for (let slice = 0; slice < images.slices; slice++)
       for (let z = 0; z < images.partitions; z++) {
         const at = (slice * images.partitions + z) * size;
-        const fieldHz = field.subarray(at, at + size);
-        const planned = new Map<string, Undisplacer>();
-        for (let echo = 0; echo < images.echoes; echo++) {
-          const counter = images.echoes > 1 ? echo : context.counters.contrast;
-          const plan = planFor(planned, params, fieldHz, images, frame.layout, scan, counter);
-          for (let coil = 0; coil < images.coils; coil++)
-            applyPlan(
-              plan,
-              params,
-              context.kernels,
-              images,
-              images.image(echo, slice, coil, z),
-              result.image(echo, slice, coil, z),
-            );
-          if (counter > 0) continue;
-          context.note({ name: map ? "folded pixels" : "pixels left at 0", value: plan.foldedCount });
-          context.note({ name: "places displaced out of what was acquired", value: plan.outsideCount });
-          const object = signalMask(coilImages(result, echo, slice, z), OBJECT_SHARE);
-          mask.set(
-            object.map((flag, i) => flag & (1 - plan.folded[i]!)),
-            at,
-          );
-        }
+        const job = {
+          images,
+          result,
+          slice,
+          z,
+          fieldHz: field.subarray(at, at + size),
+          layout: frame.layout,
+        };
+        const folded = undisplaceImage(job, params, map !== undefined, context);
+        if (!folded) continue;
+        const object = signalMask(coilImages(result, 0, slice, z), OBJECT_SHARE);
+        for (let i = 0; i < size; i++) mask[at + i] = object[i]! & (1 - folded[i]!);
       }
     if (map && context.counters.contrast === 0) {
       const values = new FieldValues(field.length, false);
@@ -201,6 +196,40 @@ export const undisplace: FrameStage<Params> = {
     return { ...frame, data: out, layout };
   },
 };
+
+/** One image of every echo and channel, and where it goes. */
+interface ImageJob {
+  readonly images: EchoFrame;
+  readonly result: EchoFrame;
+  readonly slice: number;
+  readonly z: number;
+  readonly fieldHz: Float32Array;
+  readonly layout: Layout;
+}
+
+/** @returns where the map folds in the first echo, if that is among them */
+function undisplaceImage(
+  { images, result, slice, z, fieldHz, layout }: ImageJob,
+  params: Params,
+  isGiven: boolean,
+  context: StageContext,
+): Uint8Array | undefined {
+  const planned = new Map<string, Undisplacer>();
+  let folded: Uint8Array | undefined;
+  for (let echo = 0; echo < images.echoes; echo++) {
+    const counter = images.echoes > 1 ? echo : context.counters.contrast;
+    const plan = planFor(planned, params, fieldHz, images, layout, context.scan, counter);
+    for (let coil = 0; coil < images.coils; coil++) {
+      const [from, to] = [images.image(echo, slice, coil, z), result.image(echo, slice, coil, z)];
+      applyPlan(plan, params, context.kernels, images, from, to);
+    }
+    if (counter > 0) continue;
+    folded = plan.folded;
+    context.note({ name: isGiven ? "folded pixels" : "pixels left at 0", value: plan.foldedCount });
+    context.note({ name: "places displaced out of what was acquired", value: plan.outsideCount });
+  }
+  return folded;
+}
 
 /** Pixels above this share of the bright level are the object. */
 const OBJECT_SHARE = 0.1;

@@ -2,7 +2,7 @@ import { existsSync, readdirSync, readFileSync, writeFileSync } from "node:fs";
 import path from "node:path";
 import { beforeAll, describe, test } from "vitest";
 import { settingsOf } from "../../src/cli/compare-variants.js";
-import { npyBytes } from "../../src/writers/npy.js";
+import { npyBytes, readNpy } from "../../src/writers/npy.js";
 import { carillon, scratchFolder } from "../support/run-carillon.js";
 
 const folder = scratchFolder("compare-cli");
@@ -45,6 +45,8 @@ describe("compare", () => {
       "edge-profiles.png",
       "edge-profiles.svg",
       "images.png",
+      "noise.npy",
+      "noise.png",
       "point-spreads.png",
       "point-spreads.svg",
     ]);
@@ -74,6 +76,11 @@ describe("compare", () => {
     const noise = variants.map(({ noise: { gain } }: { noise: { gain: number } }) => gain);
     expect(noise[1] / noise[0]).toBeCloseTo(0.375, 3);
     expect(noise[2] / noise[0]).toBeCloseTo(0.6875, 2);
+    const maps = readNpy(at("windows", "noise.npy"));
+    expect(maps.shape).toEqual([3, 96, 96]);
+    // in the middle, where there is signal, the deviation is the noise itself
+    const middle = (v: number) => Number(maps.data[(v * 96 + 48) * 96 + 48]);
+    expect(middle(1) / middle(0)).toBeCloseTo(0.375, 2);
     const page = readFileSync(at("windows", "compare.html"), "utf8");
     expect(page).not.toMatch(/(src|href)="(?!data:)/);
   });
@@ -82,7 +89,7 @@ describe("compare", () => {
     const words = [...WINDOWS, "--noise-by", "replicas", "--replicas", "4", "--seed", "3"];
     expect((await compare("one", ...words, "--workers", "1")).code).toBe(0);
     expect((await compare("three", ...words, "--workers", "3", "--block", "7")).code).toBe(0);
-    for (const name of readdirSync(at("one")).filter((each) => /png|svg|csv/.test(each)))
+    for (const name of readdirSync(at("one")).filter((each) => /png|svg|csv|npy/.test(each)))
       expect(readFileSync(at("three", name)), name).toEqual(readFileSync(at("one", name)));
     const values = (name: string) => json(name).variants;
     expect(values("three")).toEqual(values("one"));

@@ -107,7 +107,7 @@ describe.concurrent("flags, as people write them", () => {
       ],
       [
         ["--te-ms", "5", "--te-ms", "0.1"],
-        "--te-ms is 0.1; must be at least 0.00064 s, the time from the first sample to k = 0. " +
+        "--te-ms is 0.1; must be at least 0.64 ms, the time from the first sample to k = 0. " +
           "Give a later echo time, a shorter dwell time or a partial echo.",
       ],
     ] as const)

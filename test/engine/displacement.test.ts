@@ -115,6 +115,13 @@ const ODD_PHASE = 0.6;
  * left is the field's displacement along y.
  */
 describe("echo-planar, along the phase direction", () => {
+  test("a measured field, which is one along the readout, is refused", () => {
+    expect(() => undisplace.parse({ along: "phase", "echo-spacing-ms": 0.6 })).toThrow(
+      /For along: phase give a map/,
+    );
+    expect(() => undisplace.parse({ along: "phase", field: "a.npy" })).toThrow(/echo-spacing-ms: is needed/);
+  });
+
   test("the given field puts the train's pixels back", async () => {
     const file = `${COMMITTED}/echo-planar.h5`;
     const { facts } = await readScan(file);

@@ -1,5 +1,8 @@
+import { writeFileSync } from "node:fs";
+import path from "node:path";
 import { describe, expect, test } from "vitest";
 import { type Shortcuts, withShortcuts } from "../../src/recipe/shortcuts.js";
+import { npyBytes } from "../../src/writers/npy.js";
 import {
   answer,
   COMMITTED,
@@ -10,6 +13,7 @@ import {
   otherSeed,
 } from "../support/conformance-cases.js";
 import { reconstructed } from "../support/reconstruct.js";
+import { scratchFolder } from "../support/run-carillon.js";
 
 const CASE = "off-resonance";
 const MEASURED: Shortcuts = { undisplace: "measured" };
@@ -60,6 +64,65 @@ function cases(folder: string) {
     expect(objectDifference(echoOf(done, 0), truth())).toBeLessThan(0.01);
   });
 }
+
+/** A row's value between pixels, linear. */
+function between(row: Float32Array, place: number): number {
+  const cell = Math.max(0, Math.min(row.length - 2, Math.floor(place)));
+  return row[cell]! + (place - cell) * (row[cell + 1]! - row[cell]!);
+}
+
+describe(`${CASE}, maps from elsewhere`, () => {
+  const folder = scratchFolder("given");
+  const truth = answer(COMMITTED, CASE, "undistorted-magnitude");
+  const field = answer(COMMITTED, CASE, "field-hz");
+  const save = (name: string, shape: number[], values: Float32Array) => {
+    writeFileSync(path.join(folder, name), npyBytes("<f4", shape, values));
+    return path.join(folder, name);
+  };
+
+  test("drawn on the displaced image: carried to the object first", async () => {
+    // Seen at x' is the field of x = x' - field(x) / 120 Hz per pixel, found by iteration.
+    const seen = field.map((_, i) => {
+      const row = field.subarray(128 * Math.floor(i / 128), 128 * Math.floor(i / 128) + 128);
+      let hz = 0;
+      for (let step = 0; step < 50; step++) hz = between(row, (i % 128) - hz / 120);
+      return hz;
+    });
+    const file = save("seen.npy", [128, 128], seen);
+    const right = await corrected(COMMITTED, { undisplace: file, fieldCoordinates: "image" });
+    expect(objectDifference(echoOf(right, 0), truth)).toBeLessThan(0.01);
+    // Left where it was seen the map is 1.8 Hz off in the median, as the case states.
+    const wrong = await corrected(COMMITTED, { undisplace: file });
+    const median = (done: typeof right) => errors(done.maps.get("field-hz")!, field, objectOf(truth))[0];
+    expect(median(right)).toBeLessThan(0.25);
+    expect(median(wrong)).toBeGreaterThan(1.5);
+  });
+
+  test("of a quarter of the pixels, over the same field of view", async () => {
+    // pixel i of 64 lies where pixel 2 i of 128 does: both have their centre at floor(N / 2)
+    const coarse = Float32Array.from(
+      { length: 64 * 64 },
+      (_, i) => field[2 * Math.floor(i / 64) * 128 + 2 * (i % 64)]!,
+    );
+    const done = await corrected(COMMITTED, { undisplace: save("coarse.npy", [1, 64, 64], coarse) });
+    expect(objectDifference(echoOf(done, 0), truth)).toBeLessThan(0.01);
+    const fine = answer(COMMITTED, CASE, "field-hz");
+    const [, percentile95] = errors(done.maps.get("field-hz")!, fine, objectOf(truth));
+    expect(percentile95).toBeLessThan(0.5); // cubic interpolation of a smooth map
+  });
+
+  test("with the wrong axes, complex or not finite, it is refused", async () => {
+    const given = (name: string, shape: number[], values: Float32Array) =>
+      corrected(COMMITTED, { undisplace: save(name, shape, values) });
+    await expect(given("line.npy", [128], new Float32Array(128))).rejects.toThrow(
+      /must be \[y, x\] or \[slice, y, x\]/,
+    );
+    await expect(given("many.npy", [3, 8, 8], new Float32Array(192))).rejects.toThrow(/with 1 images/);
+    await expect(given("hole.npy", [1, 2], Float32Array.of(1, Number.NaN))).rejects.toThrow(
+      /element 1 is NaN; must be a finite number/,
+    );
+  });
+});
 
 describe(CASE, () => cases(COMMITTED));
 describe.skipIf(!hasH5py)(`${CASE}, another seed (skipped without h5py)`, () => cases(otherSeed([CASE])));

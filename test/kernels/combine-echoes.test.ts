@@ -1,9 +1,11 @@
 import { describe, expect, it } from "vitest";
 import { channelWeights, combineEchoes } from "../../src/kernels/combine-echoes.js";
+import { createPlainEngine } from "../../src/kernels/plain-transform.js";
 import { seededNormal } from "./seeded-normal.js";
 import { addNoise, magnitudes, maskedError, simulateEcho } from "./simulated-echoes.js";
 
 const [ROWS, LENGTH, COILS] = [50, 61, 4];
+const engine = createPlainEngine();
 
 /** Smooth lobes around the object with a phase roll. */
 function coil(c: number) {
@@ -53,7 +55,7 @@ describe("echo combination", () => {
     const still = Number.POSITIVE_INFINITY;
     const echoes = [0.002, 0.004].map((seconds) => addNoise(channels(seconds, field, still), 0.002, normal));
     const images = echoes.map(packed);
-    const combined = combineEchoes(images, channelWeights(images, COILS, ROWS, LENGTH), ROWS, LENGTH);
+    const combined = combineEchoes(images, channelWeights(images, COILS, ROWS, LENGTH), ROWS, LENGTH, engine);
     const root = Float32Array.from({ length: ROWS * LENGTH }, (_, i) =>
       level((i % LENGTH) - 30, Math.floor(i / LENGTH)),
     );
@@ -75,7 +77,7 @@ describe("echo combination", () => {
     const still = channels(0, () => 0, 100);
     const images = [still, moved].map(packed);
     const weights = channelWeights(images, COILS, ROWS, LENGTH);
-    const [a, b] = combineEchoes(images, weights, ROWS, LENGTH) as [Float32Array, Float32Array];
+    const [a, b] = combineEchoes(images, weights, ROWS, LENGTH, engine) as [Float32Array, Float32Array];
     let worst = 0;
     for (let p = 0; p < mask.length; p++) {
       if (!mask[p] || !mask[p + 2] || !mask[p - 2] || !mask[p + 4]) continue;

@@ -1,10 +1,22 @@
 import { expect, test } from "vitest";
 import { csvText } from "../../src/writers/csv.js";
 
-test("one head line, lines ended and cells quoted as RFC 4180 says; what is no number is empty", () => {
+test("a head line, CRLF, quotes where RFC 4180 asks for them, nothing for what is missing", () => {
   const rows = [
-    { name: 'a "b", c', hz: 0.1 + 0.2, ok: true },
-    { name: "d\ne", hz: Number.NaN, ok: null },
+    { name: "a, b", value: 0.1, note: 'say "x"' },
+    { name: "line\nbreak", value: Number.NaN, note: undefined },
+    { name: "plain", value: 1e-12, note: null },
   ];
-  expect(csvText(rows)).toBe('name,hz,ok\r\n"a ""b"", c",0.30000000000000004,true\r\n"d\ne",,\r\n');
+  expect(csvText(rows)).toBe(
+    'name,value,note\r\n"a, b",0.1,"say ""x"""\r\n"line\nbreak",,\r\nplain,1e-12,\r\n',
+  );
+});
+
+test("the columns are those of the first row, in its order", () => {
+  expect(
+    csvText([
+      { b: 1, a: true },
+      { a: false, b: 2 },
+    ] as const),
+  ).toBe("b,a\r\n1,true\r\n2,false\r\n");
 });
