@@ -11,7 +11,7 @@ export interface Spread {
   readonly percentile95: number;
 }
 
-/** How far pixels may be off, what was corrected, what was not. Displacements are those of a forward readout. */
+/** How far pixels may be off, what was corrected, what was not. */
 export interface Placement {
   /** The same in sentences. */
   readonly statement: readonly string[];
@@ -20,7 +20,7 @@ export interface Placement {
   readonly pixelSizeMm: { readonly x: number; readonly y: number };
   /** What `shift-readout` moved everything by. */
   readonly shiftedMm: number;
-  /** Where fat's main peak is seen in the images, from its place. */
+  /** Where fat's main peak is seen in the images, from its place; in the forward ones where there are both. */
   readonly fat: {
     readonly offsetHz: number;
     readonly pixels: number;
@@ -109,9 +109,11 @@ export function placementOf(scan: ScanFacts, plan: Plan, tally: PlacementTally):
   const moving = plan.stages.find(({ stage }) => stage.id === "undisplace");
   const isAlongY = moving?.physics.along === "y";
   const shift = plan.stages.find(({ stage }) => stage.id === "shift-readout");
-  const shiftedMm = Number(shift?.physics["shift on a forward readout, mm"] ?? 0);
+  // Of echoes that are all read backward everything is turned round; else the forward ones are spoken of.
+  const direction = scan.polarity.every((each) => each === "reverse") ? -1 : 1;
+  const shiftedMm = direction * Number(shift?.physics["shift on a forward readout, mm"] ?? 0);
   const fatHz = chemicalShiftHz(FAT_MAIN_PEAK_PPM, scan.resonanceHz);
-  const fatMm = fatHz * mmPerHz + shiftedMm;
+  const fatMm = direction * fatHz * mmPerHz + shiftedMm;
   const parts = {
     bandwidthPerPixelHz: {
       x: perPixelHz,
@@ -172,7 +174,7 @@ function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string
     lines.push(`everything was moved by ${mm(shiftedMm)} along x (shift-readout), water too`);
   lines.push(
     `fat is seen ${number(fat.pixels)} px (${mm(fat.mm)}) from its place along x` +
-      (scan.polarity.includes("reverse") ? ", the other way in echoes read backward" : "") +
+      otherWay(scan.polarity) +
       (fat.separated
         ? "; water.npy and fat.npy have both in place"
         : shiftedMm === 0
@@ -199,6 +201,12 @@ function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string
   }
   lines.push(`not included: ${parts.notIncluded.join(", ")}`);
   return lines;
+}
+
+function otherWay(polarity: ScanFacts["polarity"]): string {
+  if (polarity.includes("mixed")) return " on lines read forward, the other way on the others";
+  const isBoth = polarity.includes("reverse") && polarity.includes("forward");
+  return isBoth ? ", the other way in echoes read backward" : "";
 }
 
 /** Three digits, and never an exponent for what rounds to nothing. */

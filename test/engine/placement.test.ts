@@ -73,6 +73,15 @@ describe("the placement statement", () => {
     expect(sidecar.placement.statement.join()).toContain("everything was moved by");
   });
 
+  test("echoes that are all read backward show fat on the other side", async () => {
+    const words = ["--matrix", "48", "--dwell-us", "20", "--te-ms", "3", "--quiet"];
+    for (const which of ["none", "all"])
+      await carillon(["simulate", "--out", at(`${which}.h5`), "--reversed-echoes", which, ...words]);
+    const [forward, backward] = [await recon("fwd", at("none.h5")), await recon("bwd", at("all.h5"))];
+    expect(backward.sidecar.placement.fat.mm).toBeCloseTo(-forward.sidecar.placement.fat.mm, 9);
+    expect(backward.stdout).not.toContain("the other way");
+  });
+
   test("where a map folds, pixels are 0, counted and named", async () => {
     // A field of 1.25 pixels of displacement per pixel over a tenth of the rows: a fold.
     const steep = new Float32Array(128 * 128);
