@@ -129,7 +129,8 @@ function showSide(side, figure, column) {
   cells.forEach((cell, i) => {
     rows[i].cells[column].replaceChildren(...cell.cloneNode(true).childNodes);
   });
-  return source;
+  // Of the image itself: its properties tell the size on the screen.
+  return { width: Number(source.getAttribute("width")), height: Number(source.getAttribute("height")) };
 }
 
 for (const side of /** @type {const} */ (["a", "b"])) {
