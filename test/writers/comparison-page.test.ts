@@ -1,49 +1,9 @@
-import { mkdtempSync, rmSync, writeFileSync } from "node:fs";
-import { tmpdir } from "node:os";
-import { join } from "node:path";
-import { pathToFileURL } from "node:url";
-import type { Browser, BrowserContextOptions, Page } from "playwright-core";
 import { PNG } from "pngjs";
-import { afterAll, afterEach, beforeAll, beforeEach, describe, expect, test } from "vitest";
-import { comparisonPage } from "../../src/writers/comparison-page.js";
-import { launchBrowser } from "./browser.js";
-import { AWKWARD, flatPng, sample } from "./comparison-sample.js";
+import { describe, expect, test } from "vitest";
+import { openBeforeEach, page, reopen } from "./comparison-browser.js";
+import { flatPng, sample } from "./comparison-sample.js";
 
-let browser: Browser;
-let folder: string;
-let page: Page;
-/** What must not be: messages on the console, errors in the page, requests beside the file itself. */
-let complaints: string[];
-
-beforeAll(async () => {
-  browser = await launchBrowser();
-  folder = mkdtempSync(join(tmpdir(), "comparison-page-"));
-});
-afterAll(async () => {
-  await browser?.close();
-  if (folder) rmSync(folder, { recursive: true });
-});
-
-async function open(data = sample(), options: BrowserContextOptions = {}): Promise<void> {
-  const file = join(folder, "compare.html");
-  writeFileSync(file, comparisonPage(data));
-  const url = pathToFileURL(file).href;
-  const context = await browser.newContext({ viewport: { width: 1280, height: 900 }, ...options });
-  page = await context.newPage();
-  complaints = [];
-  page.on("console", (message) => complaints.push(`console: ${message.text()}`));
-  page.on("pageerror", (error) => complaints.push(`error: ${error.message}`));
-  page.on("request", (request) => {
-    if (request.url() !== url && !request.url().startsWith("data:")) complaints.push(`asks ${request.url()}`);
-  });
-  await page.goto(url);
-}
-
-beforeEach(() => open());
-afterEach(async () => {
-  expect(complaints).toEqual([]);
-  await page.context().close();
-});
+openBeforeEach();
 
 /** The variants in the order of the table's rows, by their place in the data. */
 const rowOrder = () =>
@@ -164,15 +124,42 @@ describe("the divider", () => {
     expect([await levelAt(0.02), await levelAt(0.95)]).toEqual([120, 120]);
   });
 
-  test("moves by a tap, while a finger drawn over the images scrolls", async () => {
-    await page.context().close();
-    await open(sample(), { viewport: { width: 390, height: 844 }, hasTouch: true });
+  test("follows a finger on the knob and a tap; a finger drawn over the images scrolls", async () => {
+    await reopen(sample(), { viewport: { width: 390, height: 844 }, hasTouch: true });
     await page.locator("#images").scrollIntoViewIfNeeded();
     const box = (await page.locator("#images").boundingBox())!;
-    await page.touchscreen.tap(box.x + 0.2 * box.width, box.y + 30);
+    const at = (share: number) => box.x + share * box.width;
+    await page.touchscreen.tap(at(0.2), box.y + 30);
     expect(await dividerPercent()).toBeCloseTo(20, 0);
+
+    await knob().scrollIntoViewIfNeeded();
+    const grip = (await knob().boundingBox())!;
+    await drawFinger([grip.x + grip.width / 2, grip.y + 10], [at(0.9), grip.y + 10]);
+    expect(await dividerPercent()).toBeCloseTo(90, 0);
+
+    const before: number = await page.evaluate("scrollY");
+    const there = (await page.locator("#images").boundingBox())!;
+    await drawFinger([at(0.4), there.y + 100], [at(0.4), there.y - 100]);
+    await page.waitForFunction(`scrollY > ${before}`);
+    expect(await dividerPercent()).toBeCloseTo(90, 0);
   });
 });
+
+async function drawFinger(from: readonly [number, number], to: readonly [number, number]): Promise<void> {
+  const session = await page.context().newCDPSession(page);
+  const steps = 8;
+  for (let i = 0; i <= steps; i++) {
+    const [x, y] = [0, 1].map((axis) => from[axis]! + ((to[axis]! - from[axis]!) * i) / steps) as [
+      number,
+      number,
+    ];
+    await session.send("Input.dispatchTouchEvent", {
+      type: i === 0 ? "touchStart" : "touchMove",
+      touchPoints: [{ x, y }],
+    });
+  }
+  await session.send("Input.dispatchTouchEvent", { type: "touchEnd", touchPoints: [] });
+}
 
 describe("the choice of the pair", () => {
   test("by list", async () => {
@@ -231,11 +218,10 @@ describe("the choice of the pair", () => {
 
   test("says when A and B differ in shape", async () => {
     expect(await page.locator("#shapes").isVisible()).toBe(false);
-    await page.context().close();
     const data = sample();
     const wide = Buffer.from(flatPng(9));
     wide.writeUInt32BE(80, 16); // the width in the header
-    await open({
+    await reopen({
       ...data,
       variants: data.variants.map((each, v) => (v === 3 ? { ...each, image: wide } : each)),
     });
@@ -244,9 +230,8 @@ describe("the choice of the pair", () => {
   });
 
   test("one variant alone is shown on both sides", async () => {
-    await page.context().close();
     const data = sample();
-    await open({ ...data, variants: data.variants.slice(0, 1) });
+    await reopen({ ...data, variants: data.variants.slice(0, 1) });
     expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([40, 40]);
   });
 });
@@ -274,133 +259,3 @@ describe("a recipe", () => {
     expect(await page.locator("#variant-1 pre").isVisible()).toBe(true);
   });
 });
-
-describe("every reader", () => {
-  test("by keyboard: Tab reaches every control, each with a name", async () => {
-    const reached = new Set<string>();
-    const describeFocus = `(() => {
-      const { tagName, id, className, dataset, textContent, ariaLabel, labels } = document.activeElement;
-      const name = ariaLabel ?? (labels?.[0]?.textContent || textContent);
-      return tagName === "BODY" ? "" : [tagName, id, className, dataset.side, dataset.variant, name.trim()].join(" ");
-    })()`;
-    for (let i = 0; i < 200; i++) {
-      await page.keyboard.press("Tab");
-      const focus: string = await page.evaluate(describeFocus);
-      if (focus === "" || reached.has(focus)) break;
-      expect(focus).toMatch(/\S$/);
-      reached.add(focus);
-    }
-    const controls = await page
-      .locator("a, button, select, input, summary, pre, [role=slider], [role=region]")
-      .evaluateAll((all) => all.filter((each) => each.checkVisibility()).length);
-    const tags = [...reached].map((focus) => focus.split(" ")[0]);
-    // Four summaries of one text are one in the set, and the others are told apart by what they do.
-    expect(tags).toEqual(expect.arrayContaining(["A", "BUTTON", "SELECT", "INPUT", "SUMMARY", "DIV"]));
-    expect(controls).toBeGreaterThan(30);
-  });
-
-  test("of another scheme: text stands out from its ground", async () => {
-    for (const colorScheme of ["light", "dark"] as const) {
-      await page.emulateMedia({ colorScheme });
-      const pairs: [string, string][] = await page.evaluate(`(() => {
-        const style = getComputedStyle(document.documentElement);
-        const value = (name) => style.getPropertyValue(name).trim();
-        return [["ink", "page"], ["ink", "card"], ["ink", "stripe"], ["quiet", "card"], ["quiet", "page"], ["a", "card"],
-          ["b", "card"], ["on-side", "a"], ["on-side", "b"], ["ink", "caution"]]
-          .map((pair) => pair.map((name) => value("--" + name)));
-      })()`);
-      // Source: W3C, WCAG 2.2, 1.4.3: at least 4.5 for text.
-      for (const [text, ground] of pairs)
-        expect(contrast(text, ground), `${text} on ${ground}`).toBeGreaterThan(4.5);
-    }
-  });
-
-  test.each([390, 768, 1280])("at a width of %i: nothing but the table scrolls sideways", async (width) => {
-    await page.setViewportSize({ width, height: 900 });
-    expect(await page.evaluate("document.documentElement.scrollWidth - innerWidth")).toBeLessThanOrEqual(0);
-  });
-
-  test("who wants no motion: none is there", async () => {
-    await page.emulateMedia({ reducedMotion: "reduce" });
-    expect(await page.evaluate("getComputedStyle(document.documentElement).scrollBehavior")).toBe("auto");
-  });
-
-  test("without script: numbers, images, recipes, and no control that does nothing", async () => {
-    await page.context().close();
-    await open(sample(), { javaScriptEnabled: false });
-    expect(await page.locator("#numbers tbody tr").count()).toBe(4);
-    expect(await page.locator("#pair").isVisible()).toBe(false);
-    expect(await page.locator("#variant-1 img.image").isVisible()).toBe(true);
-    expect(await page.getByRole("button", { name: /^(Show|Copy)/ }).count()).toBe(0);
-  });
-
-  test("on paper: the caution, both images side by side, recipes unfolded, no controls", async () => {
-    await page.emulateMedia({ media: "print", colorScheme: "dark" });
-    expect(await page.locator(".caution").isVisible()).toBe(true);
-    const left = (await page.locator(".left img").boundingBox())!;
-    const right = (await page.locator(".right img").boundingBox())!;
-    expect(right.x).toBeGreaterThanOrEqual(left.x + left.width);
-    expect([right.y, right.width]).toEqual([left.y, left.width]);
-    for (const side of [".left", ".right"]) {
-      const clip = await page
-        .locator(side)
-        .evaluate((each) => each.ownerDocument.defaultView.getComputedStyle(each).clipPath);
-      expect(clip).toBe("none");
-    }
-    for (const pre of await page.locator("pre").all())
-      expect((await pre.boundingBox())?.height).toBeGreaterThan(20);
-    for (const control of await page
-      .locator("select, input, [role=slider], summary, button:not(.sort), nav")
-      .all()) {
-      expect(await control.isVisible()).toBe(false);
-    }
-    expect(await page.evaluate("getComputedStyle(document.body).backgroundColor")).toBe("rgb(255, 255, 255)");
-  });
-});
-
-describe("the document", () => {
-  test("shows names as they are, whatever is in them", async () => {
-    expect(await page.title()).toBe(`bell ${AWKWARD}.h5: variants compared`);
-    expect(await page.locator("h1 .name").textContent()).toBe(`bell ${AWKWARD}.h5`);
-    expect(await page.locator("#variant-2 h3").textContent()).toBe(AWKWARD);
-    expect(await page.locator("#choose-b option").nth(2).textContent()).toBe(AWKWARD);
-    expect(await page.locator("#facts dd").first().textContent()).toBe(`bell ${AWKWARD}.h5`);
-    expect(await page.locator("#variant-2 code").textContent()).toBe(sample().variants[2]!.recipe);
-    expect(await page.locator("img[onerror]").count()).toBe(0);
-    await page.getByLabel("B, right").selectOption("2");
-    expect(await page.locator(".right figcaption").textContent()).toBe(`B: ${AWKWARD}`);
-  });
-
-  test("lets no other script run, even one that got in", async () => {
-    await page.evaluate(
-      "document.body.append(Object.assign(document.createElement('script'), { textContent: 'window.gotIn = true' }))",
-    );
-    expect(await page.evaluate("window.gotIn")).toBeUndefined();
-    expect(complaints.filter((each) => each.includes("Content Security Policy"))).toHaveLength(1);
-    complaints.length = 0;
-  });
-
-  test("is the same for the same data", () => {
-    expect(comparisonPage(sample())).toBe(comparisonPage(sample()));
-  });
-
-  test("refuses a reference that is no variant, and an image that is no PNG", () => {
-    expect(() => comparisonPage(sample({ reference: "other" }))).toThrow(RangeError);
-    const [first] = sample().variants;
-    expect(() => comparisonPage(sample({ variants: [{ ...first!, image: new Uint8Array(40) }] }))).toThrow(
-      "Image of apodize.window=none is not a PNG",
-    );
-  });
-});
-
-/** Contrast ratio of two colours "#rrggbb". Source: W3C, WCAG 2.2, definitions of contrast ratio, relative luminance. */
-function contrast(one: string, other: string): number {
-  const [dark, light] = [luminance(one), luminance(other)].sort((a, b) => a - b) as [number, number];
-  return (light + 0.05) / (dark + 0.05);
-}
-
-function luminance(colour: string): number {
-  const parts = [1, 3, 5].map((at) => Number.parseInt(colour.slice(at, at + 2), 16) / 255);
-  const linear = parts.map((c) => (c <= 0.04045 ? c / 12.92 : ((c + 0.055) / 1.055) ** 2.4));
-  return 0.2126 * linear[0]! + 0.7152 * linear[1]! + 0.0722 * linear[2]!;
-}

@@ -33,7 +33,8 @@ ${chooser(data, "b", "right", second < 0 ? first : second)}
 <figure class="left"><img alt=""><figcaption></figcaption></figure>
 <figure class="right"><img alt=""><figcaption></figcaption></figure>
 </div>
-<div class="divider on-screen"><div class="knob" id="knob" role="slider" tabindex="0" aria-label="Divider: A left of it, B right of it" aria-orientation="horizontal" aria-valuemin="0" aria-valuemax="100" aria-valuenow="50">A ↔ B</div></div>
+<div class="divider on-screen"></div>
+<div class="knob on-screen" id="knob" role="slider" tabindex="0" aria-label="Divider: A left of it, B right of it" aria-orientation="horizontal" aria-valuemin="0" aria-valuemax="100" aria-valuenow="50">A ↔ B</div>
 </div>
 </div>
 <div class="quick on-screen">
