@@ -1,7 +1,7 @@
 import { createHash } from "node:crypto";
 import { Html, html } from "./comparison-page/html.js";
 import script from "./comparison-page/in-page.js?raw";
-import { numbers } from "./comparison-page/numbers.js";
+import { nameOf, numbers } from "./comparison-page/numbers.js";
 import { recipes } from "./comparison-page/recipes.js";
 import { style } from "./comparison-page/style.js";
 import { viewer } from "./comparison-page/viewer.js";
@@ -29,9 +29,11 @@ export interface ComparisonPage {
     readonly recipe: string;
     /** PNG, one grey range for all. */
     readonly image: Uint8Array;
-    /** PNG, signed colours with their scale; the reference has none. */
+    /** PNG, signed colours, one scale for all; the reference has none. */
     readonly difference: Uint8Array | undefined;
   }[];
+  /** The value shown in the darkest orange, minus this in the darkest blue, where the differences bear no scale. */
+  readonly differenceLimit?: number;
   readonly greyRange: { readonly black: number; readonly white: number; readonly rule: string };
   /** Edge profiles, point spreads, noise. The SVG is put into the page as it is: without script, style or link. */
   readonly figures: readonly { readonly title: string; readonly svg: string; readonly describe: string }[];
@@ -62,14 +64,15 @@ export function comparisonPage(data: ComparisonPage): string {
 <meta http-equiv="Content-Security-Policy" content="${policy}">
 <meta name="viewport" content="width=device-width, initial-scale=1">
 <meta name="color-scheme" content="light dark">
-<title>${data.title}: variants compared</title>
+<title>${data.title}</title>
 <link rel="icon" href="data:,">
 <style>${new Html(style)}</style>
 </head>
 <body>
 <header>
-<h1><span class="name">${data.title}</span>: ${data.variants.length} variants compared</h1>
+<h1 class="name">${data.title}</h1>
 <p class="caution" role="note">${data.caution}</p>
+<p>Variants compared: ${data.variants.length}. Reference: ${nameOf(data.reference)}.</p>
 <nav class="on-screen" aria-label="On this page"><ul>
 <li><a href="#numbers">Numbers</a></li>
 <li class="needs-script" hidden><a href="#pair">Two variants</a></li>

@@ -197,6 +197,19 @@ describe("the choice of the pair", () => {
     expect(await source("#difference-b img")).toBe(await source("#variant-1 img.difference"));
   });
 
+  test("shows the scale of differences that bear none themselves", async () => {
+    expect(await page.locator(".scale").count()).toBe(0);
+    await reopen(sample({ differenceLimit: 0.25 }));
+    expect(await page.locator(".scale span").allTextContents()).toEqual(["−0.25", "+0.25"]);
+    const { data, width } = PNG.sync.read(await page.locator(".scale svg").screenshot());
+    const at = (share: number) => [...data.subarray(4 * (5 * width + Math.round(share * width)))].slice(0, 3);
+    const [[, , lowBlue], middle, [highRed, , highBlue]] = [at(0.05), at(0.5), at(0.95)];
+    expect(Math.min(...middle!)).toBeGreaterThan(240); // white, or one of 64 steps beside it
+    expect(lowBlue).toBeGreaterThan(120); // blue is low, orange is high
+    expect(highRed).toBeGreaterThan(120);
+    expect(highBlue).toBeLessThan(60);
+  });
+
   test("states the grey range, and smooths pixels only when told", async () => {
     expect(await page.locator("#pair").textContent()).toContain(
       "black 0, white 1.25 (99.5th percentile of the foreground)",

@@ -45,7 +45,7 @@ ${columns.map(({ label, unit, describe }) => html`<dt>${withUnit(label, unit)}</
 
 /** A variant's name, which may go on in the next line after each of its parts. */
 export function nameOf(name: string): Html {
-  const parts = name.split(/(?<=[=,;/])/);
+  const parts = name.split(/(?<=[=,;/])|(?<=\.)(?=[a-z])/);
   return html`<span class="name">${parts.map((part, i) => (i === 0 ? part : html`<wbr>${part}`))}</span>`;
 }
 

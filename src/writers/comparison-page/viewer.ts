@@ -1,3 +1,4 @@
+import { divergingColour } from "../colour-map.js";
 import type { ComparisonPage } from "../comparison-page.js";
 import { shortNumber } from "../number-text.js";
 import { type Html, html } from "./html.js";
@@ -55,7 +56,8 @@ ${data.columns.map(({ label, unit }) => html`<tr><th scope="row">${withUnit(labe
 </tbody>
 </table>
 </div>
-<div class="differences">
+${data.differenceLimit === undefined ? undefined : differenceScale(data.differenceLimit)}
+<div class="differences${data.differenceLimit === undefined ? "" : " bare"}">
 <figure id="difference-a"><img alt=""><figcaption></figcaption></figure>
 <figure id="difference-b"><img alt=""><figcaption></figcaption></figure>
 </div>
@@ -71,4 +73,18 @@ function chooser({ variants }: ComparisonPage, side: "a" | "b", where: string, c
   return html`<label><span class="side-${side}">${side.toUpperCase()}</span>, ${where}<br><select id="choose-${side}" autocomplete="off">
 ${options}
 </select></label>`;
+}
+
+const SCALE_STEPS = 64;
+
+/** The colours of the differences with their values; drawn, as paper leaves backgrounds out. */
+function differenceScale(limit: number): Html {
+  const steps = Array.from({ length: SCALE_STEPS + 1 }, (_, i) => {
+    const colour = divergingColour((2 * i) / SCALE_STEPS - 1).join(" ");
+    return html`<rect x="${i}" width="${SCALE_STEPS + 1 - i}" height="4" fill="rgb(${colour})"/>`; // each to the end: no seams
+  });
+  const text = shortNumber(limit, 4);
+  return html`<p class="scale">Differences: <span>−${text}</span>
+<svg viewBox="0 0 ${SCALE_STEPS + 1} 4" preserveAspectRatio="none" role="img" aria-label="from blue over white, which is 0, to orange">${steps}</svg>
+<span>+${text}</span></p>`;
 }
