@@ -1,5 +1,6 @@
 import { defineConfig } from "vitest/config";
 
 export default defineConfig({
-  test: { include: ["test/**/*.test.ts"], testTimeout: 60_000, hookTimeout: 60_000 },
+  // css: style sheets that are imported as text are otherwise empty
+  test: { css: true, include: ["test/**/*.test.ts"], testTimeout: 60_000, hookTimeout: 60_000 },
 });

@@ -1,12 +1,18 @@
-import { PAGE_SCRIPT } from "./comparison-page-script.js";
-import { PAGE_STYLE } from "./comparison-page-style.js";
+import { createHash } from "node:crypto";
+import { Html, html } from "./comparison-page/html.js";
+import script from "./comparison-page/in-page.js?raw";
+import { nameOf, numbers } from "./comparison-page/numbers.js";
+import { recipes } from "./comparison-page/recipes.js";
+import { style } from "./comparison-page/style.js";
+import { viewer } from "./comparison-page/viewer.js";
 
-/** A comparison as its page shows it. */
 export interface ComparisonPage {
+  /** For example the raw file's name. */
   readonly title: string;
   readonly caution: string;
+  /** File, SHA-256, version, matrix, noise method, region, edge and the like. */
   readonly facts: readonly (readonly [label: string, value: string])[];
-  /** Name of the variant that others are measured against. */
+  /** Name of the reference variant. */
   readonly reference: string;
   readonly columns: readonly {
     readonly id: string;
@@ -15,156 +21,100 @@ export interface ComparisonPage {
     readonly describe: string;
   }[];
   readonly variants: readonly {
+    /** For example "apodize.window=hann". */
     readonly name: string;
-    /** By column; null where there is none. */
+    /** By column id; theory and measurement are columns of their own. Null where there is nothing to say. */
     readonly values: Readonly<Record<string, number | null>>;
-    /** To copy. */
+    /** YAML, to copy. */
     readonly recipe: string;
-    /** PNG, all at one grey range. */
+    /** PNG, one grey range for all. */
     readonly image: Uint8Array;
-    /** PNG, signed, all in one scale of colours; the reference has none. */
+    /** PNG, signed colours, one scale for all; the reference has none. */
     readonly difference: Uint8Array | undefined;
   }[];
-  /** The value shown in the darkest orange; minus this in the darkest blue. */
-  readonly differenceLimit: number;
+  /** The value shown in the darkest orange, minus this in the darkest blue, where the differences bear no scale. */
+  readonly differenceLimit?: number;
   readonly greyRange: { readonly black: number; readonly white: number; readonly rule: string };
+  /** Edge profiles, point spreads, noise. The SVG is put into the page as it is: without script, style or link. */
   readonly figures: readonly { readonly title: string; readonly svg: string; readonly describe: string }[];
 }
 
-/** One HTML page that needs nothing beside itself: no network, images inlined. The same data give the same bytes. */
+/**
+ * The comparison as one HTML document that needs nothing else: table, two variants under a divider, charts, recipes.
+ * Everything is in the markup, so that it can be read without script; the script sorts, chooses, moves and copies.
+ * The same data give the same bytes.
+ * @throws RangeError where there is no variant, the reference is none of them, or an image is not a PNG
+ */
 export function comparisonPage(data: ComparisonPage): string {
-  const { title, caution, facts, variants, figures, greyRange } = data;
-  const other = variants.findIndex(({ name }) => name !== data.reference);
-  const left = variants.findIndex(({ name }) => name === data.reference);
-  const right = other < 0 ? left : other;
-  return `<!doctype html>
+  if (!data.variants.some((variant) => variant.name === data.reference)) {
+    throw new RangeError(`the reference "${data.reference}" is none of the ${data.variants.length} variants`);
+  }
+  const policy = [
+    "default-src 'none'",
+    "img-src data:",
+    `style-src '${contentHash(style)}'`,
+    `script-src '${contentHash(script)}'`,
+    "base-uri 'none'",
+    "form-action 'none'",
+  ].join("; ");
+  return html`<!doctype html>
 <html lang="en">
 <head>
 <meta charset="utf-8">
+<meta http-equiv="Content-Security-Policy" content="${policy}">
 <meta name="viewport" content="width=device-width, initial-scale=1">
-<meta http-equiv="Content-Security-Policy" content="default-src 'none'; img-src data:; style-src 'unsafe-inline'; script-src 'unsafe-inline'">
-<title>${text(title)}</title>
-<style>
-${PAGE_STYLE}</style>
+<meta name="color-scheme" content="light dark">
+<title>${data.title}</title>
+<link rel="icon" href="data:,">
+<style>${new Html(style)}</style>
 </head>
 <body>
 <header>
-<h1>${text(title)}</h1>
-<p class="caution">${text(caution)}</p>
+<h1 class="name">${data.title}</h1>
+<p class="caution" role="note">${data.caution}</p>
+<p>Variants compared: ${data.variants.length}. Reference: ${nameOf(data.reference)}.</p>
+<nav class="on-screen" aria-label="On this page"><ul>
+<li><a href="#numbers">Numbers</a></li>
+<li class="needs-script" hidden><a href="#pair">Two variants</a></li>
+${data.figures.length > 0 ? html`<li><a href="#charts">Charts</a></li>` : undefined}
+<li><a href="#recipes">Images and recipes</a></li>
+<li><a href="#facts">Origin</a></li>
+</ul></nav>
 </header>
 <main>
-<section aria-labelledby="figures-of">
-<h2 id="figures-of">In figures</h2>
-<p>Select a heading to sort by it. Reference: <strong>${text(data.reference)}</strong>.</p>
-<div class="scroll" tabindex="0" role="region" aria-label="Table of measures">
-${table(data)}
-</div>
-</section>
-<section aria-labelledby="side">
-<h2 id="side">Two under one divider</h2>
-<div class="choose">
-<label>Left <select id="left">${options(variants, left)}</select></label>
-<label>Right <select id="right">${options(variants, right)}</select></label>
-<label class="divider">Divider <input id="divider" type="range" min="0" max="100" step="1" value="50"></label>
-<label><input id="sharp" type="checkbox" checked> single pixels</label>
-</div>
-<div id="stack" class="stack">
-<figure><img id="under" alt="${attribute(variants[right]!.name)}" src="${png(variants[right]!.image)}" draggable="false"><figcaption id="under-name">${text(variants[right]!.name)}</figcaption></figure>
-<figure class="over"><img id="over" alt="${attribute(variants[left]!.name)}" src="${png(variants[left]!.image)}" draggable="false"><figcaption id="over-name">${text(variants[left]!.name)}</figcaption></figure>
-<div id="line" class="line" aria-hidden="true"></div>
-</div>
-<p class="small">All images: black ${number(greyRange.black)}, white ${number(greyRange.white)} (${text(greyRange.rule)}). Drag the line in the image, or use the arrow keys on the divider.</p>
-</section>
-<section aria-labelledby="differences">
-<h2 id="differences">Differences from the reference</h2>
-<p class="scale"><span>${number(-data.differenceLimit)}</span><span class="bar" role="img" aria-label="Colours from blue over white to orange"></span><span>+${number(data.differenceLimit)}</span></p>
-<div class="grid">
-${variants.map(({ name, difference }) => (difference ? `<figure><img alt="Difference of ${attribute(name)} from the reference" src="${png(difference)}"><figcaption>${text(name)}</figcaption></figure>` : "")).join("\n")}
-</div>
-</section>
-<section aria-labelledby="curves">
-<h2 id="curves">Curves</h2>
-<div class="grid">
-${figures.map(({ title: name, svg, describe }) => `<figure class="curve">${inlineSvg(svg)}<figcaption>${text(name)}: ${text(describe)}</figcaption></figure>`).join("\n")}
-</div>
-</section>
-<section aria-labelledby="recipes">
-<h2 id="recipes">Recipes</h2>
-${variants.map(({ name, recipe }, i) => `<details><summary>${text(name)}</summary><pre id="recipe-${i}">${text(recipe)}</pre><button type="button" class="copy" data-from="recipe-${i}">Copy</button></details>`).join("\n")}
-</section>
-<section aria-labelledby="facts">
-<h2 id="facts">What was compared</h2>
+${numbers(data)}
+${viewer(data)}
+${charts(data)}
+${recipes(data)}
+<section id="facts">
+<h2>Origin</h2>
 <dl>
-${facts.map(([label, value]) => `<div><dt>${text(label)}</dt><dd>${text(value)}</dd></div>`).join("\n")}
-</dl>
-<h3>Columns</h3>
-<dl>
-${data.columns.map(({ label, unit, describe }) => `<div><dt>${text(heading(label, unit))}</dt><dd>${text(describe)}</dd></div>`).join("\n")}
+${data.facts.map(([label, value]) => html`<dt>${label}</dt><dd>${value}</dd>`)}
 </dl>
 </section>
 </main>
-<p id="said" class="said" role="status" aria-live="polite"></p>
-<script>
-const images = ${json(variants.map(({ name, image }) => ({ name, image: png(image) })))};
-${PAGE_SCRIPT}</script>
+<footer><p class="quiet">${data.caution}</p></footer>
+<p class="heard" role="status" id="said"></p>
+<script type="module">${new Html(script)}</script>
 </body>
 </html>
-`;
+`.markup;
 }
 
-function table({ columns, variants, reference }: ComparisonPage): string {
-  const head = [{ label: "variant", unit: "", describe: "what the recipe has" }, ...columns].map(
-    ({ label, unit, describe }, i) =>
-      `<th scope="col"${i === 0 ? ` aria-sort="none"` : ` class="number" aria-sort="none"`}><button type="button" data-column="${i}" title="${attribute(describe)}">${text(heading(label, unit))}</button></th>`,
-  );
-  const rows = variants.map(
-    ({ name, values }) =>
-      `<tr${name === reference ? ` class="reference"` : ""}><th scope="row">${text(name)}</th>${columns
-        .map(({ id }) => {
-          const value = values[id] ?? null;
-          return `<td class="number" data-value="${value ?? ""}">${value === null ? "–" : number(value)}</td>`;
-        })
-        .join("")}</tr>`,
-  );
-  return `<table id="measures"><thead><tr>${head.join("")}</tr></thead><tbody>\n${rows.join("\n")}\n</tbody></table>`;
+function charts({ figures }: ComparisonPage): Html | undefined {
+  if (figures.length === 0) return undefined;
+  return html`<section id="charts">
+<h2>Charts</h2>
+<div class="charts">
+${figures.map(
+  ({ title, svg, describe }) =>
+    html`<figure><h3 class="heard">${title}</h3>${new Html(svg)}<figcaption>${describe}</figcaption></figure>`,
+)}
+</div>
+</section>`;
 }
 
-function options(variants: ComparisonPage["variants"], chosen: number): string {
-  return variants
-    .map(({ name }, i) => `<option value="${i}"${i === chosen ? " selected" : ""}>${text(name)}</option>`)
-    .join("");
-}
-
-function heading(label: string, unit: string): string {
-  return unit ? `${label} (${unit})` : label;
-}
-
-/** Four digits. */
-function number(value: number): string {
-  return String(Number(value.toPrecision(4)));
-}
-
-function png(bytes: Uint8Array): string {
-  return `data:image/png;base64,${Buffer.from(bytes).toString("base64")}`;
-}
-
-/** The drawing as wide as there is room, whatever its size on paper. */
-function inlineSvg(svg: string): string {
-  return svg.replace(/<svg ([^>]*?)width="[^"]*" height="[^"]*"/, "<svg $1");
-}
-
-function text(value: string): string {
-  return value.replaceAll("&", "&amp;").replaceAll("<", "&lt;").replaceAll(">", "&gt;");
-}
-
-function attribute(value: string): string {
-  return text(value).replaceAll('"', "&quot;").replaceAll("'", "&#39;");
-}
-
-/** JSON that cannot end the script that it stands in. */
-function json(value: unknown): string {
-  return JSON.stringify(value)
-    .replaceAll("<", "\\u003c")
-    .replaceAll("\u2028", "\\u2028")
-    .replaceAll("\u2029", "\\u2029");
+/** What lets the browser run this text and no other. Source: W3C, Content Security Policy Level 3, section 2.3.1. */
+function contentHash(text: string): string {
+  return `sha256-${createHash("sha256").update(text).digest("base64")}`;
 }

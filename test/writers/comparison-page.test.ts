@@ -1,203 +1,274 @@
-import { existsSync, writeFileSync } from "node:fs";
-import path from "node:path";
-import { pathToFileURL } from "node:url";
-import { type Browser, chromium, type Page } from "playwright-core";
-import { afterAll, beforeAll, describe, expect, test } from "vitest";
-import { type ComparisonPage, comparisonPage } from "../../src/writers/comparison-page.js";
-import { encodePng } from "../../src/writers/png.js";
-import { scratchFolder } from "../support/run-carillon.js";
+import { PNG } from "pngjs";
+import { describe, expect, test } from "vitest";
+import { openBeforeEach, page, reopen } from "./comparison-browser.js";
+import { flatPng, sample } from "./comparison-sample.js";
 
-const folder = scratchFolder("page");
-const file = path.join(folder, "compare.html");
-const PLACES = [
-  process.env.CHROMIUM,
-  "/usr/bin/chromium",
-  "/usr/bin/chromium-browser",
-  "/usr/bin/google-chrome",
-];
+openBeforeEach();
 
-/** A picture of one grey. */
-const grey = (level: number) =>
-  encodePng({ width: 64, height: 48, colour: "grey", pixels: new Uint8Array(64 * 48).fill(level) });
+/** The variants in the order of the table's rows, by their place in the data. */
+const rowOrder = () =>
+  page.locator("#numbers tbody tr").evaluateAll((rows) => rows.map((row) => row.dataset.variant));
+const heading = (name: RegExp) => page.locator("#numbers thead th").filter({ hasText: name });
+const sortBy = (name: RegExp) => heading(name).getByRole("button").click();
+const knob = () => page.getByRole("slider");
+const dividerPercent = async () => Number(await knob().getAttribute("aria-valuenow"));
 
-const DATA: ComparisonPage = {
-  title: `Comparison: a<b> & "c" 'd'.h5`,
-  caution: "For research only, not for diagnosis or treatment.",
-  facts: [["input", "a<b>.h5"]],
-  reference: "window=none",
-  columns: [
-    { id: "width", label: "width", unit: "mm", describe: "full width" },
-    { id: "noise", label: "noise", unit: "", describe: "of the region" },
-  ],
-  variants: [
-    {
-      name: "window=none",
-      values: { width: 2.25, noise: 1 },
-      recipe: "carillon: 1\nstages: [a]\n",
-      image: grey(10),
-      difference: undefined,
-    },
-    {
-      name: "window=hann",
-      values: { width: 10.5, noise: null },
-      recipe: "carillon: 1\nstages: [b]\n",
-      image: grey(90),
-      difference: grey(120),
-    },
-    {
-      name: `<img src=x onerror="fail()">`,
-      values: { width: 3.5, noise: 0.25 },
-      recipe: "carillon: 1\n# </script><script>fail()</script>\n",
-      image: grey(200),
-      difference: grey(130),
-    },
-  ],
-  differenceLimit: 2.5,
-  greyRange: { black: 0, white: 1, rule: "as given" },
-  figures: [
-    {
-      title: "Edge",
-      svg: '<svg xmlns="http://www.w3.org/2000/svg" width="85mm" height="50mm" viewBox="0 0 10 10"><text>mm</text></svg>',
-      describe: "across it",
-    },
-  ],
-};
+/** The grey level on the screen at a share of the pair's width. */
+async function levelAt(share: number): Promise<number> {
+  const { data, width, height } = PNG.sync.read(await page.locator("#images").screenshot());
+  const x = Math.min(width - 1, Math.round(share * width));
+  return data[4 * (Math.floor(height / 4) * width + x)] ?? Number.NaN;
+}
 
-let browser: Browser;
-let page: Page;
-const faults: string[] = [];
-const requests: string[] = [];
-
-beforeAll(async () => {
-  const executablePath = PLACES.find((place) => place !== undefined && existsSync(place));
-  if (!executablePath)
-    throw new Error("no Chromium: install Debian's chromium, or name one in the environment: CHROMIUM=/path");
-  writeFileSync(file, comparisonPage(DATA));
-  browser = await chromium.launch({ executablePath, args: ["--no-sandbox"] });
-  page = await browser.newPage({ viewport: { width: 1000, height: 900 } });
-  page.on("console", (message) => faults.push(message.text()));
-  page.on("pageerror", (error) => faults.push(error.message));
-  page.on("request", (request) => requests.push(request.url()));
-  await page.goto(pathToFileURL(file).href);
-}, 60_000);
-afterAll(() => browser?.close());
-
-const column = (index: number) =>
-  page
-    .locator("#measures tbody tr")
-    .evaluateAll((rows, at) => rows.map((row) => row.children[at]!.textContent), index);
-/** Where the upper image is cut off, in shares of its width. */
-const split = () => page.locator("#stack").evaluate((stack) => stack.style.getPropertyValue("--split"));
-
-describe("the page of a comparison, in a browser", () => {
-  test("the table sorts by numbers, a second time the other way, what is missing last", async () => {
-    expect(await column(1)).toEqual(["2.25", "10.5", "3.5"]);
-    await page.click("text=width (mm)");
-    expect(await column(1)).toEqual(["2.25", "3.5", "10.5"]);
-    await page.click("text=width (mm)");
-    expect(await column(1)).toEqual(["10.5", "3.5", "2.25"]);
-    const head = page.locator("#measures thead th").nth(1);
-    expect(await head.getAttribute("aria-sort")).toBe("descending");
-    const noise = page.locator("#measures thead button").nth(2);
-    await noise.focus();
-    await page.keyboard.press("Enter");
-    expect(await column(2)).toEqual(["0.25", "1", "–"]);
-    await page.keyboard.press("Enter");
-    expect(await column(2)).toEqual(["1", "0.25", "–"]);
-    expect(await head.getAttribute("aria-sort")).toBe("none");
+describe("the table", () => {
+  test("sorts numbers as numbers, missing ones last: upward, downward, as it was", async () => {
+    await sortBy(/Resolution/);
+    expect(await rowOrder()).toEqual(["3", "0", "1", "2"]);
+    expect(await heading(/Resolution/).getAttribute("aria-sort")).toBe("ascending");
+    await sortBy(/Resolution/);
+    expect(await rowOrder()).toEqual(["1", "0", "3", "2"]);
+    expect(await heading(/Resolution/).getAttribute("aria-sort")).toBe("descending");
+    await sortBy(/Resolution/);
+    expect(await rowOrder()).toEqual(["0", "1", "2", "3"]);
+    expect(await page.locator("[aria-sort]").count()).toBe(0);
   });
 
-  test("the divider moves by arrow keys and by dragging in the image, and the cut follows", async () => {
-    expect(await split()).toBe("50%");
-    await page.focus("#divider");
-    for (let i = 0; i < 5; i++) await page.keyboard.press("ArrowRight");
-    expect(await split()).toBe("55%");
-    const box = (await page.locator("#under").boundingBox())!;
-    await page.mouse.move(box.x + 0.55 * box.width, box.y + 20);
+  test("puts negative values first, infinite ones before what is not a number", async () => {
+    await sortBy(/SNR$/);
+    expect(await rowOrder()).toEqual(["2", "1", "0", "3"]);
+    await sortBy(/PSNR/);
+    expect(await rowOrder()).toEqual(["2", "1", "0", "3"]);
+    await sortBy(/PSNR/);
+    expect(await rowOrder()).toEqual(["0", "1", "2", "3"]);
+    expect(await page.locator("[aria-sort]").count()).toBe(1);
+  });
+
+  test("sorts by name, and by the keyboard", async () => {
+    await heading(/Variant/)
+      .getByRole("button")
+      .focus();
+    await page.keyboard.press("Enter");
+    expect(await rowOrder()).toEqual(["2", "1", "0", "3"]);
+    await page.keyboard.press("Space");
+    expect(await rowOrder()).toEqual(["3", "0", "1", "2"]);
+    expect(await page.locator("#said").textContent()).toBe("Sorted by Variant, descending.");
+  });
+
+  test("shows values of one column with the same decimals, and what is missing as such", async () => {
+    const column = (c: number) => page.locator(`#numbers tbody tr td:nth-of-type(${c})`).allInnerTexts();
+    expect((await column(2)).map((text) => text.replace(/\s*none$/, ""))).toEqual([
+      "9.50",
+      "10.25",
+      "–",
+      "2.00",
+    ]);
+    expect(await column(3)).toEqual(["100", "20", "−3", "1000"]);
+  });
+});
+
+describe("the divider", () => {
+  test("stands in the middle: A left of it, B right of it", async () => {
+    expect(await dividerPercent()).toBe(50);
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([40, 120]);
+  });
+
+  test("follows the mouse, from the images and from the knob", async () => {
+    const box = (await page.locator("#images").boundingBox())!;
+    const at = (share: number) => box.x + share * box.width;
+    await page.mouse.move(at(0.5), box.y + 20);
     await page.mouse.down();
-    await page.mouse.move(box.x + 0.2 * box.width, box.y + 30, { steps: 4 });
+    await page.mouse.move(at(0.8), box.y + 40, { steps: 4 });
     await page.mouse.up();
-    expect(Number.parseFloat(await split())).toBeCloseTo(20, -0.5);
-    await page.mouse.move(box.x + 0.9 * box.width, box.y + 30);
-    expect(Number.parseFloat(await split())).toBeCloseTo(20, -0.5); // let go
-    expect(await page.inputValue("#divider")).toBe(String(Number.parseFloat(await split())));
-    // What is seen: the left one's grey left of the line, the right one's right of it.
-    const shot = await page.locator("#stack").screenshot();
-    const { PNG } = (await import("pngjs")).default;
-    const png = PNG.sync.read(shot);
-    const at = (share: number) =>
-      png.data[4 * (Math.floor(png.height / 3) * png.width + Math.floor(share * png.width))];
-    expect([at(0.1), at(0.6)]).toEqual([10, 90]);
+    expect(await dividerPercent()).toBeCloseTo(80, 0); // a pixel of the screen is 0.15 %
+    expect([await levelAt(0.7), await levelAt(0.9)]).toEqual([40, 120]);
+
+    await knob().scrollIntoViewIfNeeded();
+    const grip = (await knob().boundingBox())!;
+    await page.mouse.move(grip.x + grip.width / 2, grip.y + grip.height / 2);
+    await page.mouse.down();
+    await page.mouse.move(at(0.1), grip.y, { steps: 4 });
+    await page.mouse.move(at(0.3), grip.y, { steps: 4 });
+    await page.mouse.up();
+    await page.mouse.move(at(0.6), grip.y); // let go: no longer followed
+    expect(await dividerPercent()).toBeCloseTo(30, 0);
+    expect([await levelAt(0.25), await levelAt(0.35)]).toEqual([40, 120]);
   });
 
-  test("other variants are chosen, and named", async () => {
-    await page.selectOption("#right", "2");
-    expect(await page.textContent("#under-name")).toBe(DATA.variants[2]!.name);
-    expect(await page.getAttribute("#under", "src")).toContain(Buffer.from(grey(200)).toString("base64"));
-    await page.selectOption("#left", { label: "window=hann" });
-    expect(await page.getAttribute("#over", "alt")).toBe("window=hann");
-  });
-
-  test("a recipe is copied, or selected where the clipboard is out of reach", async () => {
-    await page.click("summary >> nth=1");
-    await page.click("button.copy >> nth=1");
-    const said = await page.waitForSelector("#said:not(:empty)");
-    await expect.poll(() => said.textContent()).toMatch(/^Recipe (copied|selected)/);
-    if ((await said.textContent())!.startsWith("Recipe selected"))
-      expect(await page.evaluate("String(getSelection())")).toBe(DATA.variants[1]!.recipe.trimEnd());
-    else {
-      await page.context().grantPermissions(["clipboard-read"]);
-      expect(await page.evaluate("navigator.clipboard.readText()")).toBe(DATA.variants[1]!.recipe);
+  test("follows the keys, and stops at the ends", async () => {
+    await knob().focus();
+    for (const [key, percent] of [
+      ["ArrowRight", 51],
+      ["ArrowUp", 52],
+      ["ArrowLeft", 51],
+      ["ArrowDown", 50],
+      ["Shift+ArrowLeft", 40],
+      ["PageUp", 50],
+      ["PageDown", 40],
+      ["End", 100],
+      ["ArrowRight", 100],
+      ["Home", 0],
+      ["ArrowLeft", 0],
+      ["Shift+ArrowRight", 10],
+    ] as const) {
+      await page.keyboard.press(key);
+      expect(await dividerPercent(), key).toBe(percent);
     }
+    expect([await levelAt(0.05), await levelAt(0.15)]).toEqual([40, 120]);
+    expect(await knob().getAttribute("aria-valuetext")).toBe("10 % A, 90 % B");
   });
 
-  test("on paper: recipes open, both images side by side, no controls, the caution", async () => {
-    await page.evaluate("dispatchEvent(new Event('beforeprint'))");
-    await page.emulateMedia({ media: "print" });
-    expect(await page.locator("#recipe-2").isVisible()).toBe(true);
-    expect(await page.locator("#divider").isVisible()).toBe(false);
-    expect(await page.locator(".caution").isVisible()).toBe(true);
-    const [over, under] = [
-      await page.locator("#over").boundingBox(),
-      await page.locator("#under").boundingBox(),
+  test("goes to the ends by buttons", async () => {
+    await page.getByRole("button", { name: "Only A" }).click();
+    expect([await levelAt(0.02), await levelAt(0.95)]).toEqual([40, 40]);
+    await page.getByRole("button", { name: "Only B" }).click();
+    expect([await levelAt(0.02), await levelAt(0.95)]).toEqual([120, 120]);
+  });
+
+  test("follows a finger on the knob and a tap; a finger drawn over the images scrolls", async () => {
+    await reopen(sample(), { viewport: { width: 390, height: 844 }, hasTouch: true });
+    await page.locator("#images").scrollIntoViewIfNeeded();
+    const box = (await page.locator("#images").boundingBox())!;
+    const at = (share: number) => box.x + share * box.width;
+    await page.touchscreen.tap(at(0.2), box.y + 30);
+    expect(await dividerPercent()).toBeCloseTo(20, 0);
+
+    await knob().scrollIntoViewIfNeeded();
+    const grip = (await knob().boundingBox())!;
+    await drawFinger([grip.x + grip.width / 2, grip.y + 10], [at(0.9), grip.y + 10]);
+    expect(await dividerPercent()).toBeCloseTo(90, 0);
+
+    const before: number = await page.evaluate("scrollY");
+    const there = (await page.locator("#images").boundingBox())!;
+    await drawFinger([at(0.4), there.y + 100], [at(0.4), there.y - 100]);
+    await page.waitForFunction(`scrollY > ${before}`);
+    expect(await dividerPercent()).toBeCloseTo(90, 0);
+  });
+});
+
+async function drawFinger(from: readonly [number, number], to: readonly [number, number]): Promise<void> {
+  const session = await page.context().newCDPSession(page);
+  const steps = 8;
+  for (let i = 0; i <= steps; i++) {
+    const [x, y] = [0, 1].map((axis) => from[axis]! + ((to[axis]! - from[axis]!) * i) / steps) as [
+      number,
+      number,
     ];
-    expect(over!.x + over!.width).toBeLessThanOrEqual(under!.x);
-    await page.emulateMedia({ media: "screen" });
-    await page.evaluate("dispatchEvent(new Event('afterprint'))");
-    expect(await page.locator("#recipe-2").isVisible()).toBe(false);
+    await session.send("Input.dispatchTouchEvent", {
+      type: i === 0 ? "touchStart" : "touchMove",
+      touchPoints: [{ x, y }],
+    });
+  }
+  await session.send("Input.dispatchTouchEvent", { type: "touchEnd", touchPoints: [] });
+}
+
+describe("the choice of the pair", () => {
+  test("by list", async () => {
+    await page.getByLabel("B, right").selectOption("3");
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([40, 250]);
+    expect(await page.locator("#against tbody tr:nth-child(2) td").allInnerTexts()).toEqual(["100", "1000"]);
+    expect(await page.locator("#difference-b figcaption").textContent()).toBe(
+      "B: apodize.window=tukey:0.5 minus apodize.window=none",
+    );
   });
 
-  test("the keyboard reaches every control", async () => {
-    const wanted = await page.locator("button:visible, select, input, summary, .scroll").count();
-    await page.focus("body");
-    await page.evaluate("document.activeElement.blur()");
-    const seen = new Set<string>();
-    for (let i = 0; i < wanted + 5; i++) {
-      await page.keyboard.press("Tab");
-      seen.add(
-        await page.evaluate(
-          "(document.activeElement.id || document.activeElement.tagName + document.activeElement.textContent)",
-        ),
-      );
-    }
-    expect(seen.size).toBeGreaterThanOrEqual(wanted);
+  test("by the rows of the table, also when sorted", async () => {
+    await sortBy(/Resolution/);
+    await page.getByRole("button", { name: "Show apodize.window=tukey:0.5 as A" }).click();
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([250, 120]);
+    expect(await page.getByLabel("A, left").inputValue()).toBe("3");
+    const pressed = page.locator("button[data-side='a'][aria-pressed='true']");
+    expect(await pressed.evaluateAll((buttons) => buttons.map((button) => button.dataset.variant))).toEqual([
+      "3",
+    ]);
+    expect(await page.locator("#against tbody tr:nth-child(2) td").allInnerTexts()).toEqual(["1000", "20"]);
   });
 
-  test("text is text: nothing of a name or a recipe becomes markup; no request but the page itself, no fault", async () => {
-    expect(await page.textContent("h1")).toBe(DATA.title);
-    expect(await page.textContent("#recipe-2")).toBe(DATA.variants[2]!.recipe);
-    expect(requests.filter((url) => !url.startsWith("data:"))).toEqual([pathToFileURL(file).href]);
-    expect(faults).toEqual([]);
+  test("a variant that the other side shows changes places", async () => {
+    await page.getByLabel("A, left").selectOption("1");
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([120, 40]);
+    await page.getByRole("button", { name: "Swap A and B" }).click();
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([40, 120]);
   });
 
-  test("narrow: nothing but the table is wider than the screen", async () => {
-    await page.setViewportSize({ width: 360, height: 700 });
-    const width = await page.evaluate("document.documentElement.scrollWidth");
-    expect(width).toBeLessThanOrEqual(360);
-    await page.setViewportSize({ width: 1000, height: 900 });
+  test("shows the difference of each, and says that the reference has none", async () => {
+    const source = (selector: string) => page.locator(selector).getAttribute("src");
+    expect(await page.locator("#difference-a img").isVisible()).toBe(false);
+    expect(await page.locator("#difference-a figcaption").textContent()).toMatch(/is the reference/);
+    expect(await source("#difference-b img")).toBe(await source("#variant-1 img.difference"));
   });
 
-  test("the same data give the same bytes", () => {
-    expect(comparisonPage(DATA)).toBe(comparisonPage(DATA));
+  test("shows the scale of differences that bear none themselves", async () => {
+    expect(await page.locator(".scale").count()).toBe(0);
+    await reopen(sample({ differenceLimit: 0.25 }));
+    expect(await page.locator(".scale span").allTextContents()).toEqual(["−0.25", "+0.25"]);
+    const { data, width } = PNG.sync.read(await page.locator(".scale svg").screenshot());
+    const at = (share: number) => [...data.subarray(4 * (5 * width + Math.round(share * width)))].slice(0, 3);
+    const [[, , lowBlue], middle, [highRed, , highBlue]] = [at(0.05), at(0.5), at(0.95)];
+    expect(Math.min(...middle!)).toBeGreaterThan(240); // white, or one of 64 steps beside it
+    expect(lowBlue).toBeGreaterThan(120); // blue is low, orange is high
+    expect(highRed).toBeGreaterThan(120);
+    expect(highBlue).toBeLessThan(60);
+  });
+
+  test("states the grey range, and smooths pixels only when told", async () => {
+    expect(await page.locator("#pair").textContent()).toContain(
+      "black 0, white 1.25 (99.5th percentile of the foreground)",
+    );
+    const rendering = () =>
+      page
+        .locator(".left img")
+        .evaluate((image) => image.ownerDocument.defaultView.getComputedStyle(image).imageRendering);
+    expect(await rendering()).toBe("pixelated");
+    await page.getByLabel("Pixels as squares").uncheck();
+    expect(await rendering()).toBe("auto");
+  });
+
+  test("a whole size makes every pixel as many pixels of the screen", async () => {
+    await page.getByLabel("Size").selectOption("3");
+    const box = (await page.locator(".left img").boundingBox())!;
+    expect([box.width, box.height]).toEqual([120, 90]);
+  });
+
+  test("says when A and B differ in shape", async () => {
+    expect(await page.locator("#shapes").isVisible()).toBe(false);
+    const data = sample();
+    const wide = Buffer.from(flatPng(9));
+    wide.writeUInt32BE(80, 16); // the width in the header
+    await reopen({
+      ...data,
+      variants: data.variants.map((each, v) => (v === 3 ? { ...each, image: wide } : each)),
+    });
+    await page.getByLabel("B, right").selectOption("3");
+    expect(await page.locator("#shapes").isVisible()).toBe(true);
+  });
+
+  test("one variant alone is shown on both sides", async () => {
+    const data = sample();
+    await reopen({ ...data, variants: data.variants.slice(0, 1) });
+    expect([await levelAt(0.25), await levelAt(0.75)]).toEqual([40, 40]);
+  });
+});
+
+describe("a recipe", () => {
+  const recipe = sample().variants[1]!.recipe;
+  const copy = () => page.getByRole("button", { name: "Copy the recipe of apodize.window=hann" }).click();
+
+  test("is copied exactly", async () => {
+    await page.context().grantPermissions(["clipboard-read", "clipboard-write"]);
+    await copy();
+    await page.locator("#variant-1 .copied").filter({ hasText: "Copied." }).waitFor();
+    expect(await page.evaluate("navigator.clipboard.readText()")).toBe(recipe);
+  });
+
+  test.each([
+    ["refuses", "navigator.clipboard.writeText = () => Promise.reject(new Error('refused'))"],
+    ["knows no clipboard", "Object.defineProperty(navigator, 'clipboard', { value: undefined })"],
+  ])("is unfolded and selected where the browser %s", async (_, script) => {
+    await page.evaluate(script);
+    await copy();
+    await page.locator("#variant-1 .copied").filter({ hasText: "Selected" }).waitFor();
+    // The browser's text of a selection lacks the line feed at its end, which YAML does not need.
+    expect(await page.evaluate("getSelection().toString()")).toBe(recipe.trimEnd());
+    expect(await page.locator("#variant-1 pre").isVisible()).toBe(true);
   });
 });
