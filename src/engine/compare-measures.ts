@@ -158,7 +158,7 @@ function remarksOn(
   { widthMeasuredMm: measured, widthTheoryMm: theory }: MeasureValues,
   edge: Edge | undefined,
 ): string[] {
-  if (!edge) return ["no straight edge was found: name one with --edge"];
+  if (!edge) return ["no straight edge between two levels was found: name one with --edge"];
   if (!measured || !theory || measured < SOFT_EDGE * theory) return [];
   const [found, least] = [measured, theory].map((mm) => Number(mm.toPrecision(3)));
   return [
@@ -178,8 +178,19 @@ function edgeImage(variant: VariantImages, shown: number) {
 
 function edgeOf(reference: VariantImages, shown: number, { edge }: MeasureSettings): Edge | undefined {
   const image = edgeImage(reference, shown);
-  return edge ? edgeAt(image, edge.axis, edge.line, edge.positionPixels, EDGE) : findEdge(image, EDGE);
+  if (edge) return edgeAt(image, edge.axis, edge.line, edge.positionPixels, EDGE);
+  const found = findEdge(image, EDGE);
+  return found && isStep(edgeFigures(edgeProfile(image, found, EDGE))) ? found : undefined;
 }
+
+/**
+ * No window overshoots an edge by more than 9 % (Gibbs), and noise and shading add some; what is beyond is no step but
+ * the rim of something thin, on which width and ringing mean nothing.
+ */
+function isStep({ overshoot, undershoot }: { overshoot: number; undershoot: number }): boolean {
+  return Math.max(overshoot, undershoot) < MOST_RINGING;
+}
+const MOST_RINGING = 0.35;
 
 /** The same edge on a variant of perhaps another matrix. */
 function edgeOn(variant: VariantImages, shown: number, edge: Edge, reference: VariantImages) {
