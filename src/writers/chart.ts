@@ -138,7 +138,7 @@ function seriesMarks(series: Series, style: SeriesStyle, x: PlacedAxis, y: Place
   return marks;
 }
 
-/** A reference line, its label just inside the plot: above a level line, to the right of an upright one. */
+/** A reference line, its label just inside the plot: above a level line at its left, to the right of an upright one. */
 function referenceMarks({ axis, at, label }: ReferenceLine, x: PlacedAxis, y: PlacedAxis, box: Box): Mark[] {
   const isLevel = axis === "y";
   const place = isLevel ? y.place(at) : x.place(at);
@@ -149,8 +149,8 @@ function referenceMarks({ axis, at, label }: ReferenceLine, x: PlacedAxis, y: Pl
   const line: Mark = { kind: "lines", pieces: [ends], colour: "#666666", widthPt: 0.7, dashPt: [1, 2] };
   const isNearRight = !isLevel && place + 4 + textWidth(label, TICK_PT) > box.right;
   const labelAt: Point = isLevel
-    ? [box.right - 3, place - 2.5]
+    ? [box.left + 3, place - 2.5]
     : [isNearRight ? place - 3 : place + 3, box.top + TICK_PT * CAP_SHARE + 3];
-  const anchor = isLevel || isNearRight ? "end" : "start";
+  const anchor = isNearRight ? "end" : "start";
   return [line, text(label, labelAt, TICK_PT, anchor, { colour: "#666666" })];
 }
