@@ -7,18 +7,23 @@ import { maskFromArray, type Region, RegionError, regionMask } from "../kernels/
 const FORM =
   "For example: ellipse:0,-20,30,30 (mm from the centre), rectangle:40,50,16,16px (pixels), or mask.npy";
 
-/** A region of the flags on the reference's image. @throws UsageError for a wrong form or no pixel inside */
-export function regionOn(flag: string, text: string, { height, width, plan }: VariantImages): Uint8Array {
-  const pixel = pixelSizeMm(plan.result);
-  const grid = { height, width, pixelHeightMm: pixel.y, pixelWidthMm: pixel.x };
-  try {
-    if (!text.endsWith(".npy")) return regionMask(parseRegion(flag, text), grid);
-    const { data, shape } = readArrays([text]).get(text)!;
-    return maskFromArray(data, shape, grid);
-  } catch (error) {
-    if (!(error instanceof RegionError)) throw error;
-    throw new UsageError({ field: flag, value: text }, error.rule, error.mend);
-  }
+/**
+ * A region of the flags, read at once and laid on the reference's image once that is there.
+ * @throws UsageError for a wrong form or a file that cannot be read; later, for no pixel inside
+ */
+export function regionFrom(flag: string, text: string): (reference: VariantImages) => Uint8Array {
+  const mask = text.endsWith(".npy") ? readArrays([text]).get(text)! : undefined;
+  const region = mask ? undefined : parseRegion(flag, text);
+  return ({ height, width, plan }) => {
+    const pixel = pixelSizeMm(plan.result);
+    const grid = { height, width, pixelHeightMm: pixel.y, pixelWidthMm: pixel.x };
+    try {
+      return region ? regionMask(region, grid) : maskFromArray(mask!.data, mask!.shape, grid);
+    } catch (error) {
+      if (!(error instanceof RegionError)) throw error;
+      throw new UsageError({ field: flag, value: text }, error.rule, error.mend);
+    }
+  };
 }
 
 export function parseRegion(flag: string, text: string): Region {

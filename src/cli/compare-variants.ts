@@ -2,6 +2,7 @@ import path from "node:path";
 import type { Variant } from "../engine/compare.js";
 import { UsageError } from "../errors.js";
 import type { ScanOverrides } from "../physics/scan.js";
+import { applySetting, EMPTY_RECIPE } from "../recipe/recipe.js";
 import type { Flags } from "./command.js";
 import { refuseLargeGrid } from "./compare.js";
 import { requestOf } from "./plan-file.js";
@@ -59,7 +60,9 @@ export function settingsOf(text: string): string[] {
       "how the file is read cannot vary",
       "Compare two runs",
     );
-  return parted(values).map((value) => `${key}=${value.trim()}`);
+  const settings = parted(values).map((value) => `${key}=${value.trim()}`);
+  for (const setting of settings) applySetting(EMPTY_RECIPE, setting, "--vary"); // what is wrong in it names this flag
+  return settings;
 }
 
 function parted(text: string): string[] {

@@ -120,17 +120,16 @@ type SettingsOf = Parameters<
 
 /** Edge and regions as the flags say, laid on the reference's matrix once it is known. */
 async function settingsOf(flags: Flags): Promise<SettingsOf> {
-  const { defaultRegion, parseEdge, regionOn } = await import("./compare-regions.js");
+  const { defaultRegion, parseEdge, regionFrom } = await import("./compare-regions.js");
   const edge = flags.edge === undefined ? undefined : parseEdge(flags.edge as string);
   const [region, noiseRegion] = [flags.region, flags["noise-region"]] as (string | undefined)[];
+  const regionOn = region === undefined ? undefined : regionFrom("--region", region);
+  const noiseRegionOn = noiseRegion === undefined ? undefined : regionFrom("--noise-region", noiseRegion);
   const how = flags["noise-by"] as string;
   return (reference, shown) => ({
     ...(edge && { edge }),
-    region:
-      region === undefined
-        ? defaultRegion(reference.images[shown]!)
-        : regionOn("--region", region, reference),
-    ...(noiseRegion !== undefined && { noiseRegion: regionOn("--noise-region", noiseRegion, reference) }),
+    region: regionOn ? regionOn(reference) : defaultRegion(reference.images[shown]!),
+    ...(noiseRegionOn && { noiseRegion: noiseRegionOn(reference) }),
     describe: [
       ["region", region ?? "pixels above half of the bright level of the reference"],
       ["edge", edge ? (flags.edge as string) : "found on the reference"],

@@ -5,7 +5,14 @@ import type { Prepared } from "../engine/write-reconstruction.js";
 import { UsageError } from "../errors.js";
 import type { ScanFacts, ScanOverrides } from "../physics/scan.js";
 import { defaultRecipe, refuseUnsupported } from "../recipe/default-recipe.js";
-import { applySetting, outputSettings, type Recipe, readRecipe, scanOverrides } from "../recipe/recipe.js";
+import {
+  applySetting,
+  EMPTY_RECIPE,
+  outputSettings,
+  type Recipe,
+  readRecipe,
+  scanOverrides,
+} from "../recipe/recipe.js";
 import { type Shortcuts, withShortcuts } from "../recipe/shortcuts.js";
 import { stageById } from "../stages/registry.js";
 import type { Flags } from "./command.js";
@@ -31,9 +38,9 @@ export function requestOf(flags: Flags, finish: (recipe: Recipe) => Recipe = (re
   const settings = (flags.set as string[] | undefined) ?? [];
   const given = recipeFile === undefined ? undefined : readRecipe(textOf(recipeFile), recipeFile);
   const shortcuts = shortcutsOf(flags);
-  const complete = (base: Recipe) =>
-    withFlags(finish(settings.reduce(applySetting, withShortcuts(base, shortcuts))), flags);
-  const early = complete(given ?? { carillon: 1, scan: {}, stages: [], outputs: {} });
+  const withSettings = (base: Recipe) => settings.reduce((recipe, text) => applySetting(recipe, text), base);
+  const complete = (base: Recipe) => withFlags(finish(withSettings(withShortcuts(base, shortcuts))), flags);
+  const early = complete(given ?? EMPTY_RECIPE);
   outputSettings(early, recipeFile);
   for (const { id, parameters } of early.stages) {
     const stage = stageById(id)!;

@@ -21,6 +21,8 @@ export interface Recipe {
   readonly outputs: Readonly<Record<string, unknown>>;
 }
 
+export const EMPTY_RECIPE: Recipe = { carillon: 1, scan: {}, stages: [], outputs: {} };
+
 export interface OutputSettings {
   readonly pictures: boolean;
   readonly greyLow: number | undefined;
@@ -160,33 +162,30 @@ export function outputSettings(recipe: Pick<Recipe, "outputs">, file?: string): 
 /**
  * Change a recipe by `stage.parameter=value`, `stage=off`, `stage=on`, and likewise `scan.key=value` and
  * `outputs.key=value`. A stage that is absent is inserted at its place in the flow; taking out an absent one does nothing.
+ * @param flag  by which the setting was given, for the errors
  * @throws UsageError for an unknown stage or form, or a stage that occurs twice
  */
-export function applySetting(recipe: Recipe, setting: string): Recipe {
+export function applySetting(recipe: Recipe, setting: string, flag = "--set"): Recipe {
   const match = /^([a-z0-9-]+)(?:\.([a-z0-9-]+))?=(.*)$/s.exec(setting);
   const form = "Write stage.parameter=value, or stage=off";
   if (!match)
-    throw new UsageError(
-      { field: "--set", value: setting },
-      "must be of the form stage.parameter=value",
-      form,
-    );
+    throw new UsageError({ field: flag, value: setting }, "must be of the form stage.parameter=value", form);
   const [, id, key, text] = match as unknown as [string, string, string | undefined, string];
-  const value = settingValue(setting, text);
+  const value = settingValue(setting, text, flag);
   if ((id === "scan" || id === "outputs") && key !== undefined)
     return { ...recipe, [id]: { ...recipe[id], [key]: value } };
   const ids = STAGES.map((stage) => stage.id);
-  if (!ids.includes(id)) throw unknownName(undefined, "--set", id, [...ids, "scan", "outputs"]);
+  if (!ids.includes(id)) throw unknownName(undefined, flag, id, [...ids, "scan", "outputs"]);
   if (recipe.stages.filter((stage) => stage.id === id).length > 1)
     throw new UsageError(
-      { field: "--set", value: setting },
+      { field: flag, value: setting },
       `the recipe has ${id} twice`,
       "Change the recipe file instead",
     );
   if (key !== undefined) return withStage(recipe, id, { [key]: value });
   if (text === "off") return { ...recipe, stages: recipe.stages.filter((stage) => stage.id !== id) };
   if (text === "on") return withStage(recipe, id, {});
-  throw new UsageError({ field: "--set", value: setting }, "a stage is switched on or off", form);
+  throw new UsageError({ field: flag, value: setting }, "a stage is switched on or off", form);
 }
 
 /** The recipe with a stage at its place in the flow; one that is there keeps its other parameters. */
@@ -204,11 +203,11 @@ export function withStage(recipe: Recipe, id: string, parameters: Record<string,
 }
 
 /** A value as YAML reads it, so that numbers, lists and maps come out as in a recipe. */
-function settingValue(setting: string, text: string): unknown {
+function settingValue(setting: string, text: string, flag: string): unknown {
   try {
     return parseYaml(text);
   } catch {
-    throw new UsageError({ field: "--set", value: setting }, "the value is not YAML", "Quote it");
+    throw new UsageError({ field: flag, value: setting }, "the value is not YAML", "Quote it");
   }
 }
 

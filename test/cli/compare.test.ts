@@ -138,6 +138,7 @@ describe("compare", () => {
       [["--vary", "apodize.window"], "--vary is apodize.window; must be of the form STAGE.KEY=A,B"],
       [["--vary", "apodize.window=hann,hannn"], "apodize.window is hannn"],
       [["--vary", "apodize.window=hann,hann"], "--vary is apodize.window=hann; occurs twice"],
+      [["--vary", "apodise.window=none,hann"], "--vary: apodise: no such name. Did you mean apodize?"],
       [["--vary", "scan.conjugate=true,false"], "how the file is read cannot vary"],
       [
         [

@@ -30,7 +30,10 @@ beforeAll(() =>
 const variant = (...settings: string[]): Variant => ({
   name: settings.join(", ") || "default",
   prepare(facts) {
-    const recipe = settings.reduce(applySetting, defaultRecipe(facts, file).recipe);
+    const recipe = settings.reduce(
+      (recipe, text) => applySetting(recipe, text),
+      defaultRecipe(facts, file).recipe,
+    );
     return { recipe, plan: planRecipe(facts, recipe) };
   },
 });

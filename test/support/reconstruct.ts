@@ -35,7 +35,10 @@ export async function reconstructed(
     file,
     { keepCoils: true, workers: 1, overrides, ...options },
     (facts) => {
-      const recipe = settings.reduce(applySetting, change(defaultRecipe(facts, file).recipe));
+      const recipe = settings.reduce(
+        (recipe, text) => applySetting(recipe, text),
+        change(defaultRecipe(facts, file).recipe),
+      );
       return { recipe, plan: planRecipe(facts, recipe) };
     },
     () => ({
