@@ -14,6 +14,7 @@ import { axisLength } from "../stages/stage.js";
 import type { VariantImages } from "./compare.js";
 import { joined } from "./placement.js";
 import { pixelSizeMm } from "./plan.js";
+import { isSameGrid, samePixel, samePlace } from "./same-place.js";
 
 /** One column of a comparison: a theory and a measurement are two. */
 export interface MeasureColumn {
@@ -47,14 +48,14 @@ export const MEASURES: readonly MeasureColumn[] = [
     id: "overshootMeasured",
     label: "overshoot, measured",
     unit: "%",
-    describe: "the same on the image; noise adds to it",
+    describe: "the same on the image; noise, shading and edges near by change it",
   },
   { id: "undershootTheory", label: "undershoot, theory", unit: "%", describe: "the trough behind it" },
   {
     id: "undershootMeasured",
     label: "undershoot, measured",
     unit: "%",
-    describe: "the same on the image; noise adds to it",
+    describe: "the same on the image; noise, shading and edges near by change it",
   },
   {
     id: "noiseTheory",
@@ -192,14 +193,13 @@ function isStep({ overshoot, undershoot }: { overshoot: number; undershoot: numb
 }
 const MOST_RINGING = 0.35;
 
-/** The same edge on a variant of perhaps another matrix. */
+/** The same edge on a variant of perhaps another matrix or field of view. */
 function edgeOn(variant: VariantImages, shown: number, edge: Edge, reference: VariantImages) {
   const image = edgeImage(variant, shown);
-  const [along, across] =
-    edge.axis === "x"
-      ? [variant.width / reference.width, variant.height / reference.height]
-      : [variant.height / reference.height, variant.width / reference.width];
-  const own = edgeAt(image, edge.axis, Math.round(edge.line * across), edge.offsetPixels * along, EDGE);
+  const [from, to] = [reference.plan.result, variant.plan.result];
+  const line = samePixel(edge.line, edge.axis === "x" ? "y" : "x", from, to);
+  if (line === undefined) return undefined;
+  const own = edgeAt(image, edge.axis, line, samePlace(edge.offsetPixels, edge.axis, from, to), EDGE);
   if (!own) return undefined;
   const profile = edgeProfile(image, own, EDGE);
   const figures = edgeFigures(profile);
@@ -307,7 +307,7 @@ function noiseOf(
   { region, noiseRegion }: MeasureSettings,
   reference: VariantImages,
 ) {
-  if (variant.height !== reference.height || variant.width !== reference.width) return {};
+  if (!isSameGrid(variant.plan.result, reference.plan.result)) return {};
   const image = variant.images[shown]!;
   const noiseTheory = regionStatistics(map, region).mean;
   const noiseMeasured = variant.deviation
@@ -324,7 +324,7 @@ function noiseOf(
 
 /** Against the reference, over all chosen images. */
 function differenceOf(variant: VariantImages, reference: VariantImages, other: Float32Array, peak: number) {
-  if (variant.height !== reference.height || variant.width !== reference.width) return {};
+  if (!isSameGrid(variant.plan.result, reference.plan.result)) return {};
   if (variant === reference) return { nrmse: 0, ssim: 1 };
   const own = joined(variant.images);
   const shape = [variant.height, variant.width] as const;

@@ -1,10 +1,11 @@
 import { UsageError } from "../errors.js";
 import { frameCount } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
-import { axisLength, type Frame, type NoiseState } from "../stages/stage.js";
+import { axisLength, type Frame, type Layout, type NoiseState } from "../stages/stage.js";
 import { groupCounters, groupFrames, groupOf, type Plan } from "./plan.js";
 import type { GroupResult } from "./reconstruct.js";
 import { type PlannedRecipe, type RunOptions, run } from "./run.js";
+import { samePixel } from "./same-place.js";
 import type { Scan } from "./scan.js";
 
 /** One of the recipes that are compared. */
@@ -23,7 +24,7 @@ export interface CompareOptions extends RunOptions {
   readonly seed?: number;
 }
 
-/** A partition of a frame: what one picture shows. */
+/** A partition of a frame, by its index in the first variant: what one picture shows. */
 export interface ImagePlace {
   readonly frame: number;
   readonly z: number;
@@ -71,6 +72,7 @@ export async function reconstructVariants(
   let waiting = [...variants];
   let passes = 0;
   let last: { scan: Scan; choice: ImageChoice } | undefined;
+  let choice: ImageChoice | undefined; // of all variants, whichever pass they are in
   while (waiting.length) {
     const ready = waiting;
     let joined: Variant[] = [];
@@ -79,26 +81,30 @@ export async function reconstructVariants(
       file,
       {
         ...options,
-        keepCoils: (facts, plan, group) =>
-          shownPart(facts, plan, chooseImages(facts, plan, options)).group === group,
+        keepCoils: (facts, plan, group) => shownPart(facts, plan, choice!).group === group,
         ...(replicaCount !== undefined && {
           replicas: {
             count: replicaCount,
             seed,
-            groups: (facts: ScanFacts, plan: Plan) =>
-              new Set([shownPart(facts, plan, chooseImages(facts, plan, options)).group]),
+            groups: (facts: ScanFacts, plan: Plan) => new Set([shownPart(facts, plan, choice!).group]),
           },
         }),
       },
       (facts) => {
-        const planned = ready.map((variant) => ({ variant, ...variant.prepare(facts) }));
+        const all = variants.map((variant) => ({ variant, ...variant.prepare(facts) }));
+        choice = chooseImages(
+          facts,
+          all.map(({ plan }) => plan.result),
+          options,
+        );
+        const planned = all.filter(({ variant }) => ready.includes(variant));
         const key = passKey(planned[0]!.plan);
         const together = planned.filter(({ plan }) => passKey(plan) === key);
         joined = together.map(({ variant }) => variant);
         const [first, ...others] = together;
         return { plan: first!.plan, recipe: first!.recipe, variants: others };
       },
-      (facts, planned) => new Collecting(facts, planned, options),
+      (facts, planned) => new Collecting(facts, planned, choice!),
     );
     const { scan, attempt } = result;
     joined.forEach((variant, v) => void done.set(variant.name, attempt.finished(v, variant.name)));
@@ -106,13 +112,13 @@ export async function reconstructVariants(
     last = { scan, choice: attempt.choice };
     passes++;
   }
-  const { scan, choice } = last!;
+  const { scan, choice: chosen } = last!;
   return {
     scan,
     variants: variants.map(({ name }) => done.get(name)!),
-    places: choice.places,
-    shown: choice.shown,
-    imagesInAll: choice.inAll,
+    places: chosen.places,
+    shown: chosen.shown,
+    imagesInAll: chosen.inAll,
     passes,
   };
 }
@@ -131,24 +137,41 @@ interface ImageChoice {
   readonly places: readonly ImagePlace[];
   readonly shown: number;
   readonly inAll: number;
+  /** The result of the first variant, whose partitions `places` count. */
+  readonly first: Layout;
 }
 
-/** @throws UsageError for an image that there is not */
-function chooseImages(facts: ScanFacts, plan: Plan, { mostImages, image }: CompareOptions): ImageChoice {
-  const partitions = axisLength(plan.result, "z");
+/**
+ * Images that every variant has, evenly spread.
+ * @param results of the variants; the first one's partitions count
+ * @throws UsageError for an image that there is not
+ */
+function chooseImages(
+  facts: ScanFacts,
+  results: readonly Layout[],
+  { mostImages, image }: CompareOptions,
+): ImageChoice {
+  const [first] = results as [Layout];
+  const partitions = axisLength(first, "z");
   const inAll = frameCount(facts.lengths) * partitions;
-  const count = Math.min(inAll, mostImages);
-  const chosen = Array.from({ length: count }, (_, i) => Math.floor(((i + 0.5) * inAll) / count));
-  if (image !== undefined && image >= inAll)
+  const isCommon = (index: number) =>
+    results.every((result) => samePixel(index % partitions, "z", first, result) !== undefined);
+  const common = Array.from({ length: inAll }, (_, index) => index).filter(isCommon);
+  if (image !== undefined && !common.includes(image))
     throw new UsageError(
       { field: "--image", value: image },
-      `there are ${inAll} images, from 0`,
+      image < inAll ? "a variant does not reach so far along z" : `there are ${inAll} images, from 0`,
       "Choose one of them",
     );
+  const count = Math.min(common.length, mostImages);
+  const chosen = Array.from(
+    { length: count },
+    (_, i) => common[Math.floor(((i + 0.5) * common.length) / count)]!,
+  );
   if (image !== undefined && !chosen.includes(image)) chosen[0] = image;
   const shown = image === undefined ? Math.floor(count / 2) : chosen.indexOf(image);
   const places = chosen.map((index) => ({ frame: Math.floor(index / partitions), z: index % partitions }));
-  return { places, shown, inAll };
+  return { places, shown, inAll, first };
 }
 
 /** The group and the place in it of the shown image's frame. */
@@ -166,10 +189,10 @@ class Collecting {
   readonly #noise: NoiseState[] = [];
   readonly #seconds: number[];
 
-  constructor(facts: ScanFacts, planned: PlannedRecipe, options: CompareOptions) {
+  constructor(facts: ScanFacts, planned: PlannedRecipe, choice: ImageChoice) {
     this.#facts = facts;
     this.#planned = [planned, ...(planned.variants ?? [])];
-    this.choice = chooseImages(facts, planned.plan, options);
+    this.choice = choice;
     this.#images = this.#planned.map(() => []);
     this.#seconds = this.#planned.map(() => 0);
   }
@@ -180,8 +203,9 @@ class Collecting {
     results.forEach((result, v) => {
       this.#noise[v] = result.result.noise;
       this.#seconds[v]! += result.seconds;
-      this.choice.places.forEach(({ frame, z }, i) => {
+      this.choice.places.forEach(({ frame, z: partition }, i) => {
         const place = frames.indexOf(frame);
+        const z = samePixel(partition, "z", this.choice.first, result.result.layout)!;
         if (place >= 0)
           this.#images[v]![i] = magnitudeOf(result.result, place * axisLength(result.result.layout, "z") + z);
         if (place >= 0 && i === this.choice.shown) this.#kept[v] = this.#shownOf(result, place, z);

@@ -15,6 +15,7 @@ import { type Compared, imageLabel, type VariantImages } from "./compare.js";
 import { axisWindow, MEASURES, type Measured, type MeasureSettings } from "./compare-measures.js";
 import { joined } from "./placement.js";
 import { pixelSizeMm } from "./plan.js";
+import { isSameGrid, samePixel } from "./same-place.js";
 import { CAUTION } from "./sidecar.js";
 
 /** Where edge and regions are, with words for each. */
@@ -104,14 +105,16 @@ function shortName(name: string): string {
   return name.replaceAll(/(^|, )[a-z-]+\./g, "$1");
 }
 
-/** A variant of another matrix covers the same field of view: its pixels nearest to the reference's. */
+/** The variant's pixels nearest to the reference's; NaN where it does not reach so far. */
 function onMatrix(variant: VariantImages, reference: VariantImages, image: Float32Array): Float32Array {
+  const [from, to] = [reference.plan.result, variant.plan.result];
+  if (isSameGrid(from, to)) return image;
   const { height, width } = reference;
-  if (variant.height === height && variant.width === width) return image;
+  const rows = Array.from({ length: height }, (_, y) => samePixel(y, "y", from, to));
+  const columns = Array.from({ length: width }, (_, x) => samePixel(x, "x", from, to));
   return Float32Array.from({ length: height * width }, (_, i) => {
-    const y = Math.floor((Math.floor(i / width) * variant.height) / height);
-    const x = Math.floor(((i % width) * variant.width) / width);
-    return image[y * variant.width + x]!;
+    const [y, x] = [rows[Math.floor(i / width)], columns[i % width]];
+    return y === undefined || x === undefined ? Number.NaN : image[y * variant.width + x]!;
   });
 }
 
@@ -188,10 +191,6 @@ export function pageOf(
       ...measured.remarks.map((remark) => ["note", remark] as const),
       ["passes over the file", String(passes)],
       ...settings.describe,
-      [
-        "time of each variant's own stages",
-        variants.map(({ name, seconds }) => `${name}: ${(1e3 * seconds).toFixed(1)} ms`).join("; "),
-      ],
     ],
     reference: reference.name,
     columns: MEASURES,

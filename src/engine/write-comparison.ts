@@ -1,5 +1,6 @@
 import path from "node:path";
 import { UsageError } from "../errors.js";
+import { formatRecipe } from "../recipe/recipe.js";
 import { VERSION } from "../version.js";
 import { chartPng, chartSvg } from "../writers/chart.js";
 import { csvText } from "../writers/csv.js";
@@ -153,6 +154,7 @@ function document(
       noise: { whitened: noise.whitened, gain: noise.gain },
       shape: plan.result.shape,
       recipe,
+      recipeText: formatRecipe(recipe),
     })),
     runSeconds: Object.fromEntries(variants.map(({ name, seconds }) => [name, seconds])),
   };
