@@ -1,5 +1,5 @@
-// What comparing eight windows costs against one reconstruction, whole processes, alternating, medians:
-//   node scripts/bench/compare.mjs [--turns 7]
+// What comparing eight windows costs against one reconstruction, whole processes, alternating, medians with their range:
+//   node scripts/bench/compare.mjs [--turns 11]
 // On the benchmark file of run.mjs (make_bench_raw.py; needs Debian's python3-h5py python3-numpy).
 import { spawnSync } from "node:child_process";
 import { existsSync, mkdirSync, renameSync } from "node:fs";
@@ -8,7 +8,7 @@ import { join } from "node:path";
 import { fileURLToPath } from "node:url";
 import { parseArgs } from "node:util";
 
-const { values: flags } = parseArgs({ options: { turns: { type: "string", default: "7" } } });
+const { values: flags } = parseArgs({ options: { turns: { type: "string", default: "11" } } });
 const here = fileURLToPath(new URL(".", import.meta.url));
 const tool = fileURLToPath(new URL("../../dist/carillon.js", import.meta.url));
 const folder = join(tmpdir(), "carillon-bench");
@@ -36,4 +36,6 @@ for (let turn = 0; turn < Number(flags.turns); turn++) {
 }
 const ratios = eight.map((value, i) => value / one[i]);
 console.log("| recon, s | compare of 8 windows, s | ratio |\n|---|---|---|");
-console.log(`| ${median(one).toFixed(2)} | ${median(eight).toFixed(2)} | ${median(ratios).toFixed(2)} |`);
+const ranged = (values) =>
+  `${median(values).toFixed(2)} (${Math.min(...values).toFixed(2)}-${Math.max(...values).toFixed(2)})`;
+console.log(`| ${ranged(one)} | ${ranged(eight)} | ${ranged(ratios)} |`);

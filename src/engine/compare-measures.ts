@@ -3,7 +3,9 @@ import {
   backgroundDeviationFactor,
   normalizedRmsError,
   peakSnrDb,
+  SSIM_TAPS,
   structuralSimilarity,
+  windowMeans,
 } from "../kernels/image-quality.js";
 import { type AxisWindow, sampledWindow, windowFigures } from "../kernels/point-spread.js";
 import { regionStatistics } from "../kernels/region.js";
@@ -130,13 +132,16 @@ export function measureVariants(
   const noiseMaps = variants.map((variant) => propagatedNoise(variant, shown, scan));
   const all = joined(reference.images);
   const peak = all.reduce((most, value) => Math.max(most, value), 0);
+  const shape = [reference.height, reference.width] as const;
+  const isLarge = shape.every((length) => length >= SSIM_TAPS);
+  const means = isLarge ? reference.images.map((image) => windowMeans(image, shape)) : undefined;
   const measured = variants.map((variant, v) => {
     const found = edge && edgeOn(variant, shown, edge, reference);
     const values = {
       ...theoryOf(variant, edge?.axis ?? "x"),
       ...found?.figures,
       ...noiseOf(variant, shown, noiseMaps[v]!, settings, reference),
-      ...differenceOf(variant, reference, all, peak),
+      ...differenceOf(variant, reference, all, peak, means),
     };
     return {
       values: Object.fromEntries(MEASURES.map(({ id }) => [id, finite(values[id as keyof typeof values])])),
@@ -322,15 +327,22 @@ function noiseOf(
   };
 }
 
-/** Against the reference, over all chosen images. */
-function differenceOf(variant: VariantImages, reference: VariantImages, other: Float32Array, peak: number) {
+/** Against the reference, over all chosen images. @param means of its images under the window of SSIM, if that fits */
+function differenceOf(
+  variant: VariantImages,
+  reference: VariantImages,
+  other: Float32Array,
+  peak: number,
+  means: readonly Float64Array[] | undefined,
+) {
   if (!isSameGrid(variant.plan.result, reference.plan.result)) return {};
   if (variant === reference) return { nrmse: 0, ssim: 1 };
   const own = joined(variant.images);
   const shape = [variant.height, variant.width] as const;
-  const isLarge = shape.every((length) => length >= 11);
-  const similar = isLarge
-    ? variant.images.map((image, i) => structuralSimilarity(image, reference.images[i]!, shape, peak))
+  const similar = means
+    ? variant.images.map((image, i) =>
+        structuralSimilarity(image, reference.images[i]!, shape, peak, undefined, means[i]),
+      )
     : [Number.NaN];
   return {
     nrmse: 100 * normalizedRmsError(own, other, "norm"),

@@ -350,12 +350,15 @@ function interpolated(image: EdgeImage, axis: "x" | "y", line: number, position:
   const weights = fourierWeights(length, position);
   const first = line * lineStep;
   if (image.channels === undefined) return weightedSum(image.data, weights, first, step);
+  const { channels } = image;
   let squares = 0;
-  for (let channel = 0; channel < image.channels.length; channel += 2 * count * length) {
-    let [re, im] = [0, 0];
+  for (let channel = 0; channel < channels.length; channel += 2 * count * length) {
+    let re = 0;
+    let im = 0;
     for (let i = 0, at = channel + 2 * first; i < length; i++, at += 2 * step) {
-      re += weights[i]! * image.channels[at]!;
-      im += weights[i]! * image.channels[at + 1]!;
+      const weight = weights[i]!;
+      re += weight * channels[at]!;
+      im += weight * channels[at + 1]!;
     }
     squares += re * re + im * im;
   }

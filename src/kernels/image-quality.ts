@@ -54,7 +54,8 @@ export function meanSquareError(image: Pixels, reference: Pixels, mask?: Uint8Ar
   return sum / count;
 }
 
-const SSIM_TAPS = 11;
+/** Pixels along one side of the window of SSIM. */
+export const SSIM_TAPS = 11;
 const SSIM_SIGMA_PIXELS = 1.5;
 
 /** The 11 taps of the Gaussian that weighs an SSIM window along one axis, sum 1. */
@@ -71,6 +72,7 @@ export function ssimTaps(): Float64Array {
  * entry [0, 0] is about pixel [5, 5]. K1 = 0.01, K2 = 0.03.
  * @param image,reference [height, width]
  * @param dynamicRange    L: the range of values that the scale allows
+ * @param referenceMeans  `windowMeans` of the reference, for one who compares several images with it
  * @throws RangeError an image smaller than the window
  * Source: Wang, Bovik, Sheikh and Simoncelli 2004, IEEE Trans. Image Process. 13:600, doi:10.1109/TIP.2003.819861.
  */
@@ -79,31 +81,27 @@ export function structuralSimilarityMap(
   reference: Pixels,
   [height, width]: readonly [number, number],
   dynamicRange: number,
+  referenceMeans: Float64Array = windowMeans(reference, [height, width]),
 ): Float64Array {
   if (height < SSIM_TAPS || width < SSIM_TAPS) {
     throw new RangeError(
       `SSIM needs at least ${SSIM_TAPS} x ${SSIM_TAPS} pixels; the image has ${height} x ${width}`,
     );
   }
-  const [means, squares, product] = [0, 1, 2].map(() => new Float64Array(height * width)) as [
-    Float64Array,
-    Float64Array,
-    Float64Array,
-  ];
+  const squares = new Float64Array(height * width);
+  const product = new Float64Array(height * width);
   for (let i = 0; i < product.length; i++) {
     const [a, b] = [image[i]!, reference[i]!];
-    means[i] = b;
     squares[i] = a * a + b * b; // only the sum of both variances is needed
     product[i] = a * b;
   }
-  const meanA = weightedMeans(new Float64Array(image), height, width);
-  const meanB = weightedMeans(means, height, width);
+  const meanA = windowMeans(image, [height, width]);
   const square = weightedMeans(squares, height, width);
   const cross = weightedMeans(product, height, width);
   const c1 = (0.01 * dynamicRange) ** 2;
   const c2 = (0.03 * dynamicRange) ** 2;
   return meanA.map((a, i) => {
-    const b = meanB[i]!;
+    const b = referenceMeans[i]!;
     const luminance = (2 * a * b + c1) / (a * a + b * b + c1);
     const varianceSum = square[i]! - a * a - b * b;
     return (luminance * (2 * (cross[i]! - a * b) + c2)) / (varianceSum + c2);
@@ -120,8 +118,9 @@ export function structuralSimilarity(
   shape: readonly [number, number],
   dynamicRange: number,
   mask?: Uint8Array,
+  referenceMeans?: Float64Array,
 ): number {
-  const map = structuralSimilarityMap(image, reference, shape, dynamicRange);
+  const map = structuralSimilarityMap(image, reference, shape, dynamicRange, referenceMeans);
   const margin = (SSIM_TAPS - 1) / 2;
   const validWidth = shape[1] - 2 * margin;
   let sum = 0;
@@ -133,6 +132,11 @@ export function structuralSimilarity(
     count++;
   }
   return sum / count;
+}
+
+/** Mean under the window of SSIM at each place where it fits: [height - 10, width - 10]. */
+export function windowMeans(image: Pixels, [height, width]: readonly [number, number]): Float64Array {
+  return weightedMeans(new Float64Array(image), height, width);
 }
 
 /** Separable weighted mean wherever all taps fit: [height - 10, width - 10]. */
