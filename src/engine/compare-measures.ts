@@ -161,15 +161,27 @@ export function measureVariants(
 const SOFT_EDGE = 1.5;
 
 function remarksOn(
-  { widthMeasuredMm: measured, widthTheoryMm: theory }: MeasureValues,
+  { widthMeasuredMm: measured, widthTheoryMm: theory, ...ringing }: MeasureValues,
   edge: Edge | undefined,
 ): string[] {
   if (!edge) return ["no straight edge between two levels was found: name one with --edge"];
-  if (!measured || !theory || measured < SOFT_EDGE * theory) return [];
+  if (!measured || !theory) return [];
+  if (measured < SOFT_EDGE * theory) return isLevel(ringing) ? [] : [UNEVEN];
   const [found, least] = [measured, theory].map((mm) => Number(mm.toPrecision(3)));
   return [
     `the edge is softer than the resolution (${found} mm, ${least} by theory): widths and ringing are the object's; name a sharper one with --edge`,
   ];
+}
+
+const UNEVEN =
+  "overshoot and undershoot at the edge are not the windows' alone: shading, noise or another edge lies beside it; name another with --edge";
+
+/** Half of Gibbs' 9 % of the jump: a level side's ringing is nearer to its theory. */
+const MOST_STRAY = 4.5;
+
+function isLevel(ringing: MeasureValues): boolean {
+  const stray = (which: string) => Math.abs(ringing[`${which}Measured`]! - ringing[`${which}Theory`]!);
+  return Math.max(stray("overshoot"), stray("undershoot")) < MOST_STRAY;
 }
 
 const finite = (value: number | undefined) => (value !== undefined && Number.isFinite(value) ? value : null);

@@ -211,7 +211,8 @@ describe("measures", () => {
     );
     const { variants, shown, scan } = await reconstructVariants(clean, windows, OPTIONS);
     const region = new Uint8Array(192 * 192).fill(1);
-    const { values } = measureVariants(variants, variants[0]!, shown, { region }, scan.facts);
+    const { values, remarks } = measureVariants(variants, variants[0]!, shown, { region }, scan.facts);
+    expect(remarks).toEqual([]);
     for (const each of values as Record<string, number>[]) {
       expect(Math.abs(each.widthMeasuredMm! / each.widthTheoryMm! - 1)).toBeLessThan(0.02);
       // 2 % of the ringing without a window, 8.95 % of the jump: a share of one that hardly rings would be of nothing
@@ -239,7 +240,8 @@ describe("variants of other fields of view", () => {
       [both, [0, 1, 2, 3, 4, 5, 6, 7, 8, 9]],
       [both.toReversed(), [1, 2, 3, 4, 5, 6, 7, 8, 9, 10]],
     ] as const) {
-      const { variants, places, values } = await measured(raw, ...order);
+      const { variants, places, values, remarks } = await measured(raw, ...order);
+      expect(remarks).toEqual([expect.stringContaining("not the windows' alone")]); // 32 % beside it, of Gibbs' 9
       expect(places.map(({ z }) => z)).toEqual(indices);
       expect(variants[1]!.images).toEqual(variants[0]!.images);
       expect(variants[1]!.channels).toEqual(variants[0]!.channels);
