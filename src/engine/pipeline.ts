@@ -65,7 +65,7 @@ export class Pipeline {
     let lines = block;
     for (const { stage, params, arrays } of this.#readoutStages) {
       if (stage.kind !== "readout") continue;
-      const context = this.#context(NO_COUNTERS, arrays, [], []);
+      const context = this.#context(stage.id, NO_COUNTERS, arrays, [], []);
       const next = this.#step(stage.id, () => stage.run(lines, params, context));
       if (next.data !== lines.data && lines.data !== block.data) context.release(lines.data);
       lines = next;
@@ -136,7 +136,7 @@ export class Pipeline {
     let frame = start;
     for (const { stage, params, arrays } of stages) {
       if (stage.kind === "readout") continue;
-      const context = this.#context(counters, arrays, maps, findings);
+      const context = this.#context(stage.id, counters, arrays, maps, findings);
       if (stage.kind === "combine") takeCoils(frame.data);
       const next = this.#step(stage.id, () => stage.run(frame, params, context));
       if (next.data !== frame.data && frame.data !== kept) context.release(frame.data);
@@ -167,6 +167,7 @@ export class Pipeline {
   }
 
   #context(
+    stage: string,
     counters: PerFrameAxis,
     arrays: InputArrays,
     maps: MapValues[],
@@ -182,7 +183,7 @@ export class Pipeline {
       release: (data) => transform.release(data),
       emit: (map) => maps.push(map),
       emitted: (name) => maps.findLast((map) => map.name === name)?.data,
-      note: (finding) => findings.push(finding),
+      note: (finding) => findings.push({ stage, ...finding }),
     };
   }
 

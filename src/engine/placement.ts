@@ -1,6 +1,8 @@
 import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { pixelBandwidthHz } from "../stages/echo-frame.js";
+import { FAT_AS_FIELD, WRAP_LIMIT } from "../stages/field-map.js";
+import { FOLDED, FOLDED_IN_MAP, NOT_WATER } from "../stages/field-values.js";
 import type { Finding } from "../stages/stage.js";
 import { type Plan, pixelSizeMm } from "./plan.js";
 import type { GroupResult } from "./reconstruct.js";
@@ -10,6 +12,8 @@ export interface Spread {
   readonly largest: number;
   readonly percentile95: number;
 }
+
+export type FatInMap = "separated" | "left out" | "counts as field" | "taken as absent" | "not known";
 
 /** How far pixels may be off, what was corrected, what was not. */
 export interface Placement {
@@ -35,11 +39,24 @@ export interface Placement {
     readonly corrected: boolean;
     /** Inside the mask. */
     readonly displacementBeforeMm: Spread;
-    /** After correction the map's own error, if it is known. */
+    /** After correction the map's own error, if it is known: not of a given map, nor where fat counts as field. */
     readonly displacementAfterMm: Spread | null;
+    /** From noise alone. */
     readonly standardErrorMm: Spread | null;
     readonly pixelsInMask: number;
+    /** Pixels of the object that lie on others in the image of some echo; 0 in the result. */
     readonly foldedPixels: number;
+    /** Pixels with signal that a measured map leaves out of its mask because it folds there. */
+    readonly foldedInMapPixels: number;
+    /** What fat does to the map. */
+    readonly fat: FatInMap;
+    /** By how much the map is off where there is fat that counts as field; else null. */
+    readonly fatCountsAsHz: number | null;
+    readonly fatCountsAsMm: number | null;
+    /** A map that was measured is ambiguous by this; null for a given one. */
+    readonly turnHz: number | null;
+    /** Pixels with signal that is not of water alone, where they were told apart and left out of the map. */
+    readonly leftOutPixels: number;
   };
   /** What an offset of 1 ppm that nobody knows of moves a pixel by. */
   readonly perPpmMm: number;
@@ -81,6 +98,12 @@ export class PlacementTally {
   get findings(): Placement["findings"] {
     const groups = [...this.#groups].sort(([a], [b]) => a - b);
     return groups.flatMap(([group, { findings }]) => findings.map((finding) => ({ group, ...finding })));
+  }
+
+  /** Sum of what a stage found under a name, over the groups; undefined if it looked for nothing of the kind. */
+  total(name: string, stage: string): number | undefined {
+    const found = this.findings.filter((finding) => finding.name === name && finding.stage === stage);
+    return found.length ? found.reduce((sum, { value }) => sum + value, 0) : undefined;
   }
 }
 
@@ -148,17 +171,32 @@ function fieldPart(
   const before = spreadOf(tally.movedMm);
   const errors = file === undefined ? tally.standardErrorsHz : new Float32Array(0);
   const standardErrorMm = errors.length ? spreadOf(errors.map((hz) => hz * mmPerHz)) : null;
-  const folded = tally.findings.filter(({ name }) => name === "folded pixels");
+  const fat = fatInMap(maker, tally);
+  const asHz = maker.physics[FAT_AS_FIELD];
+  const fatCountsAsHz = fat === "counts as field" ? Number(asHz) : null;
   return {
     source: file === undefined ? `measured: ${maker.stage.id}` : `given: ${file}`,
     along: isAlongY ? "y" : "x",
     corrected,
     displacementBeforeMm: before,
-    displacementAfterMm: corrected ? standardErrorMm : before,
+    displacementAfterMm: !corrected ? before : fat === "counts as field" ? null : standardErrorMm,
     standardErrorMm,
     pixelsInMask: tally.movedMm.length,
-    foldedPixels: folded.reduce((sum, { value }) => sum + value, 0),
+    foldedPixels: tally.total(FOLDED, "undisplace") ?? 0,
+    foldedInMapPixels: tally.total(FOLDED_IN_MAP, maker.stage.id) ?? 0,
+    fat,
+    fatCountsAsHz,
+    fatCountsAsMm: fatCountsAsHz === null ? null : fatCountsAsHz * mmPerHz,
+    turnHz: WRAP_LIMIT in maker.physics ? 2 * Number(maker.physics[WRAP_LIMIT]) : null,
+    leftOutPixels: tally.total(NOT_WATER, maker.stage.id) ?? 0,
   };
+}
+
+function fatInMap(maker: Plan["stages"][number], tally: PlacementTally): FatInMap {
+  if (maker.stage.id === "separate-fat-water") return "separated";
+  if (maker.stage.id !== "field-map") return "not known";
+  if (FAT_AS_FIELD in maker.physics) return "counts as field";
+  return tally.total(NOT_WATER, "field-map") === undefined ? "taken as absent" : "left out";
 }
 
 function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string[] {
@@ -182,24 +220,45 @@ function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string
           : ""),
   );
   if (!field) lines.push(`the field is not known: each ppm of it moves a pixel by ${mm(perPpmMm)} along x`);
-  else {
-    const { displacementBeforeMm: before, standardErrorMm: error } = field;
-    lines.push(
-      `field (${field.source}): moved pixels of the object by up to ${both(before.largest)} along ${field.along}, ` +
-        `95 % within ${both(before.percentile95)}; ${field.corrected ? "corrected" : "not corrected"}`,
-    );
-    if (error)
-      lines.push(
-        `the map's standard error is up to ${both(error.largest)}, 95 % within ${both(error.percentile95)}`,
-      );
-    else if (field.corrected)
-      lines.push("what remains is the error of the given map, which is not known here");
-    if (field.foldedPixels)
-      lines.push(
-        `${field.foldedPixels} pixels lie where the field folds: left at 0, nothing is invented there`,
-      );
-  }
+  else lines.push(...fieldSentences(field, both));
   lines.push(`not included: ${parts.notIncluded.join(", ")}`);
+  return lines;
+}
+
+/** @param both a length in mm and pixels */
+function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: number) => string): string[] {
+  const { displacementBeforeMm: before, standardErrorMm: error, fatCountsAsMm, corrected } = field;
+  const done = fatCountsAsMm === null ? "corrected" : "corrected by a map that takes fat for field";
+  const lines = [
+    `field (${field.source}): moved the ${field.pixelsInMask} pixels of its mask by up to ${both(before.largest)} along ${field.along}, ` +
+      `95 % within ${both(before.percentile95)}; ${corrected ? done : "not corrected"}`,
+  ];
+  if (error)
+    lines.push(
+      `the map's standard error, from noise alone, is up to ${both(error.largest)}, 95 % within ${both(error.percentile95)}`,
+    );
+  else if (corrected) lines.push("what remains is the error of the given map, which is not known here");
+  if (fatCountsAsMm !== null)
+    lines.push(
+      `these echoes do not tell fat from water: where there is fat the map is off by ${number(field.fatCountsAsHz!)} Hz, ` +
+        `or whole turns (${number(field.turnHz!)} Hz) from there, which is ${both(fatCountsAsMm)} or more` +
+        `${corrected ? ", and so is the image" : ""}; ` +
+        "set field-map.fat=absent if there is none, else take separate-fat-water with a method that suits these echoes",
+    );
+  if (field.fat === "taken as absent") lines.push("fat was taken to be absent, as field-map.fat says");
+  if (field.leftOutPixels)
+    lines.push(
+      `${field.leftOutPixels} pixels with signal are not of water alone and were left out of the map: the field there ` +
+        "continues its surroundings; --separate fat-water measures it there too",
+    );
+  if (field.foldedInMapPixels)
+    lines.push(
+      `${field.foldedInMapPixels} pixels with signal were left out of the map because it folds there`,
+    );
+  if (field.foldedPixels)
+    lines.push(
+      `${field.foldedPixels} pixels of the object lie where the field folds: left at 0, nothing is invented there`,
+    );
   return lines;
 }
 

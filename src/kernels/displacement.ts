@@ -59,6 +59,22 @@ export function foldedPixels(
   return out;
 }
 
+/** Pixels that are folded in any echo: what displaces forward in one goes backward in another. */
+export function foldedInAny(
+  fieldHz: Float32Array,
+  pixelBandwidthHz: readonly number[],
+  rows: number,
+  length: number,
+): Uint8Array {
+  const out = new Uint8Array(fieldHz.length);
+  for (const bandwidthHz of new Set(pixelBandwidthHz)) {
+    const displacement = fieldHz.map((hz) => hz / bandwidthHz);
+    const folded = foldedPixels(displacement, rows, length);
+    for (let i = 0; i < out.length; i++) out[i]! |= folded[i]!;
+  }
+  return out;
+}
+
 /**
  * Carry maps measured in the image's coordinates to the object's: `object(x) = image(x + field(x) / pixelBandwidth)`,
  * where `field` itself is found by fixed-point iteration from the inverse of `x' - image(x') / pixelBandwidth`.

@@ -1,4 +1,5 @@
 import { cubicAt } from "./displacement.js";
+import { closestEchoes } from "./echo-times.js";
 import type { FatWaterModel } from "./fat-water-model.js";
 import { minimizeLabels } from "./label-graph.js";
 import { smoothField } from "./smooth-field.js";
@@ -11,7 +12,8 @@ import type { TransformEngine } from "./transform.js";
  * and fat then cannot explain at each k is a residual image. Its energy over blocks of pixels is the cost of the
  * candidate there. A pixel of one species has two good candidates, about the main fat offset apart; labels are chosen
  * for all blocks together by message passing on the graph of blocks (label-graph.ts), so that pixels of one species
- * follow those that hold both, over the field's smoothness: changing the field by h Hz between blocks costs
+ * follow those that hold both, over the field's smoothness: changing the field by h Hz between blocks, beside the mean
+ * slope over the image (which the steps of phase from block to block show, whatever the species), costs
  * `h / PRICE_HZ` of the weaker block's energy. Where nothing at all decides (one species only, isolated), the shape of
  * the fat spectrum does, and last the field nearest zero.
  *
@@ -68,8 +70,10 @@ export function coarseFatWaterField(
   const labels = 2 * Math.ceil(rangeHz / stepHz) + 1;
   const grid = coarseGrid(rows, model.length);
   const costs = candidateCosts(engine, lines, model, grid, labels, stepHz);
-  const energy = blockEnergies(engine, lines, model, grid);
-  const chosen = chooseLabels(costs, energy, grid, labels, stepHz);
+  const { energy, pairs } = blockEnergies(engine, lines, model, grid);
+  const perRadian = -1 / (2 * Math.PI * closestEchoes(echoSeconds).gapSeconds * stepHz);
+  const slope = meanStep(pairs, grid).map((radians) => radians * perRadian) as [number, number];
+  const chosen = chooseLabels(costs, energy, grid, labels, stepHz, slope);
   const { fieldHz, weights, left } = refineLabels(costs, chosen, labels, stepHz);
   const smooth = smoothField(fieldHz, weights, grid.blockRows, grid.blockColumns, 1, false).fieldHz;
   const total = energy.reduce((sum, value) => sum + value, 0);
@@ -190,60 +194,125 @@ function addBlockEnergies(
   }
 }
 
-/** Energy of all echoes over blocks, [blockRows, blockColumns]. */
+/**
+ * Energy of all echoes over blocks, and the closest two echoes' sums of `second conj(first)`, interleaved complex;
+ * [blockRows, blockColumns].
+ */
 function blockEnergies(
   engine: TransformEngine,
   lines: readonly Float32Array[],
   model: FatWaterModel,
   grid: CoarseGrid,
-): Float32Array {
-  const out = new Float32Array(grid.blockRows * grid.blockColumns);
-  const image = engine.allocate(2 * grid.rows * grid.columns, false);
-  const first = Math.floor(model.length / 2) - Math.floor(grid.columns / 2);
-  for (const echo of lines) {
+): { energy: Float32Array; pairs: Float64Array } {
+  const energy = new Float32Array(grid.blockRows * grid.blockColumns);
+  const left = Math.floor(model.length / 2) - Math.floor(grid.columns / 2);
+  const images = lines.map((echo) => {
+    const image = engine.allocate(2 * grid.rows * grid.columns, false);
     for (let y = 0; y < grid.rows; y++) {
-      const from = 2 * (y * grid.rowStep * model.length + first);
+      const from = 2 * (y * grid.rowStep * model.length + left);
       image.set(echo.subarray(from, from + 2 * grid.columns), 2 * y * grid.columns);
     }
     transformRows(engine, image, grid);
-    addBlockEnergies(image, grid, out, 0, 1);
+    addBlockEnergies(image, grid, energy, 0, 1);
+    return image;
+  });
+  const { first, second } = closestEchoes(model.timing.echoSeconds);
+  const pairs = blockPairs(images[first]!, images[second]!, grid);
+  for (const image of images) engine.release(image);
+  return { energy, pairs };
+}
+
+function blockPairs(first: Float32Array, second: Float32Array, grid: CoarseGrid): Float64Array {
+  const out = new Float64Array(2 * grid.blockRows * grid.blockColumns);
+  for (let y = 0, i = 0; y < grid.rows; y++) {
+    const base = Math.floor(y / BLOCK) * grid.blockColumns;
+    for (let x = 0; x < grid.columns; x++, i += 2) {
+      const to = 2 * (base + Math.floor(x / BLOCK));
+      out[to]! += second[i]! * first[i]! + second[i + 1]! * first[i + 1]!;
+      out[to + 1]! += second[i + 1]! * first[i]! - second[i]! * first[i + 1]!;
+    }
   }
-  engine.release(image);
   return out;
 }
 
+/** Mean step of the phase from a block to the next, radians, weighted by their signal; along columns and along rows. */
+function meanStep(pairs: Float64Array, { blockRows, blockColumns }: CoarseGrid): [x: number, y: number] {
+  const sums = [0, 0, 0, 0];
+  for (let row = 0, node = 0; row < blockRows; row++) {
+    for (let column = 0; column < blockColumns; column++, node++) {
+      const [re, im] = [pairs[2 * node]!, pairs[2 * node + 1]!];
+      const add = (next: number, at: number) => {
+        const [a, b] = [pairs[2 * next]!, pairs[2 * next + 1]!];
+        const weight = 1 / Math.sqrt(Math.hypot(a, b) * Math.hypot(re, im) || 1); // counts like the signal, not its square
+        sums[at]! += weight * (a * re + b * im);
+        sums[at + 1]! += weight * (b * re - a * im);
+      };
+      if (column + 1 < blockColumns) add(node + 1, 0);
+      if (row + 1 < blockRows) add(node + blockColumns, 2);
+    }
+  }
+  return [Math.atan2(sums[1]!, sums[0]!), Math.atan2(sums[3]!, sums[2]!)];
+}
+
+/** @param slope change of the field that is expected from a block to the next, labels */
 function chooseLabels(
   costs: Float32Array,
   energy: Float32Array,
   { blockRows, blockColumns }: CoarseGrid,
   labels: number,
   stepHz: number,
-): Int32Array {
+  slope: readonly [x: number, y: number],
+): Float64Array {
   const level = energy.reduce((most, value) => Math.max(most, value), 0) || 1;
+  // What is chosen is the distance from the expected slope, in labels from the middle one.
+  const middle = (labels - 1) / 2;
+  const expected = Float64Array.from(
+    energy,
+    (_, node) =>
+      slope[0] * ((node % blockColumns) - (blockColumns - 1) / 2) +
+      slope[1] * (Math.floor(node / blockColumns) - (blockRows - 1) / 2),
+  );
   const priced = new Float32Array(costs.length);
-  for (let i = 0; i < costs.length; i++) {
-    const offsetHz = ((i % labels) - (labels - 1) / 2) * stepHz;
-    const share = energy[Math.floor(i / labels)]! / level;
-    priced[i] = costs[i]! / level + (ZERO_PULL * share * Math.abs(offsetHz)) / 100;
+  for (let node = 0, i = 0; node < energy.length; node++) {
+    const own = costs.subarray(node * labels, (node + 1) * labels);
+    const share = energy[node]! / level;
+    for (let label = 0; label < labels; label++, i++) {
+      const place = label + expected[node]!;
+      const isConsidered = place > -0.5 && place < labels - 0.5;
+      const cost = isConsidered ? lowestNear(own, place) / level : share;
+      priced[i] = cost + (ZERO_PULL * share * Math.abs(place - middle) * stepHz) / 100;
+    }
   }
   const price = (a: number, b: number | undefined) =>
     (stepHz / PRICE_HZ) * (Math.min(a, b ?? 0) / level + 1e-5);
   const right = energy.map((value, node) => price(value, energy[node + 1]));
   const down = energy.map((value, node) => price(value, energy[node + blockColumns]));
-  return minimizeLabels(
+  const chosen = minimizeLabels(
     { rows: blockRows, columns: blockColumns, labels, costs: priced, right, down },
     ROUNDS,
   );
+  return expected.map((label, node) => label + chosen[node]!);
+}
+
+/** The lowest cost within half a label of a place: which of two candidates falls between labels must not decide. */
+function lowestNear(costs: Float32Array, place: number): number {
+  const before = cubicAt(costs, place - 0.5);
+  const at = cubicAt(costs, place);
+  const after = cubicAt(costs, place + 0.5);
+  const curvature = before - 2 * at + after;
+  const isInside = curvature > 0 && Math.abs(before - after) < 2 * curvature;
+  const least = isInside ? at - (before - after) ** 2 / (8 * curvature) : Math.min(before, at, after);
+  return Math.max(0, least);
 }
 
 /** The lowest cost nearest each chosen label, between labels by a parabola; its curvature as weight. */
-function refineLabels(costs: Float32Array, chosen: Int32Array, labels: number, stepHz: number) {
+function refineLabels(costs: Float32Array, chosen: Float64Array, labels: number, stepHz: number) {
   const fieldHz = new Float32Array(chosen.length);
   const weights = new Float32Array(chosen.length);
   let left = 0;
   for (let node = 0; node < chosen.length; node++) {
     const cost = (label: number) => costs[node * labels + label]!;
-    let label = Math.min(labels - 2, Math.max(1, chosen[node]!));
+    let label = Math.min(labels - 2, Math.max(1, Math.round(chosen[node]!)));
     while (label > 1 && cost(label - 1) < cost(label)) label--;
     while (label < labels - 2 && cost(label + 1) < cost(label)) label++;
     const curvature = cost(label - 1) - 2 * cost(label) + cost(label + 1);

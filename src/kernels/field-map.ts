@@ -1,6 +1,9 @@
-import { foldedPixels, objectField } from "./displacement.js";
+import { foldedInAny, objectField } from "./displacement.js";
+import { closestEchoes } from "./echo-times.js";
+import { coarseFatWaterField } from "./fat-water-field.js";
+import { type FatWaterModel, fatSignal, type SpectralLine } from "./fat-water-model.js";
 import { between } from "./fill.js";
-import { phaseLine } from "./phase-line.js";
+import { type FatView, type PhaseLine, phaseLine } from "./phase-line.js";
 import { gatherRows, planRowWarp } from "./row-warp.js";
 import { smoothSlices } from "./smooth-field.js";
 import type { TransformEngine } from "./transform.js";
@@ -25,6 +28,11 @@ export interface FieldMapOptions {
   readonly mask: Uint8Array;
   /** Standard deviation of the smoothing window in pixels; 0 for none. */
   readonly smoothingPixels: number;
+  /**
+   * Water and fat in these echoes, three or more that tell them apart, of as many columns: pixels of fat are then left
+   * out. Without it, fat counts as field.
+   */
+  readonly fat?: { readonly model: FatWaterModel; readonly asFieldHz: number };
 }
 
 /** All maps [slices, rows, columns] in the coordinates of the object. */
@@ -36,6 +44,9 @@ export interface FieldMap {
   /** 1 where the field was measured (not extended) and the displacement does not fold. */
   readonly mask: Uint8Array;
   readonly foldedCount: number;
+  /** Pixels with signal that is not of water alone, as far as the echoes show it, not in the mask; and the others. */
+  readonly notWaterCount: number;
+  readonly keptCount: number;
   /** Fields beyond this from their surroundings are ambiguous: 1 / (2 dTE) of the closest echoes. */
   readonly wrapLimitHz: number;
 }
@@ -64,13 +75,52 @@ export function measureField(
     );
   }
   const alike = pixelBandwidthHz.every((hz) => hz === pixelBandwidthHz[0]);
-  return alike ? measureAlike(echoes, grid, options) : measureOpposed(engine, echoes, grid, options);
+  const fat = options.fat && fatView(engine, echoes, grid, options.fat);
+  return alike
+    ? measureAlike(echoes, grid, options, fat)
+    : measureOpposed(engine, echoes, grid, options, fat);
+}
+
+/** What fat counts as where it is taken for water, Hz: its offset, whole turns between the two closest echoes aside. */
+export function fatAsFieldHz(echoSeconds: readonly number[], spectrum: readonly SpectralLine[]): number {
+  const { first, second, gapSeconds } = closestEchoes(echoSeconds);
+  const [a, b] = fatSignal(spectrum, echoSeconds[first]!);
+  const [c, d] = fatSignal(spectrum, echoSeconds[second]!);
+  return -Math.atan2(d * a - c * b, c * a + d * b) / (2 * Math.PI * gapSeconds);
+}
+
+/** The field with fat allowed for, slice by slice. */
+function fatView(
+  engine: TransformEngine,
+  echoes: readonly Float32Array[],
+  { slices, rows, columns }: VolumeSize,
+  { model, asFieldHz }: NonNullable<FieldMapOptions["fat"]>,
+): FatView {
+  const { gapSeconds } = closestEchoes(model.timing.echoSeconds);
+  const fieldHz = new Float32Array(slices * rows * columns);
+  for (let slice = 0; slice < slices; slice++) {
+    const lines = echoes.map((echo) => {
+      const line = engine.allocate(2 * rows * columns, false);
+      const source = echo.subarray(2 * slice * rows * columns, 2 * (slice + 1) * rows * columns);
+      engine.transformAxis({ source, target: line, outer: rows, inner: 1, length: columns, inverse: false });
+      return line;
+    });
+    const coarse = coarseFatWaterField(engine, lines, model, rows, 1 / (2 * gapSeconds));
+    fieldHz.set(coarse.fieldHz, slice * rows * columns);
+    for (const line of lines) engine.release(line);
+  }
+  return { fieldHz, asFieldHz };
 }
 
 /** All echoes displaced alike: measure in the image, then carry the map to the object. */
-function measureAlike(echoes: readonly Float32Array[], grid: VolumeSize, options: FieldMapOptions): FieldMap {
+function measureAlike(
+  echoes: readonly Float32Array[],
+  grid: VolumeSize,
+  options: FieldMapOptions,
+  fat: FatView | undefined,
+): FieldMap {
   const { rows, columns, slices } = grid;
-  const line = phaseLine(echoes, grid, options);
+  const line = phaseLine(echoes, grid, { ...options, areAligned: true }, fat);
   const smooth = smoothSlices(line.fieldHz, line.weights, grid, options.smoothingPixels);
   const bandwidthHz = options.pixelBandwidthHz[0]!;
   const { fieldHz, places, folded } = objectField(smooth.fieldHz, slices * rows, columns, bandwidthHz);
@@ -80,11 +130,12 @@ function measureAlike(echoes: readonly Float32Array[], grid: VolumeSize, options
     const row = Math.floor(i / columns) * columns;
     const errors = smooth.standardErrorHz.subarray(row, row + columns);
     standardErrorHz[i] = between(errors, 1, columns, 0, places[i]!);
-    measured[i] = options.mask[row + Math.min(columns - 1, Math.max(0, Math.round(places[i]!)))]!;
+    measured[i] = line.mask[row + Math.min(columns - 1, Math.max(0, Math.round(places[i]!)))]!;
   }
   return {
-    ...settled(fieldHz, measured, grid, bandwidthHz, folded),
+    ...settled(fieldHz, measured, grid, [bandwidthHz], folded),
     standardErrorHz,
+    ...counts(options.mask, line.mask),
     wrapLimitHz: line.wrapLimitHz,
   };
 }
@@ -95,21 +146,27 @@ function measureOpposed(
   echoes: readonly Float32Array[],
   grid: VolumeSize,
   options: FieldMapOptions,
+  fat: FatView | undefined,
 ): FieldMap {
   let fieldHz: Float32Array = new Float32Array(options.mask.length);
   let standardErrorHz = fieldHz;
-  let wrapLimitHz = 0;
+  let line: PhaseLine | undefined;
   for (let round = 0; round < ROUNDS; round++) {
     const straight = echoes.map((echo, e) =>
       demodulated(engine, echo, fieldHz, grid, options.pixelBandwidthHz[e]!, options.echoSeconds[e]!),
     );
-    const line = phaseLine(straight, grid, options);
-    const total = line.fieldHz.map((rest, i) => rest + fieldHz[i]!);
+    const rest = fat && { ...fat, fieldHz: fat.fieldHz.map((hz, i) => hz - fieldHz[i]!) };
+    line = phaseLine(straight, grid, { ...options, areAligned: round >= ROUNDS - 2 }, rest);
+    const total = line.fieldHz.map((hz, i) => hz + fieldHz[i]!);
     ({ fieldHz, standardErrorHz } = smoothSlices(total, line.weights, grid, options.smoothingPixels));
-    wrapLimitHz = line.wrapLimitHz;
   }
-  const slowest = options.pixelBandwidthHz.reduce((a, b) => (Math.abs(b) < Math.abs(a) ? b : a));
-  return { ...settled(fieldHz, options.mask, grid, slowest), standardErrorHz, wrapLimitHz };
+  const { mask, wrapLimitHz } = line!;
+  return {
+    ...settled(fieldHz, mask, grid, options.pixelBandwidthHz),
+    standardErrorHz,
+    ...counts(options.mask, mask),
+    wrapLimitHz,
+  };
 }
 
 /** Mask and count of a map in the object's coordinates. */
@@ -117,14 +174,19 @@ function settled(
   fieldHz: Float32Array,
   measured: Uint8Array,
   grid: VolumeSize,
-  pixelBandwidthHz: number,
+  pixelBandwidthHz: readonly number[],
   foldedOrigins?: Uint8Array,
 ) {
-  const displacement = fieldHz.map((hz) => hz / pixelBandwidthHz);
-  const folded = foldedPixels(displacement, grid.slices * grid.rows, grid.columns);
+  const folded = foldedInAny(fieldHz, pixelBandwidthHz, grid.slices * grid.rows, grid.columns);
   if (foldedOrigins) for (let i = 0; i < folded.length; i++) folded[i]! |= foldedOrigins[i]!;
   const mask = measured.map((flag, i) => flag & (1 - folded[i]!));
   return { fieldHz, mask, foldedCount: folded.reduce((sum, flag, i) => sum + (flag & measured[i]!), 0) };
+}
+
+function counts(all: Uint8Array, kept: Uint8Array) {
+  const count = (mask: Uint8Array) => mask.reduce((sum, flag) => sum + flag, 0);
+  const keptCount = count(kept);
+  return { keptCount, notWaterCount: count(all) - keptCount };
 }
 
 /** An echo read where the field has put each pixel, its phase taken off. */

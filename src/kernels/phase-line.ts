@@ -1,3 +1,5 @@
+import { closestEchoes } from "./echo-times.js";
+import { withoutSpecks } from "./signal-mask.js";
 import { smoothSlices } from "./smooth-field.js";
 import { unwrapPhase, type VolumeSize, wrapped } from "./unwrap.js";
 
@@ -8,6 +10,16 @@ export interface PhaseLineOptions {
   readonly noiseDeviation: number;
   /** 1 where there is signal, [slices, rows, columns]. */
   readonly mask: Uint8Array;
+  /** False while the echoes do not lie on each other: then nothing follows a line, and all pixels are taken. */
+  readonly areAligned: boolean;
+}
+
+/** What a fit of water and fat together says; without it a pixel of fat alone passes for water in another field. */
+export interface FatView {
+  /** The field, Hz, [slices, rows, columns]; a rough one will do. */
+  readonly fieldHz: Float32Array;
+  /** What fat adds to the field that water would show, Hz, by its phase between the two closest echoes. */
+  readonly asFieldHz: number;
 }
 
 export interface PhaseLine {
@@ -15,45 +27,61 @@ export interface PhaseLine {
   readonly fieldHz: Float32Array;
   /** 1 / Hz^2, inverse variances; 0 outside the mask. */
   readonly weights: Float32Array;
+  /** The given mask less the pixels that are not of water alone, as far as the echoes show it. */
+  readonly mask: Uint8Array;
   readonly wrapLimitHz: number;
 }
 
-/** Slope of the echoes' phases: unwrapped between the two closest echoes, then a weighted line through all of them. */
+/**
+ * Slope of the echoes' phases: unwrapped between the two closest echoes, then a weighted line through all of them.
+ * Pixels whose echoes follow no line, and those of fat, are told from the others and left out.
+ */
 export function phaseLine(
   echoes: readonly Float32Array[],
   grid: VolumeSize,
   options: PhaseLineOptions,
+  fat?: FatView,
 ): PhaseLine {
-  const { echoSeconds, noiseDeviation, mask } = options;
+  const { echoSeconds, noiseDeviation, areAligned } = options;
   const { first, second, gapSeconds } = closestEchoes(echoSeconds);
   const difference = phaseDifference(echoes[first]!, echoes[second]!);
-  const turns = settleTurns(difference, mask, grid);
-  const start = Float32Array.from(turns, (radians) => -radians / (2 * Math.PI * gapSeconds));
-  const fieldHz = start.slice();
-  const weights = new Float32Array(mask.length);
-  const guess =
-    echoes.length > 2 ? smoothSlices(start, Float32Array.from(mask), grid, 1, false).fieldHz : start;
+  const toHz = -1 / (2 * Math.PI * gapSeconds);
+  const wrapLimitHz = 1 / (2 * gapSeconds);
   const fit = new LineFit(echoes, echoSeconds, noiseDeviation);
-  for (let i = 0; i < mask.length; i++) {
-    if (!mask[i]) continue;
-    fieldHz[i] = guess[i]! + fit.slopeHz(i, guess[i]!);
-    weights[i] = fit.weight;
-  }
-  return { fieldHz, weights, wrapLimitHz: 1 / (2 * gapSeconds) };
+  const all = fitLines(fit, difference, options.mask, grid, toHz);
+  const pure = options.mask.map((flag, i) =>
+    flag && !(areAligned && all.astray[i]) && !isFat(difference[i]! * toHz, i, fat, wrapLimitHz) ? 1 : 0,
+  );
+  if (pure.every((flag, i) => flag === options.mask[i])) return { ...all, mask: pure, wrapLimitHz };
+  // Once more without the others: they have pulled their neighbours' turns and guesses.
+  const mask = withoutSpecks(pure, grid);
+  return { ...fitLines(fit, difference, mask, grid, toHz), mask, wrapLimitHz };
 }
 
-/** Indices of the two echoes closest in time, the earlier one first. */
-function closestEchoes(echoSeconds: readonly number[]): {
-  first: number;
-  second: number;
-  gapSeconds: number;
-} {
-  const order = echoSeconds.map((_, e) => e).sort((a, b) => echoSeconds[a]! - echoSeconds[b]!);
-  const gaps = order.slice(1).map((e, i) => echoSeconds[e]! - echoSeconds[order[i]!]!);
-  const gapSeconds = Math.min(...gaps);
-  if (!(gapSeconds > 0)) throw new RangeError(`echo times ${echoSeconds.join(", ")} s; must differ`);
-  const at = gaps.indexOf(gapSeconds);
-  return { first: order[at]!, second: order[at + 1]!, gapSeconds };
+function fitLines(fit: LineFit, difference: Float64Array, mask: Uint8Array, grid: VolumeSize, toHz: number) {
+  const start = Float32Array.from(settleTurns(difference, mask, grid), (radians) => radians * toHz);
+  const guess = fit.isFromMany ? smoothSlices(start, Float32Array.from(mask), grid, 1, false).fieldHz : start;
+  const fieldHz = start.slice();
+  const weights = new Float32Array(mask.length);
+  const astray = new Uint8Array(mask.length);
+  for (let i = 0; i < mask.length; i++) {
+    if (!mask[i]) continue;
+    fieldHz[i] = fit.fieldHz(i, guess[i]!);
+    // The smoothed guess is less noisy; a pixel unlike its neighbours may follow a line from its own.
+    if (fit.isAstray) fieldHz[i] = fit.fieldHz(i, start[i]!);
+    astray[i] = fit.isAstray ? 1 : 0;
+    weights[i] = fit.weight;
+  }
+  return { fieldHz, weights, astray };
+}
+
+/** Whether a pixel's field, between the closest echoes, is nearer to that of fat than to that of water; whole turns aside. */
+function isFat(hz: number, pixel: number, fat: FatView | undefined, wrapLimitHz: number): boolean {
+  if (!fat) return false;
+  const turn = 2 * wrapLimitHz;
+  const away = (value: number) => Math.abs(value - turn * Math.round(value / turn));
+  const above = hz - fat.fieldHz[pixel]!;
+  return away(above - fat.asFieldHz) < away(above);
 }
 
 /** `arg(second conj(first))`, radians, for each pixel. */
@@ -69,140 +97,184 @@ function phaseDifference(first: Float32Array, second: Float32Array): Float64Arra
 
 /**
  * Unwrapped phase with whole turns settled: the largest region so that its mean is nearest zero, each further one so
- * that it continues the larger ones across the gaps between them, or like the first where it sees none of them.
+ * that it lies on the plane through the larger ones, those near it counting most.
  */
 function settleTurns(difference: Float64Array, mask: Uint8Array, size: VolumeSize): Float64Array {
   const { radians, regions, regionCount } = unwrapPhase(difference, mask, size);
-  const sums = new Float64Array(regionCount);
-  const counts = new Float64Array(regionCount);
+  const places = centresOf(radians, regions, regionCount, size);
+  const every = Math.ceil(radians.length / SAMPLED);
+  const samples = places.map((): Place[] => []);
   for (let i = 0; i < radians.length; i++) {
-    if (regions[i]! < 0) continue;
-    sums[regions[i]!]! += radians[i]!;
-    counts[regions[i]!]!++;
+    const region = regions[i]!;
+    if (region >= 0 && (i % every === 0 || samples[region]!.length === 0))
+      samples[region]!.push(placeOf(i, radians[i]!, size));
   }
-  const sights = regionCount > 1 ? sightsAcross(radians, regions, regionCount, size) : undefined;
-  const shifts = new Float64Array(regionCount); // radians, whole turns
-  for (let region = 0; region < regionCount; region++) {
-    let [weight, jump] = [0, 0];
-    for (const { other, weight: share, sum } of sights?.get(region) ?? []) {
-      weight += share;
-      jump += sum - share * shifts[other]!;
-    }
-    const off = weight > 0 ? jump / weight : sums[region]! / counts[region]!;
-    shifts[region] = wrapped(off) - off;
-  }
+  const settled: Place[] = [];
+  const shifts = places.map((place, region) => {
+    const off = place.radians - (region === 0 ? 0 : planeAt(settled, place));
+    const shift = wrapped(off) - off;
+    for (const sample of samples[region]!) settled.push({ ...sample, radians: sample.radians + shift });
+    return shift;
+  });
   for (let i = 0; i < radians.length; i++) if (regions[i]! >= 0) radians[i]! += shifts[regions[i]!]!;
   return radians;
 }
 
-interface Sight {
-  /** A region with a lower number, so a larger one. */
-  readonly other: number;
-  weight: number;
-  /** Weighted radians by which this region lies above the straight continuation of the other. */
-  sum: number;
+/** Pixels of a volume, evenly spread, that the planes go through. */
+const SAMPLED = 8192;
+
+interface Place {
+  readonly x: number;
+  readonly y: number;
+  readonly z: number;
+  readonly radians: number;
 }
 
-/** For each region what it sees of larger ones along rows, columns and slices, near ones counting more. */
-function sightsAcross(
+function placeOf(pixel: number, radians: number, { rows, columns }: VolumeSize): Place {
+  const row = Math.floor(pixel / columns);
+  return { x: pixel % columns, y: row % rows, z: Math.floor(row / rows), radians };
+}
+
+/** Mean place and mean phase of each region. */
+function centresOf(
   radians: Float64Array,
   regions: Int32Array,
   regionCount: number,
-  { slices, rows, columns }: VolumeSize,
-): Map<number, Sight[]> {
-  const found = new Map<number, Sight>();
-  const strides = [1, columns, rows * columns];
-  const lengths = [columns, rows, slices];
-  for (let axis = 0; axis < 3; axis++) {
-    const [stride, length] = [strides[axis]!, lengths[axis]!];
-    for (let start = 0; start < radians.length; start++) {
-      if (Math.floor(start / stride) % length !== 0) continue; // lines start where the index along the axis is 0
-      let last = -1;
-      for (let step = 0, i = start; step < length; step++, i += stride) {
-        if (regions[i]! < 0) continue;
-        if (last >= 0 && regions[last] !== regions[i]) {
-          addSight(radians, regions, regionCount, last, i, stride, length - step > 1, found);
-        }
-        last = i;
-      }
+  size: VolumeSize,
+): Place[] {
+  const sums = Array.from({ length: regionCount }, () => ({ count: 0, x: 0, y: 0, z: 0, radians: 0 }));
+  for (let i = 0; i < radians.length; i++) {
+    const sum = sums[regions[i]!];
+    if (!sum) continue;
+    const place = placeOf(i, radians[i]!, size);
+    sum.count++;
+    sum.x += place.x;
+    sum.y += place.y;
+    sum.z += place.z;
+    sum.radians += place.radians;
+  }
+  return sums.map(({ count, x, y, z, radians: phase }) => ({
+    x: x / count,
+    y: y / count,
+    z: z / count,
+    radians: phase / count,
+  }));
+}
+
+/** Least squares plane through some places, each by the inverse fourth power of its distance; its value at a place. */
+function planeAt(places: readonly Place[], { x, y, z }: Place): number {
+  const matrix = new Float64Array(16);
+  const right = new Float64Array(4);
+  for (const place of places) {
+    const terms = [1, place.x - x, place.y - y, place.z - z];
+    const square = terms[1]! ** 2 + terms[2]! ** 2 + terms[3]! ** 2;
+    const weight = 1 / (square + 1) ** 2;
+    for (let i = 0; i < 4; i++) {
+      right[i]! += weight * terms[i]! * place.radians;
+      for (let j = 0; j < 4; j++) matrix[4 * i + j]! += weight * terms[i]! * terms[j]!;
     }
   }
-  const out = new Map<number, Sight[]>();
-  for (const [key, sight] of found) {
-    const region = Math.floor(key / regionCount);
-    out.set(region, [...(out.get(region) ?? []), sight]);
+  // A slope along which the places hardly differ stays near zero.
+  for (let i = 1; i < 4; i++) matrix[5 * i]! += 1e-3 * (matrix[5]! + matrix[10]! + matrix[15]!) + 1e-12;
+  for (let k = 3; k > 0; k--) {
+    // the slopes eliminated, one by one
+    for (let i = 0; i < k; i++) {
+      const share = matrix[4 * i + k]! / matrix[5 * k]!;
+      right[i]! -= share * right[k]!;
+      for (let j = 0; j < k; j++) matrix[4 * i + j]! -= share * matrix[4 * k + j]!;
+    }
   }
-  return out;
+  return right[0]! / matrix[0]!;
 }
 
-function addSight(
-  radians: Float64Array,
-  regions: Int32Array,
-  regionCount: number,
-  from: number,
-  to: number,
-  stride: number,
-  more: boolean,
-  found: Map<number, Sight>,
-): void {
-  const gap = (to - from) / stride;
-  const before =
-    regions[from - stride] === regions[from] ? radians[from]! - radians[from - stride]! : undefined;
-  const after =
-    more && regions[to + stride] === regions[to] ? radians[to + stride]! - radians[to]! : undefined;
-  const slope = ((before ?? after ?? 0) + (after ?? before ?? 0)) / 2;
-  const above = radians[to]! - radians[from]! - gap * slope;
-  const [low, high, sign] = regions[from]! < regions[to]! ? [from, to, 1] : [to, from, -1];
-  const key = regions[high]! * regionCount + regions[low]!;
-  const sight = found.get(key) ?? { other: regions[low]!, weight: 0, sum: 0 };
-  found.set(key, sight);
-  sight.weight += 1 / (gap * gap);
-  sight.sum += (sign * above) / (gap * gap);
-}
+/** Share of the signal that may stray from the line before a pixel counts as not of one species: a tenth in amplitude. */
+const ASTRAY_SHARE = 0.1 ** 2;
+/** Normal deviate that noise alone exceeds once in a thousand pixels. */
+const ASTRAY_DEVIATE = 3.09;
 
-/** Weighted least squares line through the phases of one pixel, after a guess of its slope is taken off. */
+/**
+ * Weighted least squares line through the phases of one pixel, after a guess of its slope is taken off, and through the
+ * logarithms of its magnitudes: one species turns steadily and decays steadily, two of them beat.
+ */
 class LineFit {
-  /** Inverse variance of the last slope, 1 / Hz^2. */
+  /** Inverse variance of the last field, 1 / Hz^2. */
   weight = 0;
+  /** Whether there are more echoes than a line needs. */
+  readonly isFromMany: boolean;
+  /** Whether the last pixel strays from the lines by more than noise does, and by more than a tenth of its signal. */
+  isAstray = false;
   readonly #phases: Float64Array;
+  readonly #levels: Float64Array;
   readonly #sizes: Float64Array;
+  readonly #noiseLimit: number;
 
   constructor(
     private readonly echoes: readonly Float32Array[],
     private readonly echoSeconds: readonly number[],
     private readonly noiseDeviation: number,
   ) {
+    this.isFromMany = echoes.length > 2;
     this.#phases = new Float64Array(echoes.length);
+    this.#levels = new Float64Array(echoes.length);
     this.#sizes = new Float64Array(echoes.length);
+    this.#noiseLimit = chiSquareLimit(2 * (echoes.length - 2), ASTRAY_DEVIATE) * noiseDeviation ** 2;
   }
 
-  /** @returns Hz to add to the guess */
-  slopeHz(pixel: number, guessHz: number): number {
+  /** @param guessHz near enough that the rest turns less than half from echo to echo */
+  fieldHz(pixel: number, guessHz: number): number {
     const { echoes, echoSeconds } = this;
-    let [total, meanTime, meanPhase] = [0, 0, 0];
+    let [total, meanTime, meanPhase, meanLevel] = [0, 0, 0, 0];
     for (let e = 0; e < echoes.length; e++) {
       const re = echoes[e]![2 * pixel]!;
       const im = echoes[e]![2 * pixel + 1]!;
       const turned = Math.atan2(im, re) + 2 * Math.PI * guessHz * echoSeconds[e]!;
       this.#phases[e] = e === 0 ? turned : this.#phases[e - 1]! + wrapped(turned - this.#phases[e - 1]!);
-      this.#sizes[e] = re * re + im * im;
-      total += this.#sizes[e]!;
-      meanTime += this.#sizes[e]! * echoSeconds[e]!;
-      meanPhase += this.#sizes[e]! * this.#phases[e]!;
+      const size = re * re + im * im;
+      this.#sizes[e] = size;
+      this.#levels[e] = size > 0 ? Math.log(size) / 2 : 0;
+      total += size;
+      meanTime += size * echoSeconds[e]!;
+      meanPhase += size * this.#phases[e]!;
+      meanLevel += size * this.#levels[e]!;
     }
+    this.isAstray = false;
     if (total === 0) {
       this.weight = 0;
-      return 0;
+      return guessHz;
     }
     meanTime /= total;
     meanPhase /= total;
-    let [slope, spread] = [0, 0];
+    meanLevel /= total;
+    let [slope, growth, spread] = [0, 0, 0];
     for (let e = 0; e < echoes.length; e++) {
       const time = echoSeconds[e]! - meanTime;
       slope += this.#sizes[e]! * time * (this.#phases[e]! - meanPhase);
+      growth += this.#sizes[e]! * time * (this.#levels[e]! - meanLevel);
       spread += this.#sizes[e]! * time * time;
     }
+    slope /= spread;
+    growth /= spread;
+    if (this.isFromMany) {
+      let left = 0;
+      for (let e = 0; e < echoes.length; e++) {
+        const time = echoSeconds[e]! - meanTime;
+        const phase = this.#phases[e]! - meanPhase - slope * time;
+        const level = this.#levels[e]! - meanLevel - growth * time;
+        left += this.#sizes[e]! * (phase * phase + level * level);
+      }
+      this.isAstray = left > this.#noiseLimit && left > ASTRAY_SHARE * total;
+    }
     this.weight = (spread * (2 * Math.PI) ** 2) / this.noiseDeviation ** 2;
-    return -slope / (2 * Math.PI * spread);
+    return guessHz - slope / (2 * Math.PI);
   }
+}
+
+/**
+ * What the sum of squares of so many unit normal variables exceeds with the probability of a normal deviate.
+ * Source: Wilson and Hilferty 1931, Proc Natl Acad Sci 17:684, doi:10.1073/pnas.17.12.684.
+ */
+function chiSquareLimit(degrees: number, deviate: number): number {
+  if (degrees <= 0) return Number.POSITIVE_INFINITY;
+  const share = 2 / (9 * degrees);
+  return degrees * (1 - share + deviate * Math.sqrt(share)) ** 3;
 }

@@ -1,3 +1,5 @@
+import type { VolumeSize } from "./unwrap.js";
+
 /** Pixels that the bright level is taken from, evenly spread: enough for its percent. */
 const SAMPLED = 8192;
 
@@ -32,17 +34,25 @@ export function signalMask(
   return mask;
 }
 
-/** A mask without specks: pixels of which fewer than four of the eight neighbours are set, as noise leaves them. */
-export function withoutSpecks(mask: Uint8Array, rows: number, columns: number): Uint8Array {
-  const set = (y: number, x: number) =>
-    y >= 0 && y < rows && x >= 0 && x < columns ? mask[y * columns + x]! : 0;
-  return mask.map((flag, i) => {
-    if (!flag) return 0;
-    const [y, x] = [Math.floor(i / columns), i % columns];
-    let neighbours = -1;
-    for (let dy = -1; dy <= 1; dy++) for (let dx = -1; dx <= 1; dx++) neighbours += set(y + dy, x + dx);
-    return neighbours >= 4 ? 1 : 0;
-  });
+/**
+ * A mask without specks: pixels of which fewer than four of the eight neighbours in the slice are set, as noise leaves them.
+ * @param mask [slices, rows, columns]
+ */
+export function withoutSpecks(mask: Uint8Array, { slices, rows, columns }: VolumeSize): Uint8Array {
+  const out = mask.slice();
+  for (let slice = 0; slice < slices; slice++) {
+    const set = (y: number, x: number) =>
+      y >= 0 && y < rows && x >= 0 && x < columns ? mask[(slice * rows + y) * columns + x]! : 0;
+    for (let y = 0, i = slice * rows * columns; y < rows; y++) {
+      for (let x = 0; x < columns; x++, i++) {
+        if (!mask[i]) continue;
+        let neighbours = -1;
+        for (let dy = -1; dy <= 1; dy++) for (let dx = -1; dx <= 1; dx++) neighbours += set(y + dy, x + dx);
+        if (neighbours < 4) out[i] = 0;
+      }
+    }
+  }
+  return out;
 }
 
 const TILES = 8;

@@ -4,7 +4,7 @@ import { smoothMap } from "./smooth.js";
 import type { VolumeSize } from "./unwrap.js";
 
 /** Below this share of the smoothing window on measured pixels a value is taken from further away instead. */
-const LEAST_COVERAGE = 0.05;
+const LEAST_COVERAGE = 0.2;
 
 export interface SmoothField {
   /** Defined everywhere, [rows, columns]. */
@@ -49,6 +49,7 @@ export function smoothField(
   );
   const [coarseRows, coarseColumns] = [Math.ceil(rows / step), Math.ceil(columns / step)];
   const known = coverage.map((share) => (share >= LEAST_COVERAGE ? 1 : 0));
+  keepInRange(values, fieldHz, weights);
   if (!withErrors) standardErrors.fill(0);
   const coarse = extended(values, standardErrors, known, coarseRows, coarseColumns);
   if (step === 1) return coarse;
@@ -62,6 +63,21 @@ export function smoothField(
     fieldHz: refined(coarse.fieldHz, coarseRows, coarseColumns, rows, columns, step),
     standardErrorHz,
   };
+}
+
+/** How far values beyond the measured pixels may lie beyond theirs, as a share of their range: room for a slope at the rim. */
+const RANGE_ROOM = 0.1;
+
+/** Beyond the measured pixels a curved surface runs away: hold it to about the range that was measured. */
+function keepInRange(values: Float32Array, measured: Float32Array, weights: Float32Array): void {
+  let [low, high] = [Number.POSITIVE_INFINITY, Number.NEGATIVE_INFINITY];
+  for (let i = 0; i < measured.length; i++) {
+    if (!(weights[i]! > 0)) continue;
+    low = Math.min(low, measured[i]!);
+    high = Math.max(high, measured[i]!);
+  }
+  const room = RANGE_ROOM * (high - low);
+  for (let i = 0; i < values.length; i++) values[i] = Math.min(high + room, Math.max(low - room, values[i]!));
 }
 
 /** smoothField for every slice of a volume, [slices, rows, columns]. */

@@ -62,7 +62,7 @@ export const schema = {
 const PHASE_TOLERANCE_TURNS = 1 / 12;
 
 /** @throws UsageError for shares that do not add up to something above zero */
-export function spectralLines({ spectrum }: Params, resonanceHz: number): SpectralLine[] {
+export function spectralLines({ spectrum }: Pick<Params, "spectrum">, resonanceHz: number): SpectralLine[] {
   const peaks =
     spectrum === "six-peak"
       ? FAT_SPECTRUM

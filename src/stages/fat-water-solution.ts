@@ -1,4 +1,4 @@
-import { foldedPixels, objectField } from "../kernels/displacement.js";
+import { foldedInAny, objectField } from "../kernels/displacement.js";
 import { fatFraction, threePointDixon, twoPointDixon } from "../kernels/fat-water.js";
 import { coarseFatWaterField } from "../kernels/fat-water-field.js";
 import { type FatWaterModel, fatSignal, type SpectralLine } from "../kernels/fat-water-model.js";
@@ -76,10 +76,9 @@ function withoutFolds(
   rows: number,
   { length, timing }: FatWaterModel,
 ) {
-  const solid = withoutSpecks(object, rows, length);
+  const solid = withoutSpecks(object, { slices: 1, rows, columns: length });
   fillUnknown(fieldHz, solid, rows, length);
-  const displacement = fieldHz.map((hz) => hz / timing.pixelBandwidthHz[0]!);
-  const folded = foldedPixels(displacement, rows, length);
+  const folded = foldedInAny(fieldHz, timing.pixelBandwidthHz, rows, length);
   const mask = solid.map((flag, i) => flag & (1 - folded[i]!));
   return { mask, foldedCount: solid.reduce((sum, flag, i) => sum + (flag & folded[i]!), 0) };
 }

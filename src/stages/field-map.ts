@@ -1,18 +1,23 @@
-import { UsageError } from "../errors.js";
-import { measureField } from "../kernels/field-map.js";
+import { InputError, UsageError } from "../errors.js";
+import { coarseFieldLengths } from "../kernels/fat-water-field.js";
+import { type FatWaterModel, fatWaterModel } from "../kernels/fat-water-model.js";
+import { fatAsFieldHz, measureField } from "../kernels/field-map.js";
 import { warpLengths } from "../kernels/row-warp.js";
 import { imageNoiseDeviation, signalMask } from "../kernels/signal-mask.js";
+import type { ScanFacts } from "../physics/scan.js";
 import {
   checkEchoes,
   columnsInView,
   EchoFrame,
+  type EchoTiming,
   echoTiming,
   mapLayout,
   pixelBandwidthHz,
   pixelMm,
   rounded,
 } from "./echo-frame.js";
-import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
+import { spectralLines } from "./fat-water-parameters.js";
+import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, NOT_WATER, refuseSecondField } from "./field-values.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type Frame, type FrameStage } from "./stage.js";
 
@@ -20,6 +25,7 @@ interface Params {
   readonly "smoothing-px": number;
   readonly "mask-share": number;
   readonly "through-slices": boolean;
+  readonly fat: "check" | "absent";
 }
 
 const schema = {
@@ -44,6 +50,12 @@ const schema = {
       type: "boolean",
       default: true,
     },
+    fat: {
+      description:
+        "check: leave pixels of fat out, where three or more echoes tell it from water (else it counts as field); absent: there is none",
+      enum: ["check", "absent"],
+      default: "check",
+    },
   },
 };
 
@@ -51,7 +63,8 @@ const schema = {
  * Off-resonance in Hz from two or more echoes: `-arg(I2 conj(I1)) / (2 pi dTE)` of the echoes combined with one set of
  * channel weights, the weighted least squares line over more than two, unwrapped in order of reliability, smoothed by its
  * weights, extended beyond the object, and carried from the displaced image to the object. The images pass unchanged.
- * Fat is not modelled: where there is much of it, take the field of `separate-fat-water`.
+ * The map is of water. Three or more echoes show where there is fat (six peaks): it is left out, and the field there
+ * continues its surroundings. Of two echoes, or of those in which fat looks like water, fat counts as field.
  *
  * Source: Jezzard and Balaban 1995, Magn Reson Med 34:65; channels: Walsh et al. 2000, Magn Reson Med 43:682.
  */
@@ -67,15 +80,17 @@ export const fieldMap: FrameStage<Params> = {
     refuseSecondField("field-map", maps);
     const { echoSeconds, pixelBandwidthHz } = echoTiming("field-map", layout, scan);
     const columns = columnsInView(layout, scan);
+    const fat = fatOf(params, { echoSeconds, pixelBandwidthHz }, scan, columns);
     return {
       layout,
       maps: fieldMapPlans(mapLayout(layout, scan), true),
-      transformLengths: warpLengths(columns),
+      transformLengths: [...warpLengths(columns), ...coarseFieldLengths(columns)],
       workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 2) * scan.lengths.contrast,
       physics: {
         "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),
-        "wrap limit, Hz": rounded(1 / (2 * closestEchoes(echoSeconds))),
+        [WRAP_LIMIT]: rounded(1 / (2 * closestGapSeconds(echoSeconds))),
         "bandwidth per pixel, Hz": pixelBandwidthHz.map(rounded).join(", "),
+        ...(params.fat === "check" && !fat.model && { [FAT_AS_FIELD]: rounded(fat.asFieldHz) }),
         "smoothing, mm": rounded(params["smoothing-px"] * pixelMm(layout)),
       },
     };
@@ -85,9 +100,10 @@ export const fieldMap: FrameStage<Params> = {
     const { scan } = context;
     const timing = echoTiming("field-map", frame.layout, scan);
     const columns = columnsInView(frame.layout, scan);
+    const fat = fatOf(params, timing, scan, columns);
     const size = images.rows * columns;
     const values = new FieldValues(images.slices * images.partitions * size, true);
-    let foldedCount = 0;
+    const counts = { folded: 0, notWater: 0, kept: 0 };
     for (const volume of volumesOf(images, scan.sliceOrder)) {
       const echoes = joined(
         volume.map(([slice, z]) => images.combined(slice, z, columns, context.kernels.transform)),
@@ -99,12 +115,15 @@ export const fieldMap: FrameStage<Params> = {
         { slices: volume.length, rows: images.rows, columns },
         {
           ...timing,
+          ...(fat.model && { fat: { model: fat.model, asFieldHz: fat.asFieldHz } }),
           noiseDeviation,
           mask: signalMask(echoes, params["mask-share"], noiseDeviation),
           smoothingPixels: params["smoothing-px"],
         },
       );
-      foldedCount += measured.foldedCount;
+      counts.folded += measured.foldedCount;
+      counts.notWater += measured.notWaterCount;
+      counts.kept += measured.keptCount;
       volume.forEach(([slice, z], i) => {
         const part = <A extends Float32Array | Uint8Array>(map: A) =>
           map.subarray(i * size, (i + 1) * size) as A;
@@ -113,10 +132,48 @@ export const fieldMap: FrameStage<Params> = {
       });
     }
     values.emit(context, pixelMm(frame.layout) / pixelBandwidthHz(frame.layout, scan));
-    context.note({ name: "folded pixels", value: foldedCount });
+    context.note({ name: FOLDED_IN_MAP, value: counts.folded });
+    if (!fat.model) return frame;
+    refuseLeftovers(counts);
+    context.note({ name: NOT_WATER, value: counts.notWater });
     return frame;
   },
 };
+
+/** Physics of a plan: fields beyond this from their surroundings are ambiguous. */
+export const WRAP_LIMIT = "wrap limit, Hz";
+/** Physics of a plan whose map takes fat for field: by how much. */
+export const FAT_AS_FIELD = "fat counts as field, Hz";
+
+/** Noise of water that a fit of water and fat may have, against one echo: more, and the echoes do not tell them apart. */
+const MOST_NOISE = 5;
+
+/** What fat does in these echoes, and the model to find it with, where they tell it from water. */
+function fatOf(
+  { fat }: Params,
+  timing: EchoTiming,
+  scan: ScanFacts,
+  columns: number,
+): { asFieldHz: number; model?: FatWaterModel } {
+  const lines = spectralLines({ spectrum: "six-peak" }, scan.resonanceHz);
+  const asFieldHz = fatAsFieldHz(timing.echoSeconds, lines);
+  if (fat === "absent" || timing.echoSeconds.length < 3) return { asFieldHz };
+  const model = fatWaterModel(timing, lines, columns);
+  return model.noiseGain.water > MOST_NOISE ? { asFieldHz } : { asFieldHz, model };
+}
+
+/** Of the pixels with signal this share must be of water for a map that is of use. */
+const LEAST_SHARE = 0.1;
+
+/** @throws InputError where next to nothing follows the map's one species */
+function refuseLeftovers({ kept, notWater }: { kept: number; notWater: number }): void {
+  if (kept >= LEAST_SHARE * (kept + notWater)) return;
+  throw new InputError(
+    { field: "field-map", value: `${kept} of ${kept + notWater} pixels with signal` },
+    "so few follow one species, water, from echo to echo",
+    "Take separate-fat-water where there is fat, with separate-fat-water.echo-phase=true where echoes are read in turns; or set field-map.fat=absent",
+  );
+}
 
 /** Which images are unwrapped together, [slice, z] each: slices in spatial order, or the partitions of a slab. */
 function volumesOf(images: EchoFrame, sliceOrder: readonly number[]): [slice: number, z: number][][] {
@@ -144,7 +201,7 @@ export function noiseOf(frame: Frame, image: Float32Array, rows: number, columns
 }
 
 /** Seconds between the two echoes that are nearest in time. @throws UsageError where two have the same time */
-function closestEchoes(echoSeconds: readonly number[]): number {
+function closestGapSeconds(echoSeconds: readonly number[]): number {
   const sorted = [...echoSeconds].sort((a, b) => a - b);
   const closest = Math.min(...sorted.slice(1).map((seconds, i) => seconds - sorted[i]!));
   if (closest > 0) return closest;

@@ -1,6 +1,13 @@
 import { UsageError } from "../errors.js";
 import type { Layout, MapPlan, StageContext } from "./stage.js";
 
+/** Finding of what puts pixels back: those of the object that lie on others in the image of some echo, left at 0. */
+export const FOLDED = "folded pixels";
+/** Finding of what measures a map: pixels with signal where it folds, left out of its mask. */
+export const FOLDED_IN_MAP = "pixels left out, the map folds there";
+/** Finding: pixels with signal that a map of water leaves out. */
+export const NOT_WATER = "pixels left out, not of water alone";
+
 /** The maps that a stage with a field hands out. @param isMeasured whether its standard error is known */
 export function fieldMapPlans(layout: Layout, isMeasured: boolean): MapPlan[] {
   const plans: MapPlan[] = [

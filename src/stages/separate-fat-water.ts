@@ -17,7 +17,7 @@ import {
 import { checkMethod, ID, type Params, rangeHz, schema, spectralLines } from "./fat-water-parameters.js";
 import { type Solved, solve } from "./fat-water-solution.js";
 import { noiseOf } from "./field-map.js";
-import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
+import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, refuseSecondField } from "./field-values.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type FrameStage, type Layout, type MapPlan } from "./stage.js";
 
@@ -86,7 +86,7 @@ export const separateFatWaterStage: FrameStage<Params> = {
         const echoes = images.combined(slice, z, wide, transform);
         const noiseDeviation = noiseOf(frame, echoes[0]!, images.rows, wide);
         const solved = solve(transform, echoes, images.rows, model, spectrum, params, noiseDeviation);
-        context.note({ name: "folded pixels", value: solved.foldedCount });
+        context.note({ name: FOLDED_IN_MAP, value: solved.foldedCount });
         out.add(solved, wide, columns, (slice * images.partitions + z) * images.rows * columns);
         if (!params["echo-phase"]) continue;
         context.note({ name: "odd/even echo phase, rad", value: solved.echoPhase.radians });

@@ -85,6 +85,7 @@ export interface MapValues {
 
 /** A number that a stage found in one group, such as how many pixels fold. */
 export interface Finding {
+  readonly stage: string;
   readonly name: string;
   readonly value: number;
 }
@@ -123,7 +124,7 @@ export interface StageContext {
   emit(map: MapValues): void;
   /** A map that an earlier stage has handed out for this group. */
   emitted(name: string): Float32Array | undefined;
-  note(finding: Finding): void;
+  note(finding: Omit<Finding, "stage">): void;
 }
 
 /** What a stage will do to a layout: shape arithmetic and physics, no samples. `--explain` prints it. */

@@ -1,4 +1,5 @@
 import { UsageError } from "../errors.js";
+import { foldedInAny } from "../kernels/displacement.js";
 import type { Kernels } from "../kernels/kernels.js";
 import { signalMask } from "../kernels/signal-mask.js";
 import {
@@ -8,6 +9,7 @@ import {
   undisplaceLengths,
 } from "../kernels/undisplace.js";
 import { planUndisplaceColumns } from "../kernels/undisplace-columns.js";
+import { cropStart } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
 import {
   columnsInView,
@@ -20,7 +22,7 @@ import {
   rounded,
   signedPixelBandwidthHz,
 } from "./echo-frame.js";
-import { FieldValues, fieldMapPlans, refuseSecondField } from "./field-values.js";
+import { FieldValues, FOLDED, fieldMapPlans, refuseSecondField } from "./field-values.js";
 import { checkMap, givenField } from "./given-field.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type FrameStage, type Layout, type StageContext, withLength } from "./stage.js";
@@ -172,26 +174,28 @@ export const undisplace: FrameStage<Params> = {
     const out = context.allocate((frame.data.length / images.columns) * columns);
     const mask = new Float32Array(field.length);
     const result = new EchoFrame({ ...frame, data: out, layout });
+    let foldedCount = 0;
     for (let slice = 0; slice < images.slices; slice++)
       for (let z = 0; z < images.partitions; z++) {
         const at = (slice * images.partitions + z) * size;
-        const job = {
-          images,
-          result,
-          slice,
-          z,
-          fieldHz: field.subarray(at, at + size),
-          layout: frame.layout,
-        };
-        const folded = undisplaceImage(job, params, map !== undefined, context);
-        if (!folded) continue;
-        const object = signalMask(coilImages(result, 0, slice, z), OBJECT_SHARE);
-        for (let i = 0; i < size; i++) mask[at + i] = object[i]! & (1 - folded[i]!);
+        const fieldHz = field.subarray(at, at + size);
+        const job = { images, result, slice, z, fieldHz, layout: frame.layout };
+        const plan = undisplaceImage(job, params, context);
+        if (!plan) continue;
+        const object = objectSeen(job, params, scan);
+        const folded = foldedOf(plan, job, params, scan);
+        for (let i = 0; i < size; i++) {
+          mask[at + i] = object[i]! & (1 - folded[i]!);
+          foldedCount += object[i]! & folded[i]!;
+        }
       }
-    if (map && context.counters.contrast === 0) {
-      const values = new FieldValues(field.length, false);
-      values.set(0, field, mask);
-      values.emit(context, mmPerHz(params, frame.layout, scan));
+    if (context.counters.contrast === 0) {
+      context.note({ name: FOLDED, value: foldedCount });
+      if (map) {
+        const values = new FieldValues(field.length, false);
+        values.set(0, field, mask);
+        values.emit(context, mmPerHz(params, frame.layout, scan));
+      }
     }
     return { ...frame, data: out, layout };
   },
@@ -207,15 +211,14 @@ interface ImageJob {
   readonly layout: Layout;
 }
 
-/** @returns where the map folds in the first echo, if that is among them */
+/** @returns the plan of the first echo, if that is among them */
 function undisplaceImage(
   { images, result, slice, z, fieldHz, layout }: ImageJob,
   params: Params,
-  isGiven: boolean,
   context: StageContext,
-): Uint8Array | undefined {
+): Undisplacer | undefined {
   const planned = new Map<string, Undisplacer>();
-  let folded: Uint8Array | undefined;
+  let first: Undisplacer | undefined;
   for (let echo = 0; echo < images.echoes; echo++) {
     const counter = images.echoes > 1 ? echo : context.counters.contrast;
     const plan = planFor(planned, params, fieldHz, images, layout, context.scan, counter);
@@ -224,11 +227,34 @@ function undisplaceImage(
       applyPlan(plan, params, context.kernels, images, from, to);
     }
     if (counter > 0) continue;
-    folded = plan.folded;
-    context.note({ name: isGiven ? "folded pixels" : "pixels left at 0", value: plan.foldedCount });
+    first = plan;
     context.note({ name: "places displaced out of what was acquired", value: plan.outsideCount });
   }
-  return folded;
+  return first;
+}
+
+/** Pixels of the object, [y, columns in view]: those that are seen above the background in the first echo, where the field has put them. */
+function objectSeen({ images, slice, z, fieldHz, layout }: ImageJob, params: Params, scan: ScanFacts) {
+  const { rows, columns: wide } = images;
+  const seen = signalMask(coilImages(images, 0, slice, z), OBJECT_SHARE);
+  const columns = fieldHz.length / rows;
+  const margin = cropStart(wide, columns);
+  const hz = perPixelHz(params, layout, scan, 0);
+  const within = (place: number, length: number) => Math.min(length - 1, Math.max(0, Math.round(place)));
+  return Uint8Array.from(fieldHz, (field, i) => {
+    const [y, x] = [Math.floor(i / columns), (i % columns) + margin];
+    const [row, column] = params.along === "readout" ? [y, x + field / hz] : [y + field / hz, x];
+    return seen[within(row, rows) * wide + within(column, wide)]!;
+  });
+}
+
+/** Pixels that lie on others in the image of any echo. */
+function foldedOf(plan: Undisplacer, { images, fieldHz, layout }: ImageJob, params: Params, scan: ScanFacts) {
+  if (params.along === "phase") return plan.folded; // one direction for all echoes
+  const hz = Array.from({ length: scan.lengths.contrast }, (_, echo) =>
+    perPixelHz(params, layout, scan, echo),
+  );
+  return foldedInAny(fieldHz, hz, images.rows, fieldHz.length / images.rows);
 }
 
 /** Pixels above this share of the bright level are the object. */

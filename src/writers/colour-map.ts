@@ -7,7 +7,7 @@ import { Raster } from "./raster.js";
 import { type PixelMm, resample, type SquareSize, squareSize } from "./square-pixels.js";
 
 export interface SignedMapOptions {
-  /** The value shown in the darkest orange; minus this in the darkest blue. Default: from the values, rounded up. */
+  /** The value shown in the darkest orange; minus this in the darkest blue. Default: from the values inside the outline, rounded up. */
   readonly limit?: number;
   /** Unit of the values, such as "mm" or "Hz". */
   readonly unit: string;
@@ -15,7 +15,7 @@ export interface SignedMapOptions {
   readonly title?: string;
   /** What the values are, written beside the colour bar: "displacement". */
   readonly quantity?: string;
-  /** Same shape as the map; the edge of what is not 0 is drawn. */
+  /** Same shape as the map; the edge of what is not 0 is drawn, and what is 0 decides no colours. */
   readonly outlineMask?: ArrayLike<number>;
 }
 
@@ -23,7 +23,7 @@ export interface SignedMap {
   readonly picture: Picture;
   readonly png: Uint8Array;
   readonly limit: number;
-  /** Values beyond the limit, which are shown in the end colours. */
+  /** Values inside the outline beyond the limit, which are shown in the end colours. */
   readonly beyondLimit: number;
 }
 
@@ -77,9 +77,10 @@ export function signedMapPicture(
   if (values.length !== y * x || (outlineMask && outlineMask.length !== y * x)) {
     throw new RangeError(`a map of [${y}, ${x}] needs ${y * x} values in the map and in its mask`);
   }
-  const limit = options.limit ?? roundUp(automaticRange("signed", values).high);
+  const inside = outlineMask ? Array.from(values).filter((_, i) => outlineMask[i]) : values;
+  const limit = options.limit ?? roundUp(automaticRange("signed", inside).high);
   if (!(limit > 0)) throw new RangeError(`the limit of a signed map must be above 0, not ${limit}`);
-  const beyondLimit = Array.from(values).filter((value) => Math.abs(value) > limit * ROUNDING).length;
+  const beyondLimit = Array.from(inside).filter((value) => Math.abs(value) > limit * ROUNDING).length;
 
   const size = squareSize(x, y, options.pixelMm, WANTED_PX);
   const barTitle = quantity ? `${quantity} (${unit})` : unit;

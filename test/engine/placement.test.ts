@@ -51,9 +51,43 @@ describe("the placement statement", () => {
     const hz = inside(floats("measured", "field-hz.npy"));
     expect(moved.at(-1)! / hz.at(-1)!).toBeCloseTo(2 / 120, 5);
     const errors = inside(floats("measured", "field-standard-error-hz.npy"));
-    expect(field.displacementAfterMm.largest).toBeCloseTo((errors.at(-1)! * 2) / 120, 6);
+    expect(field.standardErrorMm.largest).toBeCloseTo((errors.at(-1)! * 2) / 120, 6);
     expect(field).toMatchObject({ corrected: true, foldedPixels: 0, source: "measured: field-map" });
     expect(stdout).toContain("corrected");
+  });
+
+  test("two echoes: fat counts as field, by its phase between them, and noise does not say what remains", async () => {
+    const { stdout, sidecar } = await recon("two", OFF_RESONANCE, "--undisplace", "measured");
+    const { field } = sidecar.placement;
+    // The six peaks' phase by hand, from the sidecar's echo times and resonance (shares and shifts: Hamilton 2011).
+    const peaks = [
+      [0.6, 0.047],
+      [-0.5, 0.039],
+      [-1.95, 0.006],
+      [-2.6, 0.12],
+      [-3.4, 0.7],
+      [-3.8, 0.088],
+    ] as const;
+    const [first, second] = [0.006, 0.0082]; // the generator's
+    const phaseAt = (seconds: number) => {
+      const parts = peaks.map(([ppm, share]) => {
+        const angle = -2 * Math.PI * ppm * 1e-6 * sidecar.scan.resonanceHz * seconds;
+        return [share * Math.cos(angle), share * Math.sin(angle)] as const;
+      });
+      const [re, im] = [0, 1].map((k) => parts.reduce((sum, part) => sum + part[k]!, 0));
+      return Math.atan2(im!, re!);
+    };
+    const turn = 1 / (second - first);
+    const raw = -(phaseAt(second) - phaseAt(first)) / (2 * Math.PI * (second - first));
+    const asHz = raw - turn * Math.round(raw / turn);
+    expect(field.fatCountsAsHz).toBeCloseTo(asHz, 2);
+    expect(field.fatCountsAsMm).toBeCloseTo((asHz * 2) / 120, 4);
+    expect(field).toMatchObject({ fat: "counts as field", displacementAfterMm: null });
+    expect(stdout.replace(/\s+/g, " ")).toContain("these echoes do not tell fat from water");
+    const sure = ["--undisplace", "measured", "--set", "field-map.fat=absent"];
+    const absent = await recon("absent", OFF_RESONANCE, ...sure);
+    expect(absent.sidecar.placement.field).toMatchObject({ fat: "taken as absent", fatCountsAsHz: null });
+    expect(absent.sidecar.placement.field.displacementAfterMm).toEqual(field.standardErrorMm);
   });
 
   test("a given map: its file and hash are kept, its error is not known", async () => {
@@ -91,8 +125,22 @@ describe("the placement statement", () => {
     writeFileSync(at("steep.npy"), npyBytes("<f4", [128, 128], steep));
     const { sidecar, stdout } = await recon("folded", OFF_RESONANCE, "--undisplace", at("steep.npy"));
     expect(sidecar.placement.field.foldedPixels).toBeGreaterThan(128);
-    expect(stdout).toContain("pixels lie where the field folds: left at 0, nothing is invented there");
+    expect(stdout.replace(/\s+/g, " ")).toContain(
+      "pixels of the object lie where the field folds: left at 0, nothing is invented there",
+    );
     expect(floats("folded", "image.npy")[64 * 128 + 60]).toBe(0);
+  });
+
+  test("a map folds as many pixels of the object whether it is measured or given", async () => {
+    // Two echoes read in turns at 98 Hz per pixel: oil counts as 220 Hz of field, which folds at its rims.
+    const words = ["--te-ms", "6", "--te-ms", "8", "--dwell-us", "40", "--reversed-echoes", "odd", "--quiet"];
+    await carillon(["simulate", "--out", at("oil.h5"), ...words]);
+    const first = await recon("oil", at("oil.h5"), "--undisplace", "measured");
+    const map = at("oil", "field-hz.npy");
+    const second = await recon("oil-given", at("oil.h5"), "--undisplace", map);
+    const [measured, given] = [first, second].map(({ sidecar }) => sidecar.placement.field.foldedPixels);
+    expect(measured).toBeGreaterThan(50);
+    expect(given).toBe(measured);
   });
 });
 

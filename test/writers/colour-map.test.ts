@@ -82,6 +82,15 @@ test("an outline is drawn where the mask ends, and nowhere else", () => {
   expect(drawn).toBe(6 * tile - 4 + 6 * tile);
 });
 
+test("what lies outside the outline decides no colours and is not counted", () => {
+  const mask = [0, 1, 1, 1, 1, 0];
+  const { limit, beyondLimit } = signedMapPicture([9000, 1, -2, 3, 3.9, -700], 2, 3, {
+    ...OPTIONS,
+    outlineMask: mask,
+  });
+  expect({ limit, beyondLimit }).toEqual({ limit: 4, beyondLimit: 0 });
+});
+
 test("wrong sizes and limits are refused", () => {
   expect(() => signedMapPicture([1, 2, 3], 2, 2, OPTIONS)).toThrow("needs 4 values");
   expect(() => signedMapPicture([1, 2, 3, 4], 2, 2, { ...OPTIONS, outlineMask: [1] })).toThrow(RangeError);
