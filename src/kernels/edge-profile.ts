@@ -54,7 +54,7 @@ export interface EdgeProfile {
 export interface EdgeFigures {
   /** Full width at half maximum of the profile's derivative, image pixels: the effective resolution. */
   readonly fwhmPixels: number;
-  /** Highest value above the bright plateau beside the edge, and the deepest trough behind it, as fractions of the jump. */
+  /** First peak behind the edge above the line of the bright plateau, and the first trough below it, as fractions of the jump. */
   readonly overshoot: number;
   readonly undershoot: number;
 }
@@ -130,7 +130,11 @@ export function edgeProfile(image: EdgeImage, edge: Edge, options: EdgeOptions =
   return { distancesPixels, values, darkLevel, brightLevel };
 }
 
-/** Effective resolution and ringing of a profile. Noise adds to both extremes; average lines until it is small. */
+/**
+ * Effective resolution and ringing of a profile. Overshoot and undershoot are the first peak and the first trough behind
+ * the edge, against the bright plateau: its mean, or the straight line through it where shading of the coils tilts that
+ * by more than 1 % of the jump. Noise adds to both; average lines until it is small.
+ */
 export function edgeFigures({ distancesPixels, values, darkLevel, brightLevel }: EdgeProfile): EdgeFigures {
   const step = distancesPixels[1]! - distancesPixels[0]!;
   const middle = (values.length - 1) / 2;
@@ -144,19 +148,28 @@ export function edgeFigures({ distancesPixels, values, darkLevel, brightLevel }:
   const wide = isFolded(darkLevel, brightLevel)
     ? 2 * (top + bright - halfLevelStep(values))
     : bright + halfWidthSteps(spread, top, -1);
-  const quarter = Math.floor(middle / 2); // where the plateau begins
+  return { fwhmPixels: wide * step, ...ringing(values, middle) };
+}
+
+/** Change of the bright level from the plateau to the edge, of the jump, that counts as shading. */
+const LEAST_TILT = 0.01;
+
+/** @param middle index of the edge */
+function ringing(values: Float64Array, middle: number): { overshoot: number; undershoot: number } {
+  const last = values.length - 1;
+  const plateauStart = last - Math.floor(middle / 2);
+  const centre = (plateauStart + last) / 2;
+  const tilt = plateauSlope(values, middle, last);
+  // Ringing itself can tilt the line by less than half of this; a lesser tilt is left in.
+  const slope = Math.abs(tilt * (centre - middle)) > LEAST_TILT ? tilt : 0;
+  const share = (i: number) => values[i]! / (1 + slope * (i - centre));
   let peak = middle;
-  for (let i = middle; i <= middle + quarter; i++) if (values[i]! > values[peak]!) peak = i;
-  const overshoot = Math.max(0, values[peak]! - 1);
+  while (peak < plateauStart && share(peak + 1) > share(peak)) peak++;
+  const overshoot = Math.max(0, share(peak) - 1);
+  if (overshoot === 0) return { overshoot, undershoot: 0 };
   let trough = peak;
-  for (let i = peak; i <= Math.min(peak + 6 / step, values.length - 1); i++) {
-    if (values[i]! < values[trough]!) trough = i;
-  }
-  return {
-    fwhmPixels: wide * step,
-    overshoot,
-    undershoot: overshoot === 0 ? 0 : Math.max(0, 1 - values[trough]!),
-  };
+  while (trough < last && share(trough + 1) <= share(trough)) trough++;
+  return { overshoot, undershoot: Math.max(0, 1 - share(trough)) };
 }
 
 /** The image seen as lines along an axis: value(line, position) = data[line * lineStep + position * step]. */
@@ -396,6 +409,23 @@ function plateau(values: Float64Array, from: number, to: number): number {
     total += weight;
   }
   return sum / total;
+}
+
+/** Pixels of the bell that the ringing is smoothed away with: two periods of it, where a Hann bell passes nothing. */
+const BELL_PIXELS = 4;
+
+/** Slope per step of the bright side, from bell means that begin two pixels behind the edge: the line through them. */
+function plateauSlope(values: Float64Array, edge: number, last: number): number {
+  const half = (BELL_PIXELS / 2) * OVERSAMPLING;
+  const [from, to] = [edge + 2 * half, last - half];
+  const centre = (from + to) / 2;
+  let product = 0;
+  let square = 0;
+  for (let i = from; i <= to; i++) {
+    product += (i - centre) * plateau(values, i - half, i + half);
+    square += (i - centre) ** 2;
+  }
+  return square > 0 ? product / square : 0;
 }
 
 /** Steps from the top to where the spread has fallen to half of it, by straight interpolation; Infinity if never. */

@@ -281,7 +281,9 @@ function edgeRinging(
   const edgeOvershoot = Math.max(0, peak.value - 1);
   // A response that only climbs has no trough: what lies behind its highest place is not yet the plateau.
   if (edgeOvershoot === 0) return { edgeOvershoot, edgeUndershoot: 0 };
-  const trough = extremum(response, peak.at, peak.at + 6, Math.min);
+  let end = peak.at + SEARCH_STEP_PIXELS;
+  while (end < limitPixels && response(end + SEARCH_STEP_PIXELS) < response(end)) end += SEARCH_STEP_PIXELS;
+  const trough = extremum(response, peak.at, end + SEARCH_STEP_PIXELS, Math.min);
   return { edgeOvershoot, edgeUndershoot: Math.max(0, 1 - trough.value) };
 }
 

@@ -194,6 +194,38 @@ describe("edgeFigures", () => {
   });
 });
 
+describe("ringing beside what is not the edge's", () => {
+  it.each([0.006, -0.006, 0.012])("shading by %d of the bright level per pixel is taken off", (shade) => {
+    for (const window of ["none", "tukey:0.5"]) {
+      const { data, height, width } = scene(window, 192, shapes.straight, 0.25);
+      const shaded = data.map((value, i) => value * (1 + shade * ((i % width) - 26.3)));
+      const image = { data: shaded, height, width };
+      const figures = measured(image, edgeAt(image, "x", 10, 26));
+      const theory = windowFigures(sampledWindow(windowValues(parseWindow(window), 192)));
+      // Ringing tilts the line by 0.4 % of the jump, the dark level is shaded as well: half a per cent of the jump in
+      // all, of an overshoot of 8 to 9. Against the plateau's mean it would be off by up to 9.
+      expect(Math.abs(figures.overshoot - theory.edgeOvershoot)).toBeLessThan(0.008);
+      expect(Math.abs(figures.undershoot - theory.edgeUndershoot)).toBeLessThan(0.008);
+    }
+  });
+
+  it("reads the first peak and the first trough, not what lies deeper further away", () => {
+    const distancesPixels = Float64Array.from({ length: 321 }, (_, i) => (i - 160) / 16);
+    // A step that swings by 8 % at 1.5 pixels and by -4 % at 3, and a dent of 15 % around 5.5 pixels.
+    const swing = (x: number) => {
+      if (x < 0) return 0;
+      if (x < 3.75) return 1 + 0.08 * Math.sin(((x - 0.75) * Math.PI) / 1.5) * (x < 2.25 ? 1 : 0.5);
+      return 1 - 0.15 * Math.exp(-((x - 5.5) ** 2) / 0.2);
+    };
+    const values = distancesPixels.map(swing);
+    values[160] = 0.5;
+    const figures = edgeFigures({ distancesPixels, values, darkLevel: 1, brightLevel: 2 });
+    // The dent tilts the line that is fitted, by a few per cent of the jump.
+    expect(figures.overshoot).toBeGreaterThan(0.04);
+    expect(figures.undershoot).toBeLessThan(0.08);
+  });
+});
+
 describe("findEdge", () => {
   const noisy = (
     value: (x: number, y: number) => number,
