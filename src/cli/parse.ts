@@ -221,7 +221,17 @@ function parseValue(option: Option, label: string, text: string): string | numbe
   if (option.type === "text") return text;
   const value = NUMBER.test(text) ? Number(text) : Number.NaN;
   if (option.type === "number") {
-    if (!Number.isFinite(value)) throw fail("must be a number");
+    const items = text.split(",");
+    const each = option.repeatable && items.every((item) => NUMBER.test(item.trim()));
+    if (!Number.isFinite(value))
+      throw fail(
+        "must be a number",
+        !each
+          ? ""
+          : label.startsWith("--")
+            ? `Repeat the flag: ${items.map((item) => `${label} ${item.trim()}`).join(" ")}`
+            : "Put spaces between the numbers",
+      );
     return value;
   }
   const least = option.least ?? 0;

@@ -75,7 +75,7 @@ export class Terminal {
     if (!this.options.json) process.stderr.write(`\n${text}\n`);
   }
 
-  /** Say what went wrong, in one line, and return the exit code. */
+  /** Say what went wrong, in one line (that a terminal breaks between words), and return the exit code. */
   failure(error: unknown): number {
     this.#clearBar();
     const known = error instanceof CarillonError;
@@ -87,7 +87,8 @@ export class Terminal {
       this.document({ error: { message, exitCode, ...place } });
     } else {
       const prefix = known || interrupted ? "" : "a fault of this program: ";
-      process.stderr.write(`${this.#paint("31", "error")}: ${prefix}${message}\n`);
+      const line = `${this.#paint("31", "error")}: ${prefix}${message}`;
+      process.stderr.write(`${process.stderr.isTTY ? wrap(line, 80, "  ") : line}\n`);
       if (!known && !interrupted && !this.options.debug)
         process.stderr.write("Run again with --debug to see where.\n");
     }

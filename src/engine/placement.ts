@@ -4,6 +4,7 @@ import { pixelBandwidthHz } from "../stages/echo-frame.js";
 import { FAT_AS_FIELD, WRAP_LIMIT } from "../stages/field-map.js";
 import { FOLDED, FOLDED_IN_MAP, NOT_WATER } from "../stages/field-values.js";
 import type { Finding } from "../stages/stage.js";
+import { RESAMPLED } from "../stages/undisplace.js";
 import { type Plan, pixelSizeMm } from "./plan.js";
 import type { GroupResult } from "./reconstruct.js";
 
@@ -55,6 +56,8 @@ export interface Placement {
     readonly fatCountsAsMm: number | null;
     /** A map that was measured is ambiguous by this; null for a given one. */
     readonly turnHz: number | null;
+    /** How a given map of another matrix was brought to the image's, null if that was not needed. */
+    readonly interpolated: string | null;
     /** Pixels with signal that is not of water alone, where they were told apart and left out of the map. */
     readonly leftOutPixels: number;
   };
@@ -188,6 +191,7 @@ function fieldPart(
     fatCountsAsHz,
     fatCountsAsMm: fatCountsAsHz === null ? null : fatCountsAsHz * mmPerHz,
     turnHz: WRAP_LIMIT in maker.physics ? 2 * Number(maker.physics[WRAP_LIMIT]) : null,
+    interpolated: RESAMPLED in maker.physics ? String(maker.physics[RESAMPLED]) : null,
     leftOutPixels: tally.total(NOT_WATER, maker.stage.id) ?? 0,
   };
 }
@@ -238,6 +242,10 @@ function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: numbe
       `the map's standard error, from noise alone, is up to ${both(error.largest)}, 95 % within ${both(error.percentile95)}`,
     );
   else if (corrected) lines.push("what remains is the error of the given map, which is not known here");
+  if (field.interpolated)
+    lines.push(
+      `the map was interpolated ${field.interpolated}: it is taken to cover the image's field of view`,
+    );
   if (fatCountsAsMm !== null)
     lines.push(
       `these echoes do not tell fat from water: where there is fat the map is off by ${number(field.fatCountsAsHz!)} Hz, ` +

@@ -81,16 +81,15 @@ export function mapLayout(layout: Layout, scan: ScanFacts): Layout {
   };
 }
 
-/** @throws UsageError for channels that are combined, or fewer than `least` echoes, in one readout dimension or more */
-export function checkEchoes(id: string, layout: Layout, scan: ScanFacts, least: number): void {
+/**
+ * @param mend of too few echoes
+ * @throws UsageError for channels that are combined, fewer than `least` echoes, or projections
+ */
+export function checkEchoes(id: string, layout: Layout, scan: ScanFacts, least: number, mend: string): void {
   if (!layout.axes.includes("coil") || layout.inImage.length < 3)
     throw new UsageError({ field: id }, "needs the images of single channels", "Put inverse-fft before it");
   if (scan.lengths.contrast < least)
-    throw new UsageError(
-      { field: id },
-      `needs ${least} echoes, the file has ${scan.lengths.contrast}`,
-      least === 2 ? "A map from elsewhere will do: --undisplace FIELD.npy" : "Choose another method",
-    );
+    throw new UsageError({ field: id }, `needs ${least} echoes, the file has ${scan.lengths.contrast}`, mend);
   if (scan.dimensions === 1)
     throw new UsageError({ field: id }, "needs images, the file has projections", "Take the stage out");
 }

@@ -76,7 +76,7 @@ export const fieldMap: FrameStage<Params> = {
   schema,
   parse: (raw) => parseBySchema<Params>("field-map", schema, raw),
   plan(layout, params, scan, { maps }) {
-    checkEchoes("field-map", layout, scan, 2);
+    checkEchoes("field-map", layout, scan, 2, "A map from elsewhere will do: --undisplace FIELD.npy");
     refuseSecondField("field-map", maps);
     const { echoSeconds, pixelBandwidthHz } = echoTiming("field-map", layout, scan);
     const columns = columnsInView(layout, scan);

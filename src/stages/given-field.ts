@@ -20,8 +20,8 @@ export function checkMap({ file, shape }: InputArray, layout: Layout, scan: Scan
   if (shape.length < 2 || (leading !== 1 && leading !== images))
     throw new UsageError(
       { file, field: "shape", value: shape.join(" x ") },
-      `must be [y, x] or [${partitions > 1 ? "z" : "slice"}, y, x] with ${images} images`,
-      "Any matrix will do; it must cover the image's field of view",
+      `must be [y, x], or [${partitions > 1 ? "z" : "slice"}, y, x] with ${images === 1 ? "one image" : `${images} images`}`,
+      "Any matrix will do, one map for all images or one for each; it must cover the image's field of view",
     );
 }
 

@@ -46,7 +46,11 @@ export const separateFatWaterStage: FrameStage<Params> = {
     return params;
   },
   plan(layout, params, scan, { maps }) {
-    checkEchoes(ID, layout, scan, params.method === "two-point" ? 2 : 3);
+    const mend =
+      scan.lengths.contrast === 2
+        ? "With fat in phase in one echo and opposed in the other: --set separate-fat-water.method=two-point"
+        : "One echo does not tell fat from water";
+    checkEchoes(ID, layout, scan, params.method === "two-point" ? 2 : 3, mend);
     refuseSecondField(ID, maps);
     const timing = echoTiming(ID, layout, scan);
     checkMethod(params, timing, scan);

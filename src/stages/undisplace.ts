@@ -25,7 +25,14 @@ import {
 import { FieldValues, FOLDED, fieldMapPlans, refuseSecondField } from "./field-values.js";
 import { checkMap, givenField } from "./given-field.js";
 import { parseBySchema } from "./parameters.js";
-import { axisLength, type FrameStage, type Layout, type StageContext, withLength } from "./stage.js";
+import {
+  axisLength,
+  type FrameStage,
+  type InputArray,
+  type Layout,
+  type StageContext,
+  withLength,
+} from "./stage.js";
 
 interface Params {
   /** `measured`, or the file of a map in Hz. */
@@ -150,6 +157,7 @@ export const undisplace: FrameStage<Params> = {
         "bandwidth per pixel, Hz": Array.from({ length: scan.lengths.contrast }, (_, echo) =>
           rounded(perPixelHz(params, layout, scan, echo)),
         ).join(", "),
+        ...(map && resampled(map, layout, columns)),
         "margin on each side, px": Math.floor((axisLength(layout, "x") - columns) / 2),
         intensity: params.jacobian ? "times the Jacobian" : "as it is",
       },
@@ -255,6 +263,14 @@ function foldedOf(plan: Undisplacer, { images, fieldHz, layout }: ImageJob, para
     perPixelHz(params, layout, scan, echo),
   );
   return foldedInAny(fieldHz, hz, images.rows, fieldHz.length / images.rows);
+}
+
+/** Physics of a plan whose given map has another matrix than the images. */
+export const RESAMPLED = "map interpolated";
+
+function resampled({ shape }: InputArray, layout: Layout, columns: number): Record<string, string> {
+  const [from, to] = [shape.slice(-2), [axisLength(layout, "y"), columns]].map((size) => size.join(" x "));
+  return from === to ? {} : { [RESAMPLED]: `from ${from} to ${to} pixels` };
 }
 
 /** Pixels above this share of the bright level are the object. */

@@ -121,7 +121,9 @@ export function readNpy(file: string): NpyArray {
   try {
     descriptor = fs.openSync(file, "r");
   } catch (cause) {
-    throw new InputError({ file }, `cannot be opened (${codeOf(cause)})`, "Check the name.", { cause });
+    if (codeOf(cause) === "ENOENT")
+      throw new InputError({ file }, "no such file", "Check the path", { cause });
+    throw new InputError({ file }, `cannot be opened (${codeOf(cause)})`, "Check the file", { cause });
   }
   try {
     return readOpenNpy(file, descriptor);

@@ -100,6 +100,19 @@ describe.concurrent("the twenty points of a good command line, 1 to 11", () => {
       });
   });
 
+  test("7 numbers in one word, of a flag that is repeated: 2", async ({ expect }) => {
+    const words = ["simulate", "--out", at("list.h5")];
+    const says = "is 2.3,3.9; must be a number.";
+    expect(await carillon([...words, "--te-ms", "2.3,3.9"])).toMatchObject({
+      code: 2,
+      stderr: `error: --te-ms ${says} Repeat the flag: --te-ms 2.3 --te-ms 3.9\n`,
+    });
+    expect(await carillon(words, { env: { CARILLON_TE_MS: "2.3,3.9" } })).toMatchObject({
+      code: 2,
+      stderr: `error: CARILLON_TE_MS ${says} Put spaces between the numbers\n`,
+    });
+  });
+
   test("8 a missing or empty value or argument: 2", async ({ expect }) => {
     for (const [words, says] of [
       [["recon", raw, "--out"], "--out: needs a value. Write --out FOLDER; "],

@@ -117,7 +117,7 @@ describe(`${CASE}, maps from elsewhere`, () => {
     await expect(given("line.npy", [128], new Float32Array(128))).rejects.toThrow(
       /must be \[y, x\] or \[slice, y, x\]/,
     );
-    await expect(given("many.npy", [3, 8, 8], new Float32Array(192))).rejects.toThrow(/with 1 images/);
+    await expect(given("many.npy", [3, 8, 8], new Float32Array(192))).rejects.toThrow(/with one image/);
     await expect(given("hole.npy", [1, 2], Float32Array.of(1, Number.NaN))).rejects.toThrow(
       /element 1 is NaN; must be a finite number/,
     );

@@ -100,6 +100,21 @@ describe("the placement statement", () => {
     expect(stdout).toContain("the error of the given map, which is not known here");
   });
 
+  test("a given map of another matrix: that it was interpolated is said", async () => {
+    const { npyBytes } = await import("../../src/writers/npy.js");
+    const { writeFileSync } = await import("node:fs");
+    writeFileSync(at("small.npy"), npyBytes("<f4", [32, 64], new Float32Array(32 * 64)));
+    const { sidecar, stdout } = await recon("small", OFF_RESONANCE, "--undisplace", at("small.npy"));
+    expect(sidecar.placement.field.interpolated).toBe("from 32 x 64 to 128 x 128 pixels");
+    expect(stdout).toContain("the map was interpolated from 32 x 64 to 128 x 128 pixels");
+  });
+
+  test("a map that is not there is missed in the words of a raw file that is not", async () => {
+    const missing = at("nowhere.npy");
+    const { stderr } = await carillon(["recon", OFF_RESONANCE, "--out", at("x"), "--undisplace", missing]);
+    expect(stderr).toContain(`error: ${missing}: no such file. Check the path`);
+  });
+
   test("shift-readout moves everything, and the statement says so", async () => {
     const { sidecar } = await recon("shifted", OFF_RESONANCE, "--set", "shift-readout.offset=fat");
     expect(sidecar.placement.fat.mm).toBeCloseTo(0, 6);
