@@ -25,6 +25,8 @@ const MOST_COARSE = 128; // pixels of an axis that the costs are computed on
 /** Candidates per turn between the first and the last echo. */
 const STEPS = 16;
 const MOST_LABELS = 128;
+/** The mean slope is followed so many ranges away from zero. */
+const MOST_REACHES = 2;
 const PRICE_HZ = 400;
 /** Cost of 100 Hz off zero, as a share of a block's energy. */
 const ZERO_PULL = 1e-4;
@@ -53,7 +55,7 @@ interface CoarseGrid {
 
 /**
  * @param lines k-space along x of the combined echoes, interleaved complex64, [rows, length] each, k ascending
- * @param rangeHz fields from -rangeHz to +rangeHz are considered; beyond 1 / (2 dTE) of equally spaced echoes they repeat
+ * @param rangeHz fields within it of the mean slope are considered; beyond 1 / (2 dTE) of equally spaced echoes they repeat
  * @throws RangeError for fewer than three echoes
  */
 export function coarseFatWaterField(
@@ -67,13 +69,16 @@ export function coarseFatWaterField(
   const { echoSeconds } = model.timing;
   const spanSeconds = Math.max(...echoSeconds) - Math.min(...echoSeconds);
   const stepHz = Math.max(1 / (STEPS * spanSeconds), (2 * rangeHz) / MOST_LABELS);
-  const labels = 2 * Math.ceil(rangeHz / stepHz) + 1;
   const grid = coarseGrid(rows, model.length);
-  const costs = candidateCosts(engine, lines, model, grid, labels, stepHz);
   const { energy, pairs } = blockEnergies(engine, lines, model, grid);
   const perRadian = -1 / (2 * Math.PI * closestEchoes(echoSeconds).gapSeconds * stepHz);
-  const slope = meanStep(pairs, grid).map((radians) => radians * perRadian) as [number, number];
-  const chosen = chooseLabels(costs, energy, grid, labels, stepHz, slope);
+  const expected = expectedLabels(pairs, energy, grid, perRadian);
+  const reach = Math.ceil(rangeHz / stepHz);
+  // Costs for all fields that are within reach of what is expected somewhere.
+  const most = expected.reduce((high, label) => Math.max(high, Math.abs(label)), 0);
+  const labels = 2 * (reach + Math.min(MOST_REACHES * reach, Math.ceil(most))) + 1;
+  const costs = candidateCosts(engine, lines, model, grid, labels, stepHz);
+  const chosen = chooseLabels(costs, energy, grid, { labels, reach, expected }, stepHz);
   const { fieldHz, weights, left } = refineLabels(costs, chosen, labels, stepHz);
   const smooth = smoothField(fieldHz, weights, grid.blockRows, grid.blockColumns, 1, false).fieldHz;
   const total = energy.reduce((sum, value) => sum + value, 0);
@@ -235,6 +240,33 @@ function blockPairs(first: Float32Array, second: Float32Array, grid: CoarseGrid)
   return out;
 }
 
+/** Share of the strongest block's signal above which a block's expected field is looked for. */
+const SIGNAL_SHARE = 1e-3;
+
+/** What the mean slope makes the field in each block, in labels from zero; beyond the signal as far as within it. */
+function expectedLabels(
+  pairs: Float64Array,
+  energy: Float32Array,
+  grid: CoarseGrid,
+  labelsPerRadian: number,
+): Float64Array {
+  const { blockRows, blockColumns } = grid;
+  const [x, y] = meanStep(pairs, grid).map((radians) => radians * labelsPerRadian) as [number, number];
+  const expected = Float64Array.from(
+    energy,
+    (_, node) =>
+      x * ((node % blockColumns) - (blockColumns - 1) / 2) +
+      y * (Math.floor(node / blockColumns) - (blockRows - 1) / 2),
+  );
+  const level = SIGNAL_SHARE * energy.reduce((high, value) => Math.max(high, value), 0);
+  const inside = expected.filter((_, node) => energy[node]! > level);
+  const [low, high] = [
+    inside.reduce((a, b) => Math.min(a, b), 0),
+    inside.reduce((a, b) => Math.max(a, b), 0),
+  ];
+  return expected.map((label) => Math.min(high, Math.max(low, label)));
+}
+
 /** Mean step of the phase from a block to the next, radians, weighted by their signal; along columns and along rows. */
 function meanStep(pairs: Float64Array, { blockRows, blockColumns }: CoarseGrid): [x: number, y: number] {
   const sums = [0, 0, 0, 0];
@@ -254,33 +286,35 @@ function meanStep(pairs: Float64Array, { blockRows, blockColumns }: CoarseGrid):
   return [Math.atan2(sums[1]!, sums[0]!), Math.atan2(sums[3]!, sums[2]!)];
 }
 
-/** @param slope change of the field that is expected from a block to the next, labels */
+interface Labels {
+  /** Number of those that costs are known for; the middle one is no field. */
+  readonly labels: number;
+  /** Labels to each side of the expected one that are considered. */
+  readonly reach: number;
+  /** [blockRows, blockColumns], from the middle one. */
+  readonly expected: Float64Array;
+}
+
+/** @returns the label of each block, fractions of one kept from what was expected, counted from 0 */
 function chooseLabels(
   costs: Float32Array,
   energy: Float32Array,
   { blockRows, blockColumns }: CoarseGrid,
-  labels: number,
+  { labels, reach, expected }: Labels,
   stepHz: number,
-  slope: readonly [x: number, y: number],
 ): Float64Array {
   const level = energy.reduce((most, value) => Math.max(most, value), 0) || 1;
-  // What is chosen is the distance from the expected slope, in labels from the middle one.
   const middle = (labels - 1) / 2;
-  const expected = Float64Array.from(
-    energy,
-    (_, node) =>
-      slope[0] * ((node % blockColumns) - (blockColumns - 1) / 2) +
-      slope[1] * (Math.floor(node / blockColumns) - (blockRows - 1) / 2),
-  );
-  const priced = new Float32Array(costs.length);
+  const considered = 2 * reach + 1;
+  const priced = new Float32Array(energy.length * considered);
   for (let node = 0, i = 0; node < energy.length; node++) {
     const own = costs.subarray(node * labels, (node + 1) * labels);
     const share = energy[node]! / level;
-    for (let label = 0; label < labels; label++, i++) {
-      const place = label + expected[node]!;
-      const isConsidered = place > -0.5 && place < labels - 0.5;
-      const cost = isConsidered ? lowestNear(own, place) / level : share;
-      priced[i] = cost + (ZERO_PULL * share * Math.abs(place - middle) * stepHz) / 100;
+    for (let label = -reach; label <= reach; label++, i++) {
+      const offset = label + expected[node]!;
+      const isKnown = Math.abs(offset) < middle + 0.5;
+      const cost = isKnown ? lowestNear(own, middle + offset) / level : share;
+      priced[i] = cost + (ZERO_PULL * share * Math.abs(offset) * stepHz) / 100;
     }
   }
   const price = (a: number, b: number | undefined) =>
@@ -288,10 +322,10 @@ function chooseLabels(
   const right = energy.map((value, node) => price(value, energy[node + 1]));
   const down = energy.map((value, node) => price(value, energy[node + blockColumns]));
   const chosen = minimizeLabels(
-    { rows: blockRows, columns: blockColumns, labels, costs: priced, right, down },
+    { rows: blockRows, columns: blockColumns, labels: considered, costs: priced, right, down },
     ROUNDS,
   );
-  return expected.map((label, node) => label + chosen[node]!);
+  return expected.map((label, node) => middle + label + chosen[node]! - reach);
 }
 
 /** The lowest cost within half a label of a place: which of two candidates falls between labels must not decide. */

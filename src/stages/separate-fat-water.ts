@@ -66,7 +66,9 @@ export const separateFatWaterStage: FrameStage<Params> = {
         "bandwidth per pixel, Hz": timing.pixelBandwidthHz.map(rounded).join(", "),
         "fat, main peak, Hz": rounded(chemicalShiftHz(FAT_MAIN_PEAK_PPM, scan.resonanceHz)),
         "fields considered, Hz":
-          params.method === "least-squares" ? `within ${rounded(rangeHz(timing))}` : "any, unwrapped",
+          params.method === "least-squares"
+            ? `within ${rounded(rangeHz(timing))} of the mean slope`
+            : "any, unwrapped",
         "noise of water and of fat against one echo": `${rounded(model.noiseGain.water)}, ${rounded(model.noiseGain.fat)}`,
       },
     };

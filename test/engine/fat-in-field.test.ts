@@ -32,6 +32,13 @@ const CASES: Readonly<Record<string, AcquisitionOptions>> = {
   "four echoes": { ...BASE, echoTimesSeconds: [1.2e-3, 2.2e-3, 3.2e-3, 4.2e-3], dwellSeconds: 4e-6 },
   // the vial of water, 40 pixels away, lies beyond the wrap limit
   steep: { ...BASE, fieldSlopeHzPerMm: { x: 3, y: -1 }, dwellSeconds: 8e-6 },
+  // the oil's vial lies at -620 Hz, its range ends at 312
+  "steepest, alternating": {
+    ...BASE,
+    fieldSlopeHzPerMm: { x: 4, y: 3 },
+    dwellSeconds: 12e-6,
+    reversedEchoes: "odd",
+  },
   "steep, alternating": {
     ...BASE,
     fieldSlopeHzPerMm: { x: 2, y: -1 },
