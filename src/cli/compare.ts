@@ -155,6 +155,8 @@ function report({ files, compared, values, reference, remarks }: Written, termin
     discrepancies: compared.scan.discrepancies,
   });
   terminal.result(comparisonTable(compared.variants, values));
+  const times = compared.variants.map(({ seconds }) => Number((1e3 * seconds).toPrecision(2)));
+  terminal.result(wrap(`run time after the stages that all share, ms: ${times.join(", ")}`, 80, "  "));
   for (const remark of remarks) terminal.result(wrap(`note: ${remark}`, 80, "  "));
   for (const file of files) terminal.result(file);
   const { passes } = compared;

@@ -44,7 +44,7 @@ export const MEASURES: readonly MeasureColumn[] = [
     id: "overshootTheory",
     label: "overshoot, theory",
     unit: "%",
-    describe: "highest peak beside an edge, on its bright side, of the jump",
+    describe: "the first peak behind an edge, on its bright side, of the jump",
   },
   {
     id: "overshootMeasured",
@@ -52,7 +52,7 @@ export const MEASURES: readonly MeasureColumn[] = [
     unit: "%",
     describe: "the same on the image; noise, shading and edges near by change it",
   },
-  { id: "undershootTheory", label: "undershoot, theory", unit: "%", describe: "the trough behind it" },
+  { id: "undershootTheory", label: "undershoot, theory", unit: "%", describe: "the first trough behind it" },
   {
     id: "undershootMeasured",
     label: "undershoot, measured",
