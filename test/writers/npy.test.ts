@@ -156,7 +156,9 @@ describe("what is not read says so, with the file and a mend", () => {
   });
 
   test("a missing file, and a folder", () => {
-    expect(refusal(path.join(folder, "none.npy")).message).toMatch(/none\.npy: no such file\. Check the path/);
+    expect(refusal(path.join(folder, "none.npy")).message).toMatch(
+      /none\.npy: no such file\. Check the path/,
+    );
     expect(refusal(folder).exitCode).toBe(3);
   });
 });
