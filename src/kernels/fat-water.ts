@@ -150,8 +150,9 @@ function halfTurns(
 export function fatFraction(water: Float32Array, fat: Float32Array, mask: ArrayLike<number>): Float32Array {
   const out = new Float32Array(water.length / 2);
   for (let p = 0, i = 0; p < out.length; p++, i += 2) {
+    if (!mask[p]) continue;
     const total = Math.hypot(water[i]! + fat[i]!, water[i + 1]! + fat[i + 1]!);
-    if (!mask[p] || total === 0) continue;
+    if (total === 0) continue;
     const [w, f] = [Math.hypot(water[i]!, water[i + 1]!), Math.hypot(fat[i]!, fat[i + 1]!)];
     out[p] = f > w ? f / total : 1 - w / total;
   }

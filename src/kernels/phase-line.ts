@@ -204,7 +204,6 @@ class LineFit {
   /** Whether the last pixel strays from the lines by more than noise does, and by more than a tenth of its signal. */
   isAstray = false;
   readonly #phases: Float64Array;
-  readonly #levels: Float64Array;
   readonly #sizes: Float64Array;
   readonly #noiseLimit: number;
 
@@ -215,7 +214,6 @@ class LineFit {
   ) {
     this.isFromMany = echoes.length > 2;
     this.#phases = new Float64Array(echoes.length);
-    this.#levels = new Float64Array(echoes.length);
     this.#sizes = new Float64Array(echoes.length);
     this.#noiseLimit = chiSquareLimit(2 * (echoes.length - 2), ASTRAY_DEVIATE) * noiseDeviation ** 2;
   }
@@ -223,19 +221,16 @@ class LineFit {
   /** @param guessHz near enough that the rest turns less than half from echo to echo */
   fieldHz(pixel: number, guessHz: number): number {
     const { echoes, echoSeconds } = this;
-    let [total, meanTime, meanPhase, meanLevel] = [0, 0, 0, 0];
+    let [total, meanTime, meanPhase] = [0, 0, 0];
     for (let e = 0; e < echoes.length; e++) {
       const re = echoes[e]![2 * pixel]!;
       const im = echoes[e]![2 * pixel + 1]!;
       const turned = Math.atan2(im, re) + 2 * Math.PI * guessHz * echoSeconds[e]!;
       this.#phases[e] = e === 0 ? turned : this.#phases[e - 1]! + wrapped(turned - this.#phases[e - 1]!);
-      const size = re * re + im * im;
-      this.#sizes[e] = size;
-      this.#levels[e] = size > 0 ? Math.log(size) / 2 : 0;
-      total += size;
-      meanTime += size * echoSeconds[e]!;
-      meanPhase += size * this.#phases[e]!;
-      meanLevel += size * this.#levels[e]!;
+      this.#sizes[e] = re * re + im * im;
+      total += this.#sizes[e]!;
+      meanTime += this.#sizes[e]! * echoSeconds[e]!;
+      meanPhase += this.#sizes[e]! * this.#phases[e]!;
     }
     this.isAstray = false;
     if (total === 0) {
@@ -244,28 +239,43 @@ class LineFit {
     }
     meanTime /= total;
     meanPhase /= total;
-    meanLevel /= total;
-    let [slope, growth, spread] = [0, 0, 0];
+    let [slope, spread] = [0, 0];
     for (let e = 0; e < echoes.length; e++) {
       const time = echoSeconds[e]! - meanTime;
       slope += this.#sizes[e]! * time * (this.#phases[e]! - meanPhase);
-      growth += this.#sizes[e]! * time * (this.#levels[e]! - meanLevel);
       spread += this.#sizes[e]! * time * time;
     }
     slope /= spread;
-    growth /= spread;
     if (this.isFromMany) {
-      let left = 0;
-      for (let e = 0; e < echoes.length; e++) {
-        const time = echoSeconds[e]! - meanTime;
-        const phase = this.#phases[e]! - meanPhase - slope * time;
-        const level = this.#levels[e]! - meanLevel - growth * time;
-        left += this.#sizes[e]! * (phase * phase + level * level);
-      }
+      const left =
+        this.#leftByPhases(meanTime, meanPhase, slope) + this.#leftByLevels(total, meanTime, spread);
       this.isAstray = left > this.#noiseLimit && left > ASTRAY_SHARE * total;
     }
     this.weight = (spread * (2 * Math.PI) ** 2) / this.noiseDeviation ** 2;
     return guessHz - slope / (2 * Math.PI);
+  }
+
+  /** Signal, squared, that lies beside the line through the phases. */
+  #leftByPhases(meanTime: number, meanPhase: number, slope: number): number {
+    let left = 0;
+    for (let e = 0; e < this.#sizes.length; e++) {
+      const phase = this.#phases[e]! - meanPhase - slope * (this.echoSeconds[e]! - meanTime);
+      left += this.#sizes[e]! * phase * phase;
+    }
+    return left;
+  }
+
+  /** Signal, squared, that lies above and below a steady decay. */
+  #leftByLevels(total: number, meanTime: number, spread: number): number {
+    const level = (e: number) => (this.#sizes[e]! > 0 ? Math.log(this.#sizes[e]!) / 2 : 0);
+    let [mean, growth] = [0, 0];
+    for (let e = 0; e < this.#sizes.length; e++) mean += (this.#sizes[e]! * level(e)) / total;
+    for (let e = 0; e < this.#sizes.length; e++)
+      growth += (this.#sizes[e]! * (this.echoSeconds[e]! - meanTime) * (level(e) - mean)) / spread;
+    let left = 0;
+    for (let e = 0; e < this.#sizes.length; e++)
+      left += this.#sizes[e]! * (level(e) - mean - growth * (this.echoSeconds[e]! - meanTime)) ** 2;
+    return left;
   }
 }
 

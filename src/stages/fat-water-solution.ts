@@ -142,7 +142,8 @@ function startField(
 }
 
 function magnitude(image: Float32Array): Float32Array {
-  return Float32Array.from({ length: image.length / 2 }, (_, i) =>
-    Math.hypot(image[2 * i]!, image[2 * i + 1]!),
-  );
+  const out = new Float32Array(image.length / 2);
+  for (let p = 0, i = 0; p < out.length; p++, i += 2)
+    out[p] = Math.sqrt(image[i]! * image[i]! + image[i + 1]! * image[i + 1]!);
+  return out;
 }

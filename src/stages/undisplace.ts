@@ -190,8 +190,9 @@ export const undisplace: FrameStage<Params> = {
         const job = { images, result, slice, z, fieldHz, layout: frame.layout };
         const plan = undisplaceImage(job, params, context);
         if (!plan) continue;
-        const object = objectSeen(job, params, scan);
         const folded = foldedOf(plan, job, params, scan);
+        if (!map && !folded.includes(1)) continue;
+        const object = objectSeen(job, params, scan);
         for (let i = 0; i < size; i++) {
           mask[at + i] = object[i]! & (1 - folded[i]!);
           foldedCount += object[i]! & folded[i]!;
@@ -258,10 +259,11 @@ function objectSeen({ images, slice, z, fieldHz, layout }: ImageJob, params: Par
 
 /** Pixels that lie on others in the image of any echo. */
 function foldedOf(plan: Undisplacer, { images, fieldHz, layout }: ImageJob, params: Params, scan: ScanFacts) {
-  if (params.along === "phase") return plan.folded; // one direction for all echoes
   const hz = Array.from({ length: scan.lengths.contrast }, (_, echo) =>
     perPixelHz(params, layout, scan, echo),
   );
+  // Along the phase direction there is one bandwidth for all.
+  if (hz.every((value) => value === hz[0])) return plan.folded;
   return foldedInAny(fieldHz, hz, images.rows, fieldHz.length / images.rows);
 }
 

@@ -77,10 +77,12 @@ export function signedMapPicture(
   if (values.length !== y * x || (outlineMask && outlineMask.length !== y * x)) {
     throw new RangeError(`a map of [${y}, ${x}] needs ${y * x} values in the map and in its mask`);
   }
-  const inside = outlineMask ? Array.from(values).filter((_, i) => outlineMask[i]) : values;
+  const inside = outlineMask
+    ? Float64Array.from(values).filter((_, i) => outlineMask[i])
+    : Float64Array.from(values);
   const limit = options.limit ?? roundUp(automaticRange("signed", inside).high);
   if (!(limit > 0)) throw new RangeError(`the limit of a signed map must be above 0, not ${limit}`);
-  const beyondLimit = Array.from(inside).filter((value) => Math.abs(value) > limit * ROUNDING).length;
+  const beyondLimit = inside.filter((value) => Math.abs(value) > limit * ROUNDING).length;
 
   const size = squareSize(x, y, options.pixelMm, WANTED_PX);
   const barTitle = quantity ? `${quantity} (${unit})` : unit;

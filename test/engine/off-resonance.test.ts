@@ -115,7 +115,7 @@ describe(`${CASE}, maps from elsewhere`, () => {
     const given = (name: string, shape: number[], values: Float32Array) =>
       corrected(COMMITTED, { undisplace: save(name, shape, values) });
     await expect(given("line.npy", [128], new Float32Array(128))).rejects.toThrow(
-      /must be \[y, x\] or \[slice, y, x\]/,
+      /must be \[y, x\], or \[slice, y, x\]/,
     );
     await expect(given("many.npy", [3, 8, 8], new Float32Array(192))).rejects.toThrow(/with one image/);
     await expect(given("hole.npy", [1, 2], Float32Array.of(1, Number.NaN))).rejects.toThrow(
