@@ -1,7 +1,7 @@
 import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { pixelBandwidthHz } from "../stages/echo-frame.js";
-import { FAT_AS_FIELD, WRAP_LIMIT } from "../stages/field-map.js";
+import { FAT_AS_FIELD, FAT_IN_MAP, WRAP_LIMIT } from "../stages/field-map.js";
 import { FOLDED, FOLDED_IN_MAP, NOT_WATER } from "../stages/field-values.js";
 import type { Finding } from "../stages/stage.js";
 import { RESAMPLED } from "../stages/undisplace.js";
@@ -58,7 +58,7 @@ export interface Placement {
     readonly turnHz: number | null;
     /** How a given map of another matrix was brought to the image's, null if that was not needed. */
     readonly interpolated: string | null;
-    /** Pixels with signal that is not of water alone, where they were told apart and left out of the map. */
+    /** Pixels with signal that do not follow water from echo to echo, or touch such: left out of the map. */
     readonly leftOutPixels: number;
   };
   /** What an offset of 1 ppm that nobody knows of moves a pixel by. */
@@ -174,7 +174,7 @@ function fieldPart(
   const before = spreadOf(tally.movedMm);
   const errors = file === undefined ? tally.standardErrorsHz : new Float32Array(0);
   const standardErrorMm = errors.length ? spreadOf(errors.map((hz) => hz * mmPerHz)) : null;
-  const fat = fatInMap(maker, tally);
+  const fat = fatInMap(maker);
   const asHz = maker.physics[FAT_AS_FIELD];
   const fatCountsAsHz = fat === "counts as field" ? Number(asHz) : null;
   return {
@@ -196,11 +196,9 @@ function fieldPart(
   };
 }
 
-function fatInMap(maker: Plan["stages"][number], tally: PlacementTally): FatInMap {
-  if (maker.stage.id === "separate-fat-water") return "separated";
-  if (maker.stage.id !== "field-map") return "not known";
-  if (FAT_AS_FIELD in maker.physics) return "counts as field";
-  return tally.total(NOT_WATER, "field-map") === undefined ? "taken as absent" : "left out";
+function fatInMap({ stage, physics }: Plan["stages"][number]): FatInMap {
+  if (stage.id === "separate-fat-water") return "separated";
+  return stage.id === "field-map" ? (physics[FAT_IN_MAP] as FatInMap) : "not known";
 }
 
 function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string[] {
@@ -241,7 +239,9 @@ function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: numbe
     lines.push(
       `the map's standard error, from noise alone, is up to ${both(error.largest)}, 95 % within ${both(error.percentile95)}`,
     );
-  else if (corrected) lines.push("what remains is the error of the given map, which is not known here");
+  else if (corrected && field.fat === "not known")
+    lines.push("what remains is the error of the given map, which is not known here");
+  else if (corrected) lines.push("two echoes leave nothing over to tell the error of the map by");
   if (field.interpolated)
     lines.push(
       `the map was interpolated ${field.interpolated}: it is taken to cover the image's field of view`,
@@ -256,8 +256,8 @@ function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: numbe
   if (field.fat === "taken as absent") lines.push("fat was taken to be absent, as field-map.fat says");
   if (field.leftOutPixels)
     lines.push(
-      `${field.leftOutPixels} pixels with signal are not of water alone and were left out of the map: the field there ` +
-        "continues its surroundings; --separate fat-water measures it there too",
+      `${field.leftOutPixels} pixels that do not follow water from echo to echo, or touch such, were left out of the map: ` +
+        "the field there continues its surroundings; --separate fat-water measures it there too",
     );
   if (field.foldedInMapPixels)
     lines.push(

@@ -1,5 +1,5 @@
 import { closestEchoes } from "./echo-times.js";
-import { withoutSpecks } from "./signal-mask.js";
+import { grown, withoutSpecks } from "./signal-mask.js";
 import { smoothSlices } from "./smooth-field.js";
 import { unwrapPhase, type VolumeSize, wrapped } from "./unwrap.js";
 
@@ -49,12 +49,16 @@ export function phaseLine(
   const wrapLimitHz = 1 / (2 * gapSeconds);
   const fit = new LineFit(echoes, echoSeconds, noiseDeviation);
   const all = fitLines(fit, difference, options.mask, grid, toHz);
-  const pure = options.mask.map((flag, i) =>
-    flag && !(areAligned && all.astray[i]) && !isFat(difference[i]! * toHz, i, fat, wrapLimitHz) ? 1 : 0,
+  const others = options.mask.map((flag, i) =>
+    flag && ((areAligned && all.astray[i]) || isFat(difference[i]! * toHz, i, fat, wrapLimitHz)) ? 1 : 0,
   );
-  if (pure.every((flag, i) => flag === options.mask[i])) return { ...all, mask: pure, wrapLimitHz };
-  // Once more without the others: they have pulled their neighbours' turns and guesses.
-  const mask = withoutSpecks(pure, grid);
+  if (!others.includes(1)) return { ...all, mask: options.mask, wrapLimitHz };
+  // Once more without them: they have pulled their neighbours' turns and guesses, and ring into those that touch them.
+  const beside = grown(withoutSpecks(others, grid), grid);
+  const mask = withoutSpecks(
+    options.mask.map((flag, i) => flag & (1 - (others[i]! | beside[i]!))),
+    grid,
+  );
   return { ...fitLines(fit, difference, mask, grid, toHz), mask, wrapLimitHz };
 }
 

@@ -38,18 +38,27 @@ export function signalMask(
  * A mask without specks: pixels of which fewer than four of the eight neighbours in the slice are set, as noise leaves them.
  * @param mask [slices, rows, columns]
  */
-export function withoutSpecks(mask: Uint8Array, { slices, rows, columns }: VolumeSize): Uint8Array {
-  const out = mask.slice();
-  for (let slice = 0; slice < slices; slice++) {
-    const set = (y: number, x: number) =>
-      y >= 0 && y < rows && x >= 0 && x < columns ? mask[(slice * rows + y) * columns + x]! : 0;
-    for (let y = 0, i = slice * rows * columns; y < rows; y++) {
-      for (let x = 0; x < columns; x++, i++) {
-        if (!mask[i]) continue;
-        let neighbours = -1;
-        for (let dy = -1; dy <= 1; dy++) for (let dx = -1; dx <= 1; dx++) neighbours += set(y + dy, x + dx);
-        if (neighbours < 4) out[i] = 0;
-      }
+export function withoutSpecks(mask: Uint8Array, size: VolumeSize): Uint8Array {
+  const neighbours = setNeighbours(mask, size);
+  return mask.map((flag, i) => (flag && neighbours[i]! >= 4 ? 1 : 0));
+}
+
+/** A mask and the pixels that touch it in the slice, corners too. @param mask [slices, rows, columns] */
+export function grown(mask: Uint8Array, size: VolumeSize): Uint8Array {
+  const neighbours = setNeighbours(mask, size);
+  return mask.map((flag, i) => (flag || neighbours[i]! > 0 ? 1 : 0));
+}
+
+/** How many of a pixel's eight neighbours in the slice are set. */
+function setNeighbours(mask: Uint8Array, { slices, rows, columns }: VolumeSize): Uint8Array {
+  const out = new Uint8Array(mask.length);
+  for (let row = 0, i = 0; row < slices * rows; row++) {
+    const y = row % rows;
+    for (let x = 0; x < columns; x++, i++) {
+      if (!mask[i]) continue;
+      for (let dy = y > 0 ? -1 : 0; dy <= (y + 1 < rows ? 1 : 0); dy++)
+        for (let dx = x > 0 ? -1 : 0; dx <= (x + 1 < columns ? 1 : 0); dx++)
+          if (dx !== 0 || dy !== 0) out[i + dy * columns + dx]!++;
     }
   }
   return out;

@@ -90,7 +90,8 @@ export const fieldMap: FrameStage<Params> = {
         "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),
         [WRAP_LIMIT]: rounded(1 / (2 * closestGapSeconds(echoSeconds))),
         "bandwidth per pixel, Hz": pixelBandwidthHz.map(rounded).join(", "),
-        ...(params.fat === "check" && !fat.model && { [FAT_AS_FIELD]: rounded(fat.asFieldHz) }),
+        [FAT_IN_MAP]: fat.does,
+        ...(fat.does === "counts as field" && { [FAT_AS_FIELD]: rounded(fat.asFieldHz) }),
         "smoothing, mm": rounded(params["smoothing-px"] * pixelMm(layout)),
       },
     };
@@ -133,7 +134,7 @@ export const fieldMap: FrameStage<Params> = {
     }
     values.emit(context, pixelMm(frame.layout) / pixelBandwidthHz(frame.layout, scan));
     context.note({ name: FOLDED_IN_MAP, value: counts.folded });
-    if (!fat.model) return frame;
+    if (images.echoes < 3) return frame;
     refuseLeftovers(counts);
     context.note({ name: NOT_WATER, value: counts.notWater });
     return frame;
@@ -142,24 +143,32 @@ export const fieldMap: FrameStage<Params> = {
 
 /** Physics of a plan: fields beyond this from their surroundings are ambiguous. */
 export const WRAP_LIMIT = "wrap limit, Hz";
+/** Physics of a plan: what fat does to its map. */
+export const FAT_IN_MAP = "fat";
 /** Physics of a plan whose map takes fat for field: by how much. */
 export const FAT_AS_FIELD = "fat counts as field, Hz";
 
+/** Turns of fat between the closest echoes, whole ones aside, below which it cannot be told from water by its field. */
+const LEAST_TURN = 1 / 8;
 /** Noise of water that a fit of water and fat may have, against one echo: more, and the echoes do not tell them apart. */
 const MOST_NOISE = 5;
 
 /** What fat does in these echoes, and the model to find it with, where they tell it from water. */
-function fatOf(
-  { fat }: Params,
-  timing: EchoTiming,
-  scan: ScanFacts,
-  columns: number,
-): { asFieldHz: number; model?: FatWaterModel } {
+function fatOf({ fat }: Params, timing: EchoTiming, scan: ScanFacts, columns: number): FatHere {
   const lines = spectralLines({ spectrum: "six-peak" }, scan.resonanceHz);
   const asFieldHz = fatAsFieldHz(timing.echoSeconds, lines);
-  if (fat === "absent" || timing.echoSeconds.length < 3) return { asFieldHz };
+  if (fat === "absent") return { does: "taken as absent", asFieldHz };
+  const isApart = Math.abs(asFieldHz) > LEAST_TURN / closestGapSeconds(timing.echoSeconds);
+  if (timing.echoSeconds.length < 3 || !isApart) return { does: "counts as field", asFieldHz };
   const model = fatWaterModel(timing, lines, columns);
-  return model.noiseGain.water > MOST_NOISE ? { asFieldHz } : { asFieldHz, model };
+  if (model.noiseGain.water > MOST_NOISE) return { does: "counts as field", asFieldHz };
+  return { does: "left out", asFieldHz, model };
+}
+
+interface FatHere {
+  readonly does: "left out" | "counts as field" | "taken as absent";
+  readonly asFieldHz: number;
+  readonly model?: FatWaterModel;
 }
 
 /** Of the pixels with signal this share must be of water for a map that is of use. */

@@ -5,8 +5,8 @@ import type { Layout, MapPlan, StageContext } from "./stage.js";
 export const FOLDED = "folded pixels";
 /** Finding of what measures a map: pixels with signal where it folds, left out of its mask. */
 export const FOLDED_IN_MAP = "pixels left out, the map folds there";
-/** Finding: pixels with signal that a map of water leaves out. */
-export const NOT_WATER = "pixels left out, not of water alone";
+/** Finding: pixels with signal that a map of water leaves out, with those that touch them. */
+export const NOT_WATER = "pixels left out, not water from echo to echo";
 
 /** The maps that a stage with a field hands out. @param isMeasured whether its standard error is known */
 export function fieldMapPlans(layout: Layout, isMeasured: boolean): MapPlan[] {

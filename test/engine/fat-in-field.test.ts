@@ -100,7 +100,7 @@ describe("three or more echoes of an object with oil", () => {
       expect(errors[Math.floor(0.95 * errors.length)]).toBeLessThan(2.5);
       expect(errors.at(-1)).toBeLessThan(20);
       expect(errors.length).toBeGreaterThan(4000); // of 4400 of water
-      expect(found("field-map", "pixels left out, not of water alone")).toBeGreaterThan(250); // 300 of oil, and their rims
+      expect(found("field-map", "pixels left out, not water from echo to echo")).toBeGreaterThan(250); // 300 of oil, and their rims
     },
   );
 
@@ -129,7 +129,7 @@ describe("two echoes of it", () => {
     const errors = errorsOf(OTHERS.two!, field, mask);
     expect(errors[errors.length >> 1]).toBeLessThan(1.5);
     expect(errors[Math.floor(0.97 * errors.length)]).toBeGreaterThan(200);
-    expect(found("field-map", "pixels left out, not of water alone")).toBeUndefined();
+    expect(found("field-map", "pixels left out, not water from echo to echo")).toBeUndefined();
   });
 });
 
