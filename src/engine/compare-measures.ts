@@ -50,14 +50,14 @@ export const MEASURES: readonly MeasureColumn[] = [
     id: "overshootMeasured",
     label: "overshoot, measured",
     unit: "%",
-    describe: "the same on the image; noise, shading and edges near by change it",
+    describe: "the same on the image, its bright side levelled; noise and edges near by change it",
   },
   { id: "undershootTheory", label: "undershoot, theory", unit: "%", describe: "the first trough behind it" },
   {
     id: "undershootMeasured",
     label: "undershoot, measured",
     unit: "%",
-    describe: "the same on the image; noise, shading and edges near by change it",
+    describe: "the same on the image, its bright side levelled; noise and edges near by change it",
   },
   {
     id: "noiseTheory",
@@ -146,12 +146,13 @@ export function measureVariants(
     return {
       values: Object.fromEntries(MEASURES.map(({ id }) => [id, finite(values[id as keyof typeof values])])),
       profile: found?.profile,
+      shadingPerMm: found?.shadingPerMm ?? 0,
     };
   });
   return {
     values: measured.map(({ values }) => values),
     edge,
-    remarks: remarksOn(measured[variants.indexOf(reference)]!.values, edge),
+    remarks: remarksOn(measured[variants.indexOf(reference)]!, edge),
     profiles: measured.flatMap(({ profile }) => (profile ? [profile] : [])),
     noiseMaps,
   };
@@ -161,15 +162,24 @@ export function measureVariants(
 const SOFT_EDGE = 1.5;
 
 function remarksOn(
-  { widthMeasuredMm: measured, widthTheoryMm: theory, ...ringing }: MeasureValues,
+  { values, shadingPerMm }: { values: MeasureValues; shadingPerMm: number },
   edge: Edge | undefined,
 ): string[] {
   if (!edge) return ["no straight edge between two levels was found: name one with --edge"];
+  const { widthMeasuredMm: measured, widthTheoryMm: theory, ...ringing } = values;
   if (!measured || !theory) return [];
-  if (measured < SOFT_EDGE * theory) return isLevel(ringing) ? [] : [UNEVEN];
-  const [found, least] = [measured, theory].map((mm) => Number(mm.toPrecision(3)));
+  const digits = (value: number) => Number(value.toPrecision(3));
+  if (measured >= SOFT_EDGE * theory)
+    return [
+      `the edge is softer than the resolution (${digits(measured)} mm, ${digits(theory)} by theory): widths and ringing are the object's; name a sharper one with --edge`,
+    ];
   return [
-    `the edge is softer than the resolution (${found} mm, ${least} by theory): widths and ringing are the object's; name a sharper one with --edge`,
+    ...(shadingPerMm === 0
+      ? []
+      : [
+          `the bright side of the edge slopes by ${digits(100 * shadingPerMm)} % of the jump per mm, as coils shade it: taken off the profiles`,
+        ]),
+    ...(isLevel(ringing) ? [] : [UNEVEN]),
   ];
 }
 
@@ -222,6 +232,7 @@ function edgeOn(variant: VariantImages, shown: number, edge: Edge, reference: Va
   const figures = edgeFigures(profile);
   const pixel = pixelSizeMm(variant.plan.result)[edge.axis];
   return {
+    shadingPerMm: profile.shadingPerPixel / pixel,
     figures: {
       widthMeasuredMm: figures.fwhmPixels * pixel,
       overshootMeasured: 100 * figures.overshoot,

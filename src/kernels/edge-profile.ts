@@ -44,8 +44,10 @@ export interface Edge {
 export interface EdgeProfile {
   /** Distances from the edge at right angles to it, image pixels, negative on the dark side; evenly spaced. */
   readonly distancesPixels: Float64Array;
-  /** Mean over the lines; 0 is the dark level and 1 the bright one. */
+  /** Mean over the lines; 0 is the dark level and 1 the bright one, its slope by shading taken off. */
   readonly values: Float64Array;
+  /** Slope of the bright side that was taken off, of the jump per pixel; 0 where it was too small to tell from ringing. */
+  readonly shadingPerPixel: number;
   /** Mean levels of the plateaus, in the image's unit. */
   readonly darkLevel: number;
   readonly brightLevel: number;
@@ -54,7 +56,7 @@ export interface EdgeProfile {
 export interface EdgeFigures {
   /** Full width at half maximum of the profile's derivative, image pixels: the effective resolution. */
   readonly fwhmPixels: number;
-  /** First peak behind the edge above the line of the bright plateau, and the first trough below it, as fractions of the jump. */
+  /** First peak behind the edge above the bright level, and the first trough below it, as fractions of the jump. */
   readonly overshoot: number;
   readonly undershoot: number;
 }
@@ -105,7 +107,8 @@ export function edgeAt(
 
 /**
  * The profile across an edge, 16 samples per pixel: each line interpolated as the band-limited periodic function that
- * it is, shifted by its own place on the fitted edge, and averaged.
+ * it is, shifted by its own place on the fitted edge, and averaged. Where the bright side slopes, as the coils shade it,
+ * by more than 1 % of the jump from its plateau to the edge, it is divided by that line.
  * Source: the slanted-edge method of ISO 12233, with Fourier interpolation in place of bins, which also serves an edge
  * along the pixels.
  */
@@ -127,15 +130,32 @@ export function edgeProfile(image: EdgeImage, edge: Edge, options: EdgeOptions =
   const darkLevel = plateau(means, 0, Math.floor(half / 2));
   const brightLevel = plateau(means, means.length - 1 - Math.floor(half / 2), means.length - 1);
   const values = means.map((value) => (value - darkLevel) / (brightLevel - darkLevel));
-  return { distancesPixels, values, darkLevel, brightLevel };
+  const plateauCentre = means.length - 1 - Math.floor(half / 2) / 2;
+  const tilt = plateauSlope(values, half, means.length - 1);
+  // Ringing itself can tilt the line by less than half of this; a lesser tilt is left in.
+  const slope = Math.abs(tilt * (plateauCentre - half)) > LEAST_TILT ? tilt : 0;
+  return {
+    distancesPixels,
+    values: values.map((value, i) => value / (1 + slope * (Math.max(i, half) - plateauCentre))),
+    shadingPerPixel: slope * OVERSAMPLING,
+    darkLevel,
+    brightLevel,
+  };
 }
 
+/** Change of the bright level from the plateau to the edge, of the jump, that counts as shading. */
+const LEAST_TILT = 0.01;
+
 /**
- * Effective resolution and ringing of a profile. Overshoot and undershoot are the first peak and the first trough behind
- * the edge, against the bright plateau: its mean, or the straight line through it where shading of the coils tilts that
- * by more than 1 % of the jump. Noise adds to both; average lines until it is small.
+ * Effective resolution and ringing of a profile: overshoot and undershoot are the first peak and the first trough behind
+ * the edge. Noise adds to both; average lines until it is small.
  */
-export function edgeFigures({ distancesPixels, values, darkLevel, brightLevel }: EdgeProfile): EdgeFigures {
+export function edgeFigures({
+  distancesPixels,
+  values,
+  darkLevel,
+  brightLevel,
+}: Omit<EdgeProfile, "shadingPerPixel">): EdgeFigures {
   const step = distancesPixels[1]! - distancesPixels[0]!;
   const middle = (values.length - 1) / 2;
   const spread = new Float64Array(values.length); // the line spread, per pixel
@@ -151,25 +171,16 @@ export function edgeFigures({ distancesPixels, values, darkLevel, brightLevel }:
   return { fwhmPixels: wide * step, ...ringing(values, middle) };
 }
 
-/** Change of the bright level from the plateau to the edge, of the jump, that counts as shading. */
-const LEAST_TILT = 0.01;
-
 /** @param middle index of the edge */
 function ringing(values: Float64Array, middle: number): { overshoot: number; undershoot: number } {
   const last = values.length - 1;
-  const plateauStart = last - Math.floor(middle / 2);
-  const centre = (plateauStart + last) / 2;
-  const tilt = plateauSlope(values, middle, last);
-  // Ringing itself can tilt the line by less than half of this; a lesser tilt is left in.
-  const slope = Math.abs(tilt * (centre - middle)) > LEAST_TILT ? tilt : 0;
-  const share = (i: number) => values[i]! / (1 + slope * (i - centre));
   let peak = middle;
-  while (peak < plateauStart && share(peak + 1) > share(peak)) peak++;
-  const overshoot = Math.max(0, share(peak) - 1);
+  while (peak < last && values[peak + 1]! > values[peak]!) peak++;
+  const overshoot = Math.max(0, values[peak]! - 1);
   if (overshoot === 0) return { overshoot, undershoot: 0 };
   let trough = peak;
-  while (trough < last && share(trough + 1) <= share(trough)) trough++;
-  return { overshoot, undershoot: Math.max(0, 1 - share(trough)) };
+  while (trough < last && values[trough + 1]! <= values[trough]!) trough++;
+  return { overshoot, undershoot: Math.max(0, 1 - values[trough]!) };
 }
 
 /** The image seen as lines along an axis: value(line, position) = data[line * lineStep + position * step]. */
