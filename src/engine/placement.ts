@@ -40,7 +40,10 @@ export interface Placement {
     readonly corrected: boolean;
     /** Inside the mask. */
     readonly displacementBeforeMm: Spread;
-    /** After correction the map's own error, if it is known: not of a given map, nor where fat counts as field. */
+    /**
+     * After correction the map's own error, if it is known: not of a given map, nor where fat or the phase between two
+     * echoes of opposite directions counts as field.
+     */
     readonly displacementAfterMm: Spread | null;
     /** From noise alone. */
     readonly standardErrorMm: Spread | null;
@@ -153,7 +156,7 @@ export function placementOf(scan: ScanFacts, plan: Plan, tally: PlacementTally):
       mm: fatMm,
       separated: plan.stages.some(({ stage }) => stage.id === "separate-fat-water"),
     },
-    field: fieldPart(plan, tally, isAlongY, mmPerHz),
+    field: fieldPart(plan, scan, tally, isAlongY, mmPerHz),
     perPpmMm: chemicalShiftHz(1, scan.resonanceHz) * mmPerHz,
     findings: tally.findings,
     notIncluded: NOT_INCLUDED,
@@ -163,6 +166,7 @@ export function placementOf(scan: ScanFacts, plan: Plan, tally: PlacementTally):
 
 function fieldPart(
   plan: Plan,
+  scan: ScanFacts,
   tally: PlacementTally,
   isAlongY: boolean,
   mmPerHz: number,
@@ -182,7 +186,11 @@ function fieldPart(
     along: isAlongY ? "y" : "x",
     corrected,
     displacementBeforeMm: before,
-    displacementAfterMm: !corrected ? before : fat === "counts as field" ? null : standardErrorMm,
+    displacementAfterMm: !corrected
+      ? before
+      : fat === "counts as field" || isOpposedPair(scan)
+        ? null
+        : standardErrorMm,
     standardErrorMm,
     pixelsInMask: tally.movedMm.length,
     foldedPixels: tally.total(FOLDED, "undisplace") ?? 0,
@@ -194,6 +202,11 @@ function fieldPart(
     interpolated: RESAMPLED in maker.physics ? String(maker.physics[RESAMPLED]) : null,
     leftOutPixels: tally.total(NOT_WATER, maker.stage.id) ?? 0,
   };
+}
+
+/** Two echoes of opposite directions: nothing tells a phase between them from the field. */
+function isOpposedPair({ polarity }: ScanFacts): boolean {
+  return polarity.length === 2 && polarity[0] !== polarity[1];
 }
 
 function fatInMap({ stage, physics }: Plan["stages"][number]): FatInMap {
@@ -222,13 +235,18 @@ function sentences(parts: Omit<Placement, "statement">, scan: ScanFacts): string
           : ""),
   );
   if (!field) lines.push(`the field is not known: each ppm of it moves a pixel by ${mm(perPpmMm)} along x`);
-  else lines.push(...fieldSentences(field, both));
+  else lines.push(...fieldSentences(field, scan, both, hz.x / pixel.x));
   lines.push(`not included: ${parts.notIncluded.join(", ")}`);
   return lines;
 }
 
 /** @param both a length in mm and pixels */
-function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: number) => string): string[] {
+function fieldSentences(
+  field: NonNullable<Placement["field"]>,
+  scan: ScanFacts,
+  both: (mm: number) => string,
+  hzPerMm: number,
+): string[] {
   const { displacementBeforeMm: before, standardErrorMm: error, fatCountsAsMm, corrected } = field;
   const done = fatCountsAsMm === null ? "corrected" : "corrected by a map that takes fat for field";
   const lines = [
@@ -253,6 +271,13 @@ function fieldSentences(field: NonNullable<Placement["field"]>, both: (mm: numbe
         `${corrected ? ", and so is the image" : ""}; ` +
         "set field-map.fat=absent if there is none, else take separate-fat-water with a method that suits these echoes",
     );
+  if (field.turnHz !== null && isOpposedPair(scan)) {
+    const hz = (0.1 / (2 * Math.PI)) * field.turnHz;
+    lines.push(
+      `the two echoes are read in opposite directions: a phase between them that is not the field's counts as field, ` +
+        `each 0.1 rad as ${number(hz)} Hz, which is ${both(hz / hzPerMm)}`,
+    );
+  }
   if (field.fat === "taken as absent") lines.push("fat was taken to be absent, as field-map.fat says");
   if (field.leftOutPixels)
     lines.push(

@@ -85,7 +85,7 @@ export const fieldMap: FrameStage<Params> = {
       layout,
       maps: fieldMapPlans(mapLayout(layout, scan), true),
       transformLengths: [...warpLengths(columns), ...coarseFieldLengths(columns)],
-      workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 2) * scan.lengths.contrast,
+      workBytes: 8 * axisLength(layout, "y") * columns * (scan.channels + 4) * scan.lengths.contrast,
       physics: {
         "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),
         [WRAP_LIMIT]: rounded(1 / (2 * closestGapSeconds(echoSeconds))),

@@ -151,6 +151,10 @@ describe("the placement statement", () => {
     const words = ["--te-ms", "6", "--te-ms", "8", "--dwell-us", "40", "--reversed-echoes", "odd", "--quiet"];
     await carillon(["simulate", "--out", at("oil.h5"), ...words]);
     const first = await recon("oil", at("oil.h5"), "--undisplace", "measured");
+    // 0.1 rad over 2 ms is 7.96 Hz; at 97.7 Hz per pixel of 1.875 mm that is 0.153 mm
+    expect(first.stdout.replace(/\s+/g, " ")).toContain(
+      "counts as field, each 0.1 rad as 7.96 Hz, which is 0.153 mm (0.0815 px)",
+    );
     const map = at("oil", "field-hz.npy");
     const second = await recon("oil-given", at("oil.h5"), "--undisplace", map);
     const [measured, given] = [first, second].map(({ sidecar }) => sidecar.placement.field.foldedPixels);
