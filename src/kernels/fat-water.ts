@@ -1,4 +1,4 @@
-import { fillUnknown } from "./fill.js";
+import { settleRegions } from "./settle-turns.js";
 import { unwrapPhase, type VolumeSize } from "./unwrap.js";
 
 /**
@@ -19,7 +19,7 @@ export interface DixonImages {
  * Two points: `W = (I + O) / 2`, `F = (I - O) / 2` with the magnitude I of the in-phase echo and the signed opposed-phase
  * echo O. The sign is what is left of the phase between the echoes when the field's part of it is taken off: half of
  * the unwrapped doubled phase, in which the sign drops out. In the largest connected region the sign is that under which
- * water has the larger sum; in the others that under which their field is nearest to the largest one's, extended to them.
+ * water has the larger sum; in the others that under which their field is nearest to the plane through the larger ones' (settle-turns.ts).
  * @param inPhase interleaved complex64, [slices, rows, columns]
  * @param mask    1 where there is signal; outside, the sign of O is taken as it is
  * Source: Dixon 1984, Radiology 153:189; phase correction: Coombs, Szumowski, Coshow 1997, Magn Reson Med 38:884.
@@ -106,39 +106,14 @@ function signedHalves(
     [inPhase[p], opposed[p]] = echoes(p);
     if (regions[p] === 0) largest += opposed[p]!;
   }
-  const turns = halfTurns(field, size, largest < 0 ? 1 : 0);
-  const turnsOf = (p: number) => (regions[p]! >= 0 ? turns[regions[p]!]! : 0);
+  const shifts = settleRegions(field, size, Math.PI, largest < 0 ? Math.PI : 0);
+  const turnsOf = (p: number) => (regions[p]! >= 0 ? Math.round(shifts[regions[p]!]! / Math.PI) : 0);
   const sign = (p: number) => (turnsOf(p) % 2 === 0 ? 1 : -1);
   return {
     water: inPhase.map((value, p) => (value + sign(p) * opposed[p]!) / 2),
     fat: inPhase.map((value, p) => (value - sign(p) * opposed[p]!) / 2),
     radians: radians.map((value, p) => value + turnsOf(p) * Math.PI),
   };
-}
-
-/** Half turns to add to each region's phase, so that it continues that of the largest, whose own are given. */
-function halfTurns(
-  { radians, regions, regionCount }: HalfPhase,
-  size: VolumeSize,
-  ofLargest: number,
-): Int32Array {
-  const { slices, rows, columns } = size;
-  const extended = radians.map((value) => value + ofLargest * Math.PI);
-  for (let z = 0; z < slices; z++) {
-    const at = [z * rows * columns, (z + 1) * rows * columns] as const;
-    const known = Uint8Array.from(regions.subarray(...at), (region) => (region === 0 ? 1 : 0));
-    if (known.includes(1)) fillUnknown(extended.subarray(...at), known, rows, columns);
-  }
-  const sums = new Float64Array(regionCount);
-  const counts = new Float64Array(regionCount);
-  for (let p = 0; p < radians.length; p++) {
-    if (regions[p]! < 0) continue;
-    sums[regions[p]!]! += extended[p]! - radians[p]!;
-    counts[regions[p]!]!++;
-  }
-  return Int32Array.from(sums, (sum, region) =>
-    region === 0 ? ofLargest : Math.round(sum / counts[region]! / Math.PI),
-  );
 }
 
 /**

@@ -1,11 +1,25 @@
-import { unwrapPhase, type VolumeSize, wrapped } from "./unwrap.js";
+import { unwrapPhase, type VolumeSize } from "./unwrap.js";
+
+/** Unwrapped phase with whole turns settled: the largest region so that its mean is nearest zero, the others on its plane. */
+export function settleTurns(difference: Float64Array, mask: Uint8Array, size: VolumeSize): Float64Array {
+  const unwrapped = unwrapPhase(difference, mask, size);
+  const { radians, regions } = unwrapped;
+  const shifts = settleRegions(unwrapped, size, 2 * Math.PI);
+  for (let i = 0; i < radians.length; i++) if (regions[i]! >= 0) radians[i]! += shifts[regions[i]!]!;
+  return radians;
+}
 
 /**
- * Unwrapped phase with whole turns settled: the largest region so that its mean is nearest zero, each further one so
- * that it lies on the plane through the larger ones, those near it counting most.
+ * What to add to each region's phase, in multiples of a step: the largest region, number 0, comes nearest zero in the
+ * mean, or gets what is given; each further one comes nearest to the plane through the larger ones, of which those near
+ * it count most.
  */
-export function settleTurns(difference: Float64Array, mask: Uint8Array, size: VolumeSize): Float64Array {
-  const { radians, regions, regionCount } = unwrapPhase(difference, mask, size);
+export function settleRegions(
+  { radians, regions, regionCount }: Regions,
+  size: VolumeSize,
+  stepRadians: number,
+  ofLargest?: number,
+): number[] {
   const places = centresOf(radians, regions, regionCount, size);
   const every = strideOf(radians.length, size.columns);
   const samples = places.map((): Place[] => []);
@@ -15,14 +29,20 @@ export function settleTurns(difference: Float64Array, mask: Uint8Array, size: Vo
       samples[region]!.push(placeOf(i, radians[i]!, size));
   }
   const settled: Place[] = [];
-  const shifts = places.map((place, region) => {
-    const off = place.radians - (region === 0 ? 0 : planeAt(settled, place));
-    const shift = wrapped(off) - off;
+  return places.map((place, region) => {
+    const above = place.radians - (region === 0 ? 0 : planeAt(settled, place));
+    const nearest = -stepRadians * Math.round(above / stepRadians);
+    const shift = region === 0 ? (ofLargest ?? nearest) : nearest;
     for (const sample of samples[region]!) settled.push({ ...sample, radians: sample.radians + shift });
     return shift;
   });
-  for (let i = 0; i < radians.length; i++) if (regions[i]! >= 0) radians[i]! += shifts[regions[i]!]!;
-  return radians;
+}
+
+interface Regions {
+  readonly radians: ArrayLike<number>;
+  /** Number of the region of each pixel, the largest first; -1 outside. */
+  readonly regions: Int32Array;
+  readonly regionCount: number;
 }
 
 /** Pixels of a volume, evenly spread, that the planes go through. */
@@ -50,7 +70,7 @@ function placeOf(pixel: number, radians: number, { rows, columns }: VolumeSize):
 
 /** Mean place and mean phase of each region. */
 function centresOf(
-  radians: Float64Array,
+  radians: ArrayLike<number>,
   regions: Int32Array,
   regionCount: number,
   size: VolumeSize,

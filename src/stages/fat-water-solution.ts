@@ -59,7 +59,8 @@ export function solve(
     keepEchoes: params.fit === "magnitude",
   });
   for (const line of lines) engine.release(line);
-  const object = signalMask([images.water, images.fat], OBJECT_SHARE, noiseDeviation);
+  const gain = Math.max(1, model.noiseGain.water, model.noiseGain.fat);
+  const object = signalMask([images.water, images.fat], OBJECT_SHARE, gain * noiseDeviation);
   return {
     ...images,
     ...withoutFolds(images.fieldHz, object, rows, model),

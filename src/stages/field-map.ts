@@ -16,7 +16,7 @@ import {
   pixelMm,
   rounded,
 } from "./echo-frame.js";
-import { spectralLines } from "./fat-water-parameters.js";
+import { spectralLines, tellsApart } from "./fat-water-parameters.js";
 import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, NOT_WATER, refuseSecondField } from "./field-values.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type Frame, type FrameStage } from "./stage.js";
@@ -150,9 +150,6 @@ export const FAT_AS_FIELD = "fat counts as field, Hz";
 
 /** Turns of fat between the closest echoes, whole ones aside, below which it cannot be told from water by its field. */
 const LEAST_TURN = 1 / 8;
-/** Noise of water that a fit of water and fat may have, against one echo: more, and the echoes do not tell them apart. */
-const MOST_NOISE = 5;
-
 /** What fat does in these echoes, and the model to find it with, where they tell it from water. */
 function fatOf({ fat }: Params, timing: EchoTiming, scan: ScanFacts, columns: number): FatHere {
   const lines = spectralLines({ spectrum: "six-peak" }, scan.resonanceHz);
@@ -161,8 +158,7 @@ function fatOf({ fat }: Params, timing: EchoTiming, scan: ScanFacts, columns: nu
   const isApart = Math.abs(asFieldHz) > LEAST_TURN / closestGapSeconds(timing.echoSeconds);
   if (timing.echoSeconds.length < 3 || !isApart) return { does: "counts as field", asFieldHz };
   const model = fatWaterModel(timing, lines, columns);
-  if (model.noiseGain.water > MOST_NOISE) return { does: "counts as field", asFieldHz };
-  return { does: "left out", asFieldHz, model };
+  return tellsApart(model) ? { does: "left out", asFieldHz, model } : { does: "counts as field", asFieldHz };
 }
 
 interface FatHere {

@@ -1,3 +1,4 @@
+import { UsageError } from "../errors.js";
 import { coarseFieldLengths } from "../kernels/fat-water-field.js";
 import { fatWaterModel } from "../kernels/fat-water-model.js";
 import { warpLengths } from "../kernels/row-warp.js";
@@ -14,7 +15,15 @@ import {
   pixelMm,
   rounded,
 } from "./echo-frame.js";
-import { checkMethod, ID, type Params, rangeHz, schema, spectralLines } from "./fat-water-parameters.js";
+import {
+  checkMethod,
+  ID,
+  type Params,
+  rangeHz,
+  schema,
+  spectralLines,
+  tellsApart,
+} from "./fat-water-parameters.js";
 import { type Solved, solve } from "./fat-water-solution.js";
 import { noiseOf } from "./field-map.js";
 import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, refuseSecondField } from "./field-values.js";
@@ -56,6 +65,13 @@ export const separateFatWaterStage: FrameStage<Params> = {
     checkMethod(params, timing, scan);
     const columns = workColumns(layout, scan);
     const model = fatWaterModel(timing, spectralLines(params, scan.resonanceHz), columns);
+    const noise = `${rounded(model.noiseGain.water)}, ${rounded(model.noiseGain.fat)}`;
+    if (!tellsApart(model))
+      throw new UsageError(
+        { field: ID, value: `${timing.echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", ")} ms` },
+        `these echo times hardly tell fat from water: noise of ${noise} times that of one echo`,
+        "Fat must turn by different parts of a turn from echo to echo; without fat, field-map will do",
+      );
     return {
       layout,
       maps: mapPlans(params, mapLayout(layout, scan), scan.lengths.contrast > 2),
@@ -69,7 +85,7 @@ export const separateFatWaterStage: FrameStage<Params> = {
           params.method === "least-squares"
             ? `within ${rounded(rangeHz(timing))} of the mean slope`
             : "any, unwrapped",
-        "noise of water and of fat against one echo": `${rounded(model.noiseGain.water)}, ${rounded(model.noiseGain.fat)}`,
+        "noise of water and of fat against one echo": noise,
       },
     };
   },
