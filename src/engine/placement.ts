@@ -2,7 +2,7 @@ import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js
 import type { ScanFacts } from "../physics/scan.js";
 import { pixelBandwidthHz } from "../stages/echo-frame.js";
 import { FAT_AS_FIELD, FAT_IN_MAP, WRAP_LIMIT } from "../stages/field-map.js";
-import { FOLDED, FOLDED_IN_MAP, NOT_WATER } from "../stages/field-values.js";
+import { FOLDED, FOLDED_IN_MAP, NOT_WATER, SAME_BUT_FOR } from "../stages/field-values.js";
 import type { Finding } from "../stages/stage.js";
 import { RESAMPLED } from "../stages/undisplace.js";
 import { type Plan, pixelSizeMm } from "./plan.js";
@@ -57,7 +57,10 @@ export interface Placement {
     /** By how much the map is off where there is fat that counts as field; else null. */
     readonly fatCountsAsHz: number | null;
     readonly fatCountsAsMm: number | null;
-    /** A map that was measured is ambiguous by this; null for a given one. */
+    /** A field of this more or less everywhere would look the same in these echoes; null where they tell, or it is given. */
+    readonly sameButForHz: number | null;
+    readonly sameButForMm: number | null;
+    /** A whole turn between the closest echoes of field-map; else null. */
     readonly turnHz: number | null;
     /** How a given map of another matrix was brought to the image's, null if that was not needed. */
     readonly interpolated: string | null;
@@ -180,6 +183,7 @@ function fieldPart(
   const standardErrorMm = errors.length ? spreadOf(errors.map((hz) => hz * mmPerHz)) : null;
   const fat = fatInMap(maker);
   const asHz = maker.physics[FAT_AS_FIELD];
+  const sameButForHz = SAME_BUT_FOR in maker.physics ? Number(maker.physics[SAME_BUT_FOR]) : null;
   const fatCountsAsHz = fat === "counts as field" ? Number(asHz) : null;
   return {
     source: file === undefined ? `measured: ${maker.stage.id}` : `given: ${file}`,
@@ -198,6 +202,8 @@ function fieldPart(
     fat,
     fatCountsAsHz,
     fatCountsAsMm: fatCountsAsHz === null ? null : fatCountsAsHz * mmPerHz,
+    sameButForHz,
+    sameButForMm: sameButForHz === null ? null : sameButForHz * mmPerHz,
     turnHz: WRAP_LIMIT in maker.physics ? 2 * Number(maker.physics[WRAP_LIMIT]) : null,
     interpolated: RESAMPLED in maker.physics ? String(maker.physics[RESAMPLED]) : null,
     leftOutPixels: tally.total(NOT_WATER, maker.stage.id) ?? 0,
@@ -260,6 +266,11 @@ function fieldSentences(
   else if (corrected && field.fat === "not known")
     lines.push("what remains is the error of the given map, which is not known here");
   else if (corrected) lines.push("two echoes leave nothing over to tell the error of the map by");
+  if (field.sameButForMm !== null)
+    lines.push(
+      `nothing in these echoes tells a whole turn: a field of ${number(field.sameButForHz!)} Hz more or less everywhere, ` +
+        `${both(field.sameButForMm)}, would look the same; the one nearest zero was taken`,
+    );
   if (field.interpolated)
     lines.push(
       `the map was interpolated ${field.interpolated}: it is taken to cover the image's field of view`,
@@ -278,11 +289,15 @@ function fieldSentences(
         `each 0.1 rad as ${number(hz)} Hz, which is ${both(hz / hzPerMm)}`,
     );
   }
+  if (field.fat === "separated")
+    lines.push(
+      "a piece of one species alone that nothing joins to the rest may be the other one: the field that suits the rest decided",
+    );
   if (field.fat === "taken as absent") lines.push("fat was taken to be absent, as field-map.fat says");
   if (field.leftOutPixels)
     lines.push(
       `${field.leftOutPixels} pixels that do not follow water from echo to echo, or touch such, were left out of the map: ` +
-        "the field there continues its surroundings; --separate fat-water measures it there too",
+        "the field there continues its surroundings; separate-fat-water measures it there too",
     );
   if (field.foldedInMapPixels)
     lines.push(

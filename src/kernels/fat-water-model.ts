@@ -91,6 +91,29 @@ export function fatWaterModel(
   return { echoes, length, timing, times, fat, inverse, residual, noiseGain: { water, fat: fatGain } };
 }
 
+/** A sample of k that does not tell the species apart at all counts with this variance. */
+const MOST_VARIANCE = 100;
+
+/**
+ * Noise of the noisier species against one echo if nothing were damped, root of the mean over k: how well the echo times
+ * tell water from fat. Near 1 for good ones.
+ */
+export function separationNoise({ fat, echoes, length }: FatWaterModel): number {
+  let sum = 0;
+  for (let k = 0; k < length; k++) {
+    let [re, im, energy] = [0, 0, 0];
+    for (let e = 0; e < echoes; e++) {
+      const [a, b] = [fat[2 * (e * length + k)]!, fat[2 * (e * length + k) + 1]!];
+      re += a;
+      im += b;
+      energy += a * a + b * b;
+    }
+    const variance = Math.max(energy, echoes) / (echoes * energy - re * re - im * im);
+    sum += variance > 0 && variance < MOST_VARIANCE ? variance : MOST_VARIANCE;
+  }
+  return Math.sqrt(sum / length);
+}
+
 /** `(A^H A + damping)^-1 A^H` for the columns 1 and c(tau_e). */
 function invertSample(
   fat: Float64Array,

@@ -1,5 +1,5 @@
 import { foldedInAny, objectField } from "./displacement.js";
-import { closestEchoes } from "./echo-times.js";
+import { closestEchoes, fieldRangeHz } from "./echo-times.js";
 import { coarseFatWaterField } from "./fat-water-field.js";
 import { type FatWaterModel, fatSignal, type SpectralLine } from "./fat-water-model.js";
 import { between } from "./fill.js";
@@ -96,7 +96,8 @@ function fatView(
   { slices, rows, columns }: VolumeSize,
   { model, asFieldHz }: NonNullable<FieldMapOptions["fat"]>,
 ): FatView {
-  const { gapSeconds } = closestEchoes(model.timing.echoSeconds);
+  const { echoSeconds, pixelBandwidthHz } = model.timing;
+  const rangeHz = fieldRangeHz(echoSeconds, pixelBandwidthHz);
   const fieldHz = new Float32Array(slices * rows * columns);
   for (let slice = 0; slice < slices; slice++) {
     const lines = echoes.map((echo) => {
@@ -105,7 +106,7 @@ function fatView(
       engine.transformAxis({ source, target: line, outer: rows, inner: 1, length: columns, inverse: false });
       return line;
     });
-    const coarse = coarseFatWaterField(engine, lines, model, rows, 1 / (2 * gapSeconds));
+    const coarse = coarseFatWaterField(engine, lines, model, rows, rangeHz);
     fieldHz.set(coarse.fieldHz, slice * rows * columns);
     for (const line of lines) engine.release(line);
   }
@@ -159,6 +160,7 @@ function measureOpposed(
     line = phaseLine(straight, grid, { ...options, areAligned: round >= ROUNDS - 2 }, rest);
     const total = line.fieldHz.map((hz, i) => hz + fieldHz[i]!);
     ({ fieldHz, standardErrorHz } = smoothSlices(total, line.weights, grid, options.smoothingPixels));
+    if (round === 0) fieldHz = onRightTurn(engine, echoes, fieldHz, grid, options, 2 * line.wrapLimitHz);
   }
   const { mask, wrapLimitHz } = line!;
   return {
@@ -167,6 +169,47 @@ function measureOpposed(
     ...counts(options.mask, mask),
     wrapLimitHz,
   };
+}
+
+/** How much better the echoes must lie on each other in another turn than the one nearest zero. */
+const BETTER = 0.8;
+
+/** The field in the turn in which echoes read in opposite directions lie on each other best. */
+function onRightTurn(
+  engine: TransformEngine,
+  echoes: readonly Float32Array[],
+  fieldHz: Float32Array,
+  grid: VolumeSize,
+  { pixelBandwidthHz, echoSeconds, mask }: FieldMapOptions,
+  turnHz: number,
+): Float32Array {
+  let [best, least] = [fieldHz, Number.POSITIVE_INFINITY];
+  for (const turns of [0, -1, 1]) {
+    const field = fieldHz.map((hz) => hz + turns * turnHz);
+    const straight = echoes.map((echo, e) =>
+      demodulated(engine, echo, field, grid, pixelBandwidthHz[e]!, echoSeconds[e]!),
+    );
+    const unlike = unlikeness(straight, mask);
+    if (unlike >= (turns === 0 ? Number.POSITIVE_INFINITY : BETTER * least)) continue;
+    [best, least] = [field, unlike];
+  }
+  return best;
+}
+
+/** Sum of the squared differences of the echoes' magnitudes from their mean. */
+function unlikeness(echoes: readonly Float32Array[], mask: Uint8Array): number {
+  let sum = 0;
+  for (let p = 0; p < mask.length; p++) {
+    if (!mask[p]) continue;
+    let [first, second] = [0, 0];
+    for (const echo of echoes) {
+      const square = echo[2 * p]! ** 2 + echo[2 * p + 1]! ** 2;
+      first += Math.sqrt(square);
+      second += square;
+    }
+    sum += second - (first * first) / echoes.length;
+  }
+  return sum;
 }
 
 /** Mask and count of a map in the object's coordinates. */

@@ -50,7 +50,17 @@ export function phaseLine(
   const toHz = -1 / (2 * Math.PI * gapSeconds);
   const wrapLimitHz = 1 / (2 * gapSeconds);
   const fit = new LineFit(echoes, echoSeconds, noiseDeviation);
-  const all = fitLines(fit, difference, options.mask, grid, toHz);
+  const start = { difference, toHz, offsetHz: 0 };
+  let all = fitLines(fit, start, options.mask, grid);
+  if (areAligned && 2 * count(all.astray) > count(options.mask)) {
+    // Echoes that are not evenly spaced follow a line in one turn only.
+    for (const offsetHz of [2 * wrapLimitHz, -2 * wrapLimitHz]) {
+      const other = fitLines(fit, { ...start, offsetHz }, options.mask, grid);
+      if (2 * count(other.astray) > count(all.astray)) continue;
+      all = other;
+      start.offsetHz = offsetHz;
+    }
+  }
   const others = options.mask.map((flag, i) =>
     flag && ((areAligned && all.astray[i]) || isFat(difference[i]! * toHz, i, fat, wrapLimitHz)) ? 1 : 0,
   );
@@ -61,11 +71,22 @@ export function phaseLine(
     options.mask.map((flag, i) => flag & (1 - (others[i]! | beside[i]!))),
     grid,
   );
-  return { ...fitLines(fit, difference, mask, grid, toHz), mask, wrapLimitHz };
+  return { ...fitLines(fit, start, mask, grid), mask, wrapLimitHz };
 }
 
-function fitLines(fit: LineFit, difference: Float64Array, mask: Uint8Array, grid: VolumeSize, toHz: number) {
-  const start = Float32Array.from(settleTurns(difference, mask, grid), (radians) => radians * toHz);
+const count = (mask: Uint8Array) => mask.reduce((sum, flag) => sum + flag, 0);
+
+interface Start {
+  /** Phase between the closest echoes, radians, and the field that one of them stands for. */
+  readonly difference: Float64Array;
+  readonly toHz: number;
+  /** Whole turns, as a field, that are added to the one nearest zero. */
+  offsetHz: number;
+}
+
+function fitLines(fit: LineFit, { difference, toHz, offsetHz }: Start, mask: Uint8Array, grid: VolumeSize) {
+  const settled = settleTurns(difference, mask, grid);
+  const start = Float32Array.from(settled, (radians) => radians * toHz + offsetHz);
   const guess = fit.isFromMany ? smoothSlices(start, Float32Array.from(mask), grid, 1, false).fieldHz : start;
   const fieldHz = start.slice();
   const weights = new Float32Array(mask.length);

@@ -1,8 +1,10 @@
 import { UsageError } from "../errors.js";
 import { channelWeights, combineEchoes } from "../kernels/combine-echoes.js";
+import { turnHz } from "../kernels/echo-times.js";
 import type { TransformEngine } from "../kernels/transform.js";
 import { cropStart, type FrameAxis } from "../physics/layout.js";
 import type { ScanFacts } from "../physics/scan.js";
+import { SAME_BUT_FOR } from "./field-values.js";
 import { axisLength, type Frame, type Layout } from "./stage.js";
 
 /** When and how fast each echo was read. */
@@ -54,6 +56,18 @@ export function signedPixelBandwidthHz(id: string, layout: Layout, scan: ScanFac
 /** Hz from one pixel of a layout to the next along x: the readout's bandwidth over its field of view, times the pixel. */
 export function pixelBandwidthHz(layout: Layout, scan: ScanFacts): number {
   return pixelMm(layout) / (scan.dwellSeconds * scan.encoded.fovMm.x);
+}
+
+/** Displacement along x, mm for each Hz: of the forward echoes, of backward ones where all are. */
+export function displacementMmPerHz(layout: Layout, scan: ScanFacts): number {
+  const direction = scan.polarity.every((each) => each === "reverse") ? -1 : 1;
+  return (direction * pixelMm(layout)) / pixelBandwidthHz(layout, scan);
+}
+
+/** Physics of a plan that measures a field, where nothing tells a whole turn from none. */
+export function sameButFor({ echoSeconds, pixelBandwidthHz: hz }: EchoTiming): Record<string, number> {
+  const turn = turnHz(echoSeconds, hz);
+  return turn === undefined ? {} : { [SAME_BUT_FOR]: rounded(turn) };
 }
 
 /** Pixel size along x, mm. */

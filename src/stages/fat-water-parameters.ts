@@ -1,5 +1,5 @@
 import { UsageError } from "../errors.js";
-import type { FatWaterModel, SpectralLine } from "../kernels/fat-water-model.js";
+import type { SpectralLine } from "../kernels/fat-water-model.js";
 import { chemicalShiftHz, FAT_MAIN_PEAK_PPM, FAT_SPECTRUM } from "../physics/chemical-shift.js";
 import type { ScanFacts } from "../physics/scan.js";
 import { type EchoTiming, rounded } from "./echo-frame.js";
@@ -82,19 +82,8 @@ export function spectralLines({ spectrum }: Pick<Params, "spectrum">, resonanceH
   }));
 }
 
-/** Fields up to half a turn between the closest echoes; beyond, they repeat where echoes are evenly spaced. */
-export function rangeHz({ echoSeconds }: EchoTiming): number {
-  const sorted = [...echoSeconds].sort((a, b) => a - b);
-  return 1 / (2 * Math.min(...sorted.slice(1).map((seconds, i) => seconds - sorted[i]!)));
-}
-
-/** Noise of water, or of fat, against one echo beyond which the echo times do not tell them apart; good ones give about 1. */
-const MOST_NOISE = 2.5;
-
-/** Whether the echo times tell water from fat. */
-export function tellsApart({ noiseGain }: FatWaterModel): boolean {
-  return Math.max(noiseGain.water, noiseGain.fat) < MOST_NOISE;
-}
+/** Noise against one echo beyond which the echo times do not tell water from fat; good ones give about 1. */
+export const MOST_NOISE = 2.5;
 
 /** Turns of fat's main peak at a time, from -1/2 to 1/2. */
 function fatTurns(seconds: number, resonanceHz: number): number {

@@ -1,4 +1,5 @@
 import { foldedInAny, objectField } from "../kernels/displacement.js";
+import { fieldRangeHz } from "../kernels/echo-times.js";
 import { fatFraction, threePointDixon, twoPointDixon } from "../kernels/fat-water.js";
 import { coarseFatWaterField } from "../kernels/fat-water-field.js";
 import { type FatWaterModel, fatSignal, type SpectralLine } from "../kernels/fat-water-model.js";
@@ -8,7 +9,7 @@ import { fitMagnitudes } from "../kernels/magnitude-fit.js";
 import { signalMask, withoutSpecks } from "../kernels/signal-mask.js";
 import { smoothField } from "../kernels/smooth-field.js";
 import type { TransformEngine } from "../kernels/transform.js";
-import { type Params, rangeHz } from "./fat-water-parameters.js";
+import type { Params } from "./fat-water-parameters.js";
 
 /** Signal below this share of the bright level belongs to no species. */
 const OBJECT_SHARE = 0.1;
@@ -122,7 +123,13 @@ function startField(
 ): Float32Array {
   const { timing, length } = model;
   if (params.method === "least-squares")
-    return coarseFatWaterField(engine, lines, model, rows, rangeHz(timing)).fieldHz;
+    return coarseFatWaterField(
+      engine,
+      lines,
+      model,
+      rows,
+      fieldRangeHz(timing.echoSeconds, timing.pixelBandwidthHz),
+    ).fieldHz;
   const mask = signalMask(echoes, OBJECT_SHARE, noiseDeviation);
   const size = { slices: 1, rows, columns: length };
   const { echoSeconds } = timing;

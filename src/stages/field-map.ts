@@ -1,6 +1,6 @@
 import { InputError, UsageError } from "../errors.js";
 import { coarseFieldLengths } from "../kernels/fat-water-field.js";
-import { type FatWaterModel, fatWaterModel } from "../kernels/fat-water-model.js";
+import { type FatWaterModel, fatWaterModel, separationNoise } from "../kernels/fat-water-model.js";
 import { fatAsFieldHz, measureField } from "../kernels/field-map.js";
 import { warpLengths } from "../kernels/row-warp.js";
 import { imageNoiseDeviation, signalMask } from "../kernels/signal-mask.js";
@@ -8,15 +8,16 @@ import type { ScanFacts } from "../physics/scan.js";
 import {
   checkEchoes,
   columnsInView,
+  displacementMmPerHz,
   EchoFrame,
   type EchoTiming,
   echoTiming,
   mapLayout,
-  pixelBandwidthHz,
   pixelMm,
   rounded,
+  sameButFor,
 } from "./echo-frame.js";
-import { spectralLines, tellsApart } from "./fat-water-parameters.js";
+import { MOST_NOISE, spectralLines } from "./fat-water-parameters.js";
 import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, NOT_WATER, refuseSecondField } from "./field-values.js";
 import { parseBySchema } from "./parameters.js";
 import { axisLength, type Frame, type FrameStage } from "./stage.js";
@@ -76,7 +77,7 @@ export const fieldMap: FrameStage<Params> = {
   schema,
   parse: (raw) => parseBySchema<Params>("field-map", schema, raw),
   plan(layout, params, scan, { maps }) {
-    checkEchoes("field-map", layout, scan, 2, "A map from elsewhere will do: --undisplace FIELD.npy");
+    checkEchoes("field-map", layout, scan, 2, "A map from elsewhere will do: recon --undisplace FIELD.npy");
     refuseSecondField("field-map", maps);
     const { echoSeconds, pixelBandwidthHz } = echoTiming("field-map", layout, scan);
     const columns = columnsInView(layout, scan);
@@ -90,6 +91,7 @@ export const fieldMap: FrameStage<Params> = {
         "echo times, ms": echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", "),
         [WRAP_LIMIT]: rounded(1 / (2 * closestGapSeconds(echoSeconds))),
         "bandwidth per pixel, Hz": pixelBandwidthHz.map(rounded).join(", "),
+        ...sameButFor({ echoSeconds, pixelBandwidthHz }),
         [FAT_IN_MAP]: fat.does,
         ...(fat.does === "counts as field" && { [FAT_AS_FIELD]: rounded(fat.asFieldHz) }),
         "smoothing, mm": rounded(params["smoothing-px"] * pixelMm(layout)),
@@ -132,7 +134,7 @@ export const fieldMap: FrameStage<Params> = {
         values.set((slice * images.partitions + z) * size, part(fieldHz), part(mask), part(standardErrorHz));
       });
     }
-    values.emit(context, pixelMm(frame.layout) / pixelBandwidthHz(frame.layout, scan));
+    values.emit(context, displacementMmPerHz(frame.layout, scan));
     context.note({ name: FOLDED_IN_MAP, value: counts.folded });
     if (images.echoes < 3) return frame;
     refuseLeftovers(counts);
@@ -158,7 +160,9 @@ function fatOf({ fat }: Params, timing: EchoTiming, scan: ScanFacts, columns: nu
   const isApart = Math.abs(asFieldHz) > LEAST_TURN / closestGapSeconds(timing.echoSeconds);
   if (timing.echoSeconds.length < 3 || !isApart) return { does: "counts as field", asFieldHz };
   const model = fatWaterModel(timing, lines, columns);
-  return tellsApart(model) ? { does: "left out", asFieldHz, model } : { does: "counts as field", asFieldHz };
+  return separationNoise(model) < MOST_NOISE
+    ? { does: "left out", asFieldHz, model }
+    : { does: "counts as field", asFieldHz };
 }
 
 interface FatHere {

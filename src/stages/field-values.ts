@@ -1,6 +1,8 @@
 import { UsageError } from "../errors.js";
 import type { Layout, MapPlan, StageContext } from "./stage.js";
 
+/** Physics of a plan that measures a field: more or less of it everywhere by this would look the same. */
+export const SAME_BUT_FOR = "the same but for, Hz";
 /** Finding of what puts pixels back: those of the object that lie on others in the image of some echo, left at 0. */
 export const FOLDED = "folded pixels";
 /** Finding of what measures a map: pixels with signal where it folds, left out of its mask. */
@@ -21,7 +23,8 @@ export function fieldMapPlans(layout: Layout, isMeasured: boolean): MapPlan[] {
     {
       name: "displacement-mm",
       unit: "mm",
-      describe: "how far the field moves a pixel on a forward readout, positive towards a larger index",
+      describe:
+        "how far the field moves a pixel, positive towards a larger index; in the forward echoes where there are both",
       layout,
       picture: "signed",
     },
@@ -73,7 +76,7 @@ export class FieldValues {
     if (standardErrorHz) this.#standardErrorHz?.set(standardErrorHz, at);
   }
 
-  /** @param mmPerHz displacement on a forward readout */
+  /** @param mmPerHz displacement, of the forward echoes where there are both */
   emit(context: StageContext, mmPerHz: number): void {
     context.emit({ name: "field-hz", data: this.fieldHz });
     context.emit({ name: "displacement-mm", data: this.fieldHz.map((hz) => hz * mmPerHz) });

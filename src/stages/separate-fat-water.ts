@@ -1,6 +1,7 @@
 import { UsageError } from "../errors.js";
+import { fieldRangeHz } from "../kernels/echo-times.js";
 import { coarseFieldLengths } from "../kernels/fat-water-field.js";
-import { fatWaterModel } from "../kernels/fat-water-model.js";
+import { fatWaterModel, separationNoise } from "../kernels/fat-water-model.js";
 import { warpLengths } from "../kernels/row-warp.js";
 import { chemicalShiftHz, FAT_MAIN_PEAK_PPM } from "../physics/chemical-shift.js";
 import { cropStart } from "../physics/layout.js";
@@ -8,22 +9,15 @@ import type { ScanFacts } from "../physics/scan.js";
 import {
   checkEchoes,
   columnsInView,
+  displacementMmPerHz,
   EchoFrame,
   echoTiming,
   mapLayout,
   pixelBandwidthHz,
-  pixelMm,
   rounded,
+  sameButFor,
 } from "./echo-frame.js";
-import {
-  checkMethod,
-  ID,
-  type Params,
-  rangeHz,
-  schema,
-  spectralLines,
-  tellsApart,
-} from "./fat-water-parameters.js";
+import { checkMethod, ID, MOST_NOISE, type Params, schema, spectralLines } from "./fat-water-parameters.js";
 import { type Solved, solve } from "./fat-water-solution.js";
 import { noiseOf } from "./field-map.js";
 import { FieldValues, FOLDED_IN_MAP, fieldMapPlans, refuseSecondField } from "./field-values.js";
@@ -65,11 +59,11 @@ export const separateFatWaterStage: FrameStage<Params> = {
     checkMethod(params, timing, scan);
     const columns = workColumns(layout, scan);
     const model = fatWaterModel(timing, spectralLines(params, scan.resonanceHz), columns);
-    const noise = `${rounded(model.noiseGain.water)}, ${rounded(model.noiseGain.fat)}`;
-    if (!tellsApart(model))
+    const noise = separationNoise(model);
+    if (noise > MOST_NOISE)
       throw new UsageError(
         { field: ID, value: `${timing.echoSeconds.map((seconds) => rounded(seconds * 1e3)).join(", ")} ms` },
-        `these echo times hardly tell fat from water: noise of ${noise} times that of one echo`,
+        `these echo times hardly tell fat from water: noise of ${noise.toFixed(1)} times that of one echo`,
         "Fat must turn by different parts of a turn from echo to echo; without fat, field-map will do",
       );
     return {
@@ -83,9 +77,10 @@ export const separateFatWaterStage: FrameStage<Params> = {
         "fat, main peak, Hz": rounded(chemicalShiftHz(FAT_MAIN_PEAK_PPM, scan.resonanceHz)),
         "fields considered, Hz":
           params.method === "least-squares"
-            ? `within ${rounded(rangeHz(timing))} of the mean slope`
+            ? `within ${rounded(fieldRangeHz(timing.echoSeconds, timing.pixelBandwidthHz))} of the mean slope`
             : "any, unwrapped",
-        "noise of water and of fat against one echo": noise,
+        ...sameButFor(timing),
+        "noise of water and of fat against one echo": `${rounded(model.noiseGain.water)}, ${rounded(model.noiseGain.fat)}`,
       },
     };
   },
@@ -117,7 +112,7 @@ export const separateFatWaterStage: FrameStage<Params> = {
           value: solved.echoPhase.radiansPerPixel,
         });
       }
-    out.field.emit(context, pixelMm(frame.layout) / pixelBandwidthHz(frame.layout, scan));
+    out.field.emit(context, displacementMmPerHz(frame.layout, scan));
     for (const [name, data] of out.species) context.emit({ name, data });
     return frame;
   },

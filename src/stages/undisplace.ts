@@ -1,7 +1,7 @@
 import { UsageError } from "../errors.js";
 import { foldedInAny } from "../kernels/displacement.js";
 import type { Kernels } from "../kernels/kernels.js";
-import { signalMask } from "../kernels/signal-mask.js";
+import { signalMask, withoutSpecks } from "../kernels/signal-mask.js";
 import {
   planUndisplace,
   type UndisplaceOptions,
@@ -14,11 +14,10 @@ import type { ScanFacts } from "../physics/scan.js";
 import {
   columnsInView,
   cropRows,
+  displacementMmPerHz,
   EchoFrame,
   echoSecondsOf,
   mapLayout,
-  pixelBandwidthHz,
-  pixelMm,
   rounded,
   signedPixelBandwidthHz,
 } from "./echo-frame.js";
@@ -192,7 +191,7 @@ export const undisplace: FrameStage<Params> = {
         if (!plan) continue;
         const folded = foldedOf(plan, job, params, scan);
         if (!map && !folded.includes(1)) continue;
-        const object = objectSeen(job, params, scan);
+        const object = objectSeen(job, params, scan, frame.noise.whitened ? frame.noise.gain : 0);
         for (let i = 0; i < size; i++) {
           mask[at + i] = object[i]! & (1 - folded[i]!);
           foldedCount += object[i]! & folded[i]!;
@@ -243,9 +242,18 @@ function undisplaceImage(
 }
 
 /** Pixels of the object, [y, columns in view]: those that are seen above the background in the first echo, where the field has put them. */
-function objectSeen({ images, slice, z, fieldHz, layout }: ImageJob, params: Params, scan: ScanFacts) {
+function objectSeen(
+  { images, slice, z, fieldHz, layout }: ImageJob,
+  params: Params,
+  scan: ScanFacts,
+  noise: number,
+) {
   const { rows, columns: wide } = images;
-  const seen = signalMask(coilImages(images, 0, slice, z), OBJECT_SHARE);
+  const seen = withoutSpecks(signalMask(coilImages(images, 0, slice, z), OBJECT_SHARE, noise), {
+    slices: 1,
+    rows,
+    columns: wide,
+  });
   const columns = fieldHz.length / rows;
   const margin = cropStart(wide, columns);
   const hz = perPixelHz(params, layout, scan, 0);
@@ -292,9 +300,9 @@ function perPixelHz(params: Params, layout: Layout, scan: ScanFacts, echo: numbe
   return params["line-order"] === "descending" ? -hz : hz;
 }
 
-/** Displacement on a forward readout, or along an echo train. */
+/** Displacement along the readout, or along an echo train. */
 function mmPerHz(params: Params, layout: Layout, scan: ScanFacts): number {
-  if (params.along === "readout") return pixelMm(layout) / pixelBandwidthHz(layout, scan);
+  if (params.along === "readout") return displacementMmPerHz(layout, scan);
   return layout.fovMm.y / axisLength(layout, "y") / perPixelHz(params, layout, scan, 0);
 }
 

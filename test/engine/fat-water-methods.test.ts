@@ -27,6 +27,9 @@ beforeAll(async () => {
   const write = (name: string, options: AcquisitionOptions) =>
     simulateRaw({ ...BASE, ...options, file: at(name) });
   await write("two", { echoTimesSeconds: [HALF_TURN, 2 * HALF_TURN] });
+  const steep = { x: 1.5, y: -1 }; // a vial of water apart from the rest lies 160 Hz from zero
+  await write("two, steep", { echoTimesSeconds: [HALF_TURN, 2 * HALF_TURN], fieldSlopeHzPerMm: steep });
+  await write("in phase", { echoTimesSeconds: [2, 4, 6].map((n) => n * HALF_TURN) });
   await write("three", { echoTimesSeconds: [2 * HALF_TURN, 3 * HALF_TURN, 4 * HALF_TURN] });
   await write("alternating", { echoTimesSeconds: [HALF_TURN, 2 * HALF_TURN], reversedEchoes: "odd" });
   await write("odd times", { echoTimesSeconds: [2.6e-3, 4e-3, 5.4e-3] });
@@ -54,6 +57,7 @@ async function truth(name: string): Promise<Float32Array> {
 describe("the methods that find the field", () => {
   test.each([
     ["two", "two-point"],
+    ["two, steep", "two-point"],
     ["three", "three-point"],
     ["odd times", "least-squares"],
   ])("%s echoes, %s: water and fat in their true places", async (name, method) => {
@@ -71,6 +75,7 @@ describe("the methods that find the field", () => {
     ["odd times", "three-point", /needs fat in phase, opposed and in phase/],
     ["alternating", "two-point", /compares echoes pixel by pixel: all must be read in one direction/],
     ["two", "least-squares", /needs 3 echoes, the file has 2.*--set separate-fat-water.method=two-point/],
+    ["in phase", "least-squares", /these echo times hardly tell fat from water: noise of [\d.]+ times/],
     ["two", "three-point", /needs 3 echoes, the file has 2/],
   ])("%s echoes, %s: refused", async (name, method, rule) => {
     await expect(separated(name, `separate-fat-water.method=${method}`)).rejects.toThrow(rule);

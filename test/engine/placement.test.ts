@@ -1,7 +1,7 @@
-import { readFileSync } from "node:fs";
+import { readFileSync, writeFileSync } from "node:fs";
 import path from "node:path";
 import { beforeAll, describe, expect, test } from "vitest";
-import { readNpy } from "../../src/writers/npy.js";
+import { npyBytes, readNpy } from "../../src/writers/npy.js";
 import { COMMITTED } from "../support/conformance-cases.js";
 import { carillon, scratchFolder } from "../support/run-carillon.js";
 
@@ -100,9 +100,15 @@ describe("the placement statement", () => {
     expect(stdout).toContain("the error of the given map, which is not known here");
   });
 
+  test("a whole turn that nothing tells is said, in Hz and mm", async () => {
+    const { stdout, sidecar } = await recon("turn", OFF_RESONANCE, "--undisplace", "measured");
+    // 2.2 ms between the generator's echoes: 454.5 Hz, over 120 Hz per pixel of 2 mm
+    expect(sidecar.placement.field.sameButForHz).toBeCloseTo(1 / 0.0022, 2);
+    expect(sidecar.placement.field.sameButForMm).toBeCloseTo((1 / 0.0022) * (2 / 120), 3);
+    expect(stdout.replace(/\s+/g, " ")).toContain("nothing in these echoes tells a whole turn");
+  });
+
   test("a given map of another matrix: that it was interpolated is said", async () => {
-    const { npyBytes } = await import("../../src/writers/npy.js");
-    const { writeFileSync } = await import("node:fs");
     writeFileSync(at("small.npy"), npyBytes("<f4", [32, 64], new Float32Array(32 * 64)));
     const { sidecar, stdout } = await recon("small", OFF_RESONANCE, "--undisplace", at("small.npy"));
     expect(sidecar.placement.field.interpolated).toBe("from 32 x 64 to 128 x 128 pixels");
@@ -129,14 +135,19 @@ describe("the placement statement", () => {
     const [forward, backward] = [await recon("fwd", at("none.h5")), await recon("bwd", at("all.h5"))];
     expect(backward.sidecar.placement.fat.mm).toBeCloseTo(-forward.sidecar.placement.fat.mm, 9);
     expect(backward.stdout).not.toContain("the other way");
+    // The field moves pixels the other way as well.
+    writeFileSync(at("up.npy"), npyBytes("<f4", [48, 48], new Float32Array(48 * 48).fill(10)));
+    await recon("fwd-map", at("none.h5"), "--undisplace", at("up.npy"));
+    await recon("bwd-map", at("all.h5"), "--undisplace", at("up.npy"));
+    const [one, other] = ["fwd-map", "bwd-map"].map((name) => floats(name, "displacement-mm.npy")[0]!);
+    expect(one).toBeGreaterThan(0);
+    expect(other).toBeCloseTo(-one!, 9);
   });
 
   test("where a map folds, pixels are 0, counted and named", async () => {
     // A field of 1.25 pixels of displacement per pixel over a tenth of the rows: a fold.
     const steep = new Float32Array(128 * 128);
     for (let i = 0; i < steep.length; i++) steep[i] = 2 * 120 * Math.tanh(-((i % 128) - 60) * 0.8);
-    const { npyBytes } = await import("../../src/writers/npy.js");
-    const { writeFileSync } = await import("node:fs");
     writeFileSync(at("steep.npy"), npyBytes("<f4", [128, 128], steep));
     const { sidecar, stdout } = await recon("folded", OFF_RESONANCE, "--undisplace", at("steep.npy"));
     expect(sidecar.placement.field.foldedPixels).toBeGreaterThan(128);
