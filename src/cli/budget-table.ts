@@ -37,7 +37,11 @@ export function budgetTable(table: BudgetTable): string {
 
 type Row = readonly [name: string, value: string];
 
-function planRows({ source, plan, questions, found: { present } }: BudgetTable): Row[] {
+function planRows({ source, plan, questions, found: { present }, echoes }: BudgetTable): Row[] {
+  const early = echoes
+    .map(({ echoTimeSeconds }) => echoTimeSeconds ?? Number.POSITIVE_INFINITY)
+    .filter((seconds) => seconds < present.durationSeconds / 2);
+  const partial = early.map((seconds) => `TE ${digits(seconds * 1e3)} ms`).join(", ");
   const pixelMm = plan.fovMm / plan.pixels;
   const acquiredMm = plan.encodedFovMm / plan.encodedSamples;
   const isInterpolated = Math.abs(acquiredMm / pixelMm - 1) > 1e-3;
@@ -60,7 +64,8 @@ function planRows({ source, plan, questions, found: { present } }: BudgetTable):
     [
       "dwell time, duration",
       `${digits(present.dwellSeconds * 1e6)} us, ${digits(present.durationSeconds * 1e3)} ms; ` +
-        `a full echo begins ${digits(present.durationSeconds * 500)} ms before TE`,
+        `a full echo begins ${digits(present.durationSeconds * 500)} ms before TE` +
+        (early.length ? `: ${partial} needs a partial one` : ""),
     ],
     ["readout gradient", `${digits(present.gradientTPerM * 1e3)} mT/m`],
     [

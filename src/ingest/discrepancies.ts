@@ -109,7 +109,8 @@ function checkCenters(index: ScanIndex, scan: ScanFacts, problem: Say): void {
       problem(
         "center-sample",
         `${side} readouts: energy peaks at sample ${measured}, center_sample states ${evidence.stated}; ` +
-          "scan: { centre: measured } uses the measured one",
+          "scan: { centre: measured } uses the measured one (but a field that slopes across the object moves the peak too, " +
+          "more in later echoes)",
       );
   }
   if (scan.dimensions > 1) {

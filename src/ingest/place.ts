@@ -106,7 +106,9 @@ export function sampleWindow(
     throw new InputError(
       { file, field: `readout ${head.row}: center_sample`, value: centerSample },
       `puts ${count} samples at ${encodedStart} to ${encodedStart + count - 1} of ${encodedSamples} encoded`,
-      "Correct center_sample or the header's encoded matrix, or use scan: { centre: measured }",
+      centerSample === head.centerSample
+        ? "Correct center_sample or the header's encoded matrix, or use scan: { centre: measured }"
+        : `This is the measured centre, the file states ${head.centerSample}: leave scan: { centre: header }`,
     );
   return { first: head.discardPre, count, encodedStart, reversed };
 }
