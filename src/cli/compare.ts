@@ -145,7 +145,7 @@ async function settingsOf(flags: Flags): Promise<SettingsOf> {
   });
 }
 
-function report({ files, compared, values, reference, remarks }: Written, terminal: Terminal): void {
+function report({ files, compared, values, reference, shown, remarks }: Written, terminal: Terminal): void {
   terminal.discrepancies(compared.scan.discrepancies);
   terminal.document({
     files,
@@ -157,6 +157,10 @@ function report({ files, compared, values, reference, remarks }: Written, termin
   terminal.result(comparisonTable(compared.variants, values));
   const times = compared.variants.map(({ seconds }) => Number((1e3 * seconds).toPrecision(2)));
   terminal.result(wrap(`run time after the stages that all share, ms: ${times.join(", ")}`, 80, "  "));
+  if (compared.places.length > 1)
+    terminal.result(
+      wrap(`edge, regions and pictures are of ${shown}; choose another with --image`, 80, "  "),
+    );
   for (const remark of remarks) terminal.result(wrap(`note: ${remark}`, 80, "  "));
   for (const file of files) terminal.result(file);
   const { passes } = compared;

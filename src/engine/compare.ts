@@ -273,7 +273,7 @@ function channelsOf(frame: Frame, place: number, z: number): Float32Array {
   return out;
 }
 
-/** Counters of an image's frame, in words: `slice 3, echo 1`. */
+/** Counters of an image's frame, from 0, in words: `echo 1 (TE 3.9 ms), slice 3`. */
 export function imageLabel(facts: ScanFacts, { frame, z }: ImagePlace, partitions: number): string {
   const plan = { together: [] } as const;
   const counters = groupCounters(facts, plan, frame);
@@ -286,7 +286,15 @@ export function imageLabel(facts: ScanFacts, { frame, z }: ImagePlace, partition
   } as const;
   const parts = (Object.keys(named) as (keyof typeof named)[])
     .filter((axis) => facts.lengths[axis] > 1)
-    .map((axis) => `${named[axis]} ${counters[axis]}`);
+    .map(
+      (axis) =>
+        `${named[axis]} ${counters[axis]}${axis === "contrast" ? echoTime(facts, counters[axis]) : ""}`,
+    );
   if (partitions > 1) parts.push(`z ${z}`);
   return parts.join(", ") || "the image";
+}
+
+function echoTime({ echoTimesSeconds }: ScanFacts, echo: number): string {
+  const seconds = echoTimesSeconds[echo];
+  return seconds === undefined ? "" : ` (TE ${Number((seconds * 1e3).toPrecision(4))} ms)`;
 }

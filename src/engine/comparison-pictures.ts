@@ -123,7 +123,11 @@ function differenceFrom(variant: VariantImages, reference: VariantImages, shown:
   return onMatrix(variant, reference, variant.images[shown]!).map((value, i) => value - other[i]!);
 }
 
-function placeLabel({ scan, places, shown }: Compared, reference: VariantImages): string {
+/** Which of the file's images is shown and measured. */
+export function placeLabel(
+  { scan, places, shown }: Compared,
+  reference: Pick<VariantImages, "plan">,
+): string {
   return imageLabel(scan.facts, places[shown]!, axisLength(reference.plan.result, "z"));
 }
 

@@ -25,6 +25,7 @@ import {
   noiseMaps,
   noisePicture,
   pageOf,
+  placeLabel,
   spreadChart,
 } from "./comparison-pictures.js";
 import { Hasher } from "./hasher.js";
@@ -43,6 +44,8 @@ export interface WrittenComparison extends Measured {
   readonly files: readonly string[];
   readonly compared: Compared;
   readonly reference: string;
+  /** Which image of the file edge, regions and pictures are of. */
+  readonly shown: string;
 }
 
 const NAMES = [
@@ -108,6 +111,7 @@ export async function writeComparison(
       files: [...NAMES, "compare.json"].map((name) => path.join(options.out, name)),
       compared,
       reference: referenceName,
+      shown: placeLabel(compared, reference),
     };
   } catch (error) {
     set.abort();

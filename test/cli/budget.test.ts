@@ -101,6 +101,15 @@ describe.concurrent("budget", () => {
     expect(wider.plan.fovMm).toBe(own.plan.fovMm);
   });
 
+  test("an echo time shorter than half a full echo needs a partial one, and is named", async ({ expect }) => {
+    // 256 pixels at 130 Hz: 1 / 130 s in all, half of it before TE
+    const words = ["budget", "--fov-mm", "220", "--matrix", "256", "--pixel-hz", "130"];
+    const { stdout } = await carillon([...words, "--te-ms", "1", "--te-ms", "5"]);
+    expect(stdout.replace(/\s+/g, " ")).toContain(
+      "a full echo begins 3.846 ms before TE: TE 1 ms needs a partial one",
+    );
+  });
+
   test("table, CSV, SVG and PNG; nothing is overwritten unasked", async ({ expect }) => {
     const files = ["--csv", at("b.csv"), "--svg", at("b.svg"), "--png", at("b.png")];
     const words = ["budget", ...AT_3T, "--pixel-hz", "200", ...files];
