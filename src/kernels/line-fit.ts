@@ -68,6 +68,12 @@ export class LineFit {
     return guessHz - slope / (2 * Math.PI);
   }
 
+  /** Whether a pixel's echoes follow no line, with a guess of its slope as for `fieldHz`. */
+  strays(pixel: number, guessHz: number): boolean {
+    this.fieldHz(pixel, guessHz);
+    return this.isAstray;
+  }
+
   /** Signal, squared, that lies beside the line through the phases. */
   #leftByPhases(meanTime: number, meanPhase: number, slope: number): number {
     let left = 0;

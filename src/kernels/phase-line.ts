@@ -1,4 +1,4 @@
-import { closestEchoes } from "./echo-times.js";
+import { closestEchoes, turnHz } from "./echo-times.js";
 import { LineFit } from "./line-fit.js";
 import { settleTurns } from "./settle-turns.js";
 import { grown, withoutSpecks } from "./signal-mask.js";
@@ -51,27 +51,41 @@ export function phaseLine(
   const wrapLimitHz = 1 / (2 * gapSeconds);
   const fit = new LineFit(echoes, echoSeconds, noiseDeviation);
   const start = { difference, toHz, offsetHz: 0 };
-  let all = fitLines(fit, start, options.mask, grid);
-  if (areAligned && 2 * count(all.astray) > count(options.mask)) {
-    // Echoes that are not evenly spaced follow a line in one turn only.
-    for (const offsetHz of [2 * wrapLimitHz, -2 * wrapLimitHz]) {
-      const other = fitLines(fit, { ...start, offsetHz }, options.mask, grid);
-      if (2 * count(other.astray) > count(all.astray)) continue;
-      all = other;
-      start.offsetHz = offsetHz;
-    }
-  }
+  const astray = areAligned && fit.isFromMany ? strayPixels(fit, start, options, grid) : undefined;
   const others = options.mask.map((flag, i) =>
-    flag && ((areAligned && all.astray[i]) || isFat(difference[i]! * toHz, i, fat, wrapLimitHz)) ? 1 : 0,
+    flag && (astray?.[i] || isFat(difference[i]! * toHz, i, fat, wrapLimitHz)) ? 1 : 0,
   );
-  if (!others.includes(1)) return { ...all, mask: options.mask, wrapLimitHz };
-  // Once more without them: they have pulled their neighbours' turns and guesses, and ring into those that touch them.
+  if (!others.includes(1))
+    return { ...fitLines(fit, start, options.mask, grid), mask: options.mask, wrapLimitHz };
+  // They would pull their neighbours' turns and guesses, and they ring into those that touch them.
   const beside = grown(withoutSpecks(others, grid), grid);
   const mask = withoutSpecks(
     options.mask.map((flag, i) => flag & (1 - (others[i]! | beside[i]!))),
     grid,
   );
   return { ...fitLines(fit, start, mask, grid), mask, wrapLimitHz };
+}
+
+/** Pixels whose echoes follow no line. Where echoes are unevenly spaced they do in one turn only, which `start` is given. */
+function strayPixels(
+  fit: LineFit,
+  start: Start,
+  { echoSeconds, mask }: PhaseLineOptions,
+  grid: VolumeSize,
+): Uint8Array {
+  const isEven = turnHz(echoSeconds, new Array<number>(echoSeconds.length).fill(1)) !== undefined;
+  if (isEven)
+    return mask.map((flag, i) => (flag && fit.strays(i, start.difference[i]! * start.toHz) ? 1 : 0));
+  let least = fitLines(fit, start, mask, grid).astray;
+  if (2 * count(least) <= count(mask)) return least;
+  const turn = 2 * Math.PI * start.toHz;
+  for (const offsetHz of [turn, -turn]) {
+    const { astray } = fitLines(fit, { ...start, offsetHz }, mask, grid);
+    if (2 * count(astray) > count(least)) continue;
+    least = astray;
+    start.offsetHz = offsetHz;
+  }
+  return least;
 }
 
 const count = (mask: Uint8Array) => mask.reduce((sum, flag) => sum + flag, 0);
