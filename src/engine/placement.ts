@@ -45,6 +45,8 @@ export interface Placement {
      * echoes of opposite directions counts as field.
      */
     readonly displacementAfterMm: Spread | null;
+    /** What that is; null where nothing is known. */
+    readonly displacementAfterIs: "standard error from noise alone" | "not corrected" | null;
     /** From noise alone. */
     readonly standardErrorMm: Spread | null;
     readonly pixelsInMask: number;
@@ -185,16 +187,15 @@ function fieldPart(
   const asHz = maker.physics[FAT_AS_FIELD];
   const sameButForHz = SAME_BUT_FOR in maker.physics ? Number(maker.physics[SAME_BUT_FOR]) : null;
   const fatCountsAsHz = fat === "counts as field" ? Number(asHz) : null;
+  const isUntold = fat === "counts as field" || isOpposedPair(scan);
+  const after = corrected ? (isUntold ? null : standardErrorMm) : before;
   return {
     source: file === undefined ? `measured: ${maker.stage.id}` : `given: ${file}`,
     along: isAlongY ? "y" : "x",
     corrected,
     displacementBeforeMm: before,
-    displacementAfterMm: !corrected
-      ? before
-      : fat === "counts as field" || isOpposedPair(scan)
-        ? null
-        : standardErrorMm,
+    displacementAfterMm: after,
+    displacementAfterIs: !corrected ? "not corrected" : after && "standard error from noise alone",
     standardErrorMm,
     pixelsInMask: tally.movedMm.length,
     foldedPixels: tally.total(FOLDED, "undisplace") ?? 0,

@@ -88,6 +88,8 @@ describe("the placement statement", () => {
     const absent = await recon("absent", OFF_RESONANCE, ...sure);
     expect(absent.sidecar.placement.field).toMatchObject({ fat: "taken as absent", fatCountsAsHz: null });
     expect(absent.sidecar.placement.field.displacementAfterMm).toEqual(field.standardErrorMm);
+    expect(absent.sidecar.placement.field.displacementAfterIs).toBe("standard error from noise alone");
+    expect(field.displacementAfterIs).toBeNull();
   });
 
   test("a given map: its file and hash are kept, its error is not known", async () => {
