@@ -108,7 +108,7 @@ export function edgeAt(
 /**
  * The profile across an edge, 16 samples per pixel: each line interpolated as the band-limited periodic function that
  * it is, shifted by its own place on the fitted edge, and averaged. Where the bright side slopes, as the coils shade it,
- * by more than 1 % of the jump from its plateau to the edge, it is divided by that line.
+ * by 1 to 20 % of the jump from its plateau to the edge, it is divided by that line.
  * Source: the slanted-edge method of ISO 12233, with Fourier interpolation in place of bins, which also serves an edge
  * along the pixels.
  */
@@ -117,34 +117,72 @@ export function edgeProfile(image: EdgeImage, edge: Edge, options: EdgeOptions =
   const half = Math.floor(reachPixels * OVERSAMPLING);
   const distancesPixels = Float64Array.from({ length: 2 * half + 1 }, (_, i) => (i - half) / OVERSAMPLING);
   const sums = new Float64Array(distancesPixels.length);
-  const direction = edge.rising ? 1 : -1;
-  for (let t = -sideLines; t <= sideLines; t++) {
-    const middle = edge.offsetPixels + edge.slope * t + edge.bend * t * t;
-    // Along a line, distances at right angles to the edge are stretched by the edge's tilt.
-    const stretch = direction * Math.hypot(1, edge.slope + 2 * edge.bend * t);
-    for (let i = 0; i < sums.length; i++) {
-      sums[i]! += interpolated(image, edge.axis, edge.line + t, middle + stretch * distancesPixels[i]!);
-    }
-  }
+  for (let t = -sideLines; t <= sideLines; t++)
+    for (let i = 0; i < sums.length; i++) sums[i]! += valueAcross(image, edge, t, distancesPixels[i]!);
   const means = sums.map((sum) => sum / (2 * sideLines + 1));
   const darkLevel = plateau(means, 0, Math.floor(half / 2));
   const brightLevel = plateau(means, means.length - 1 - Math.floor(half / 2), means.length - 1);
   const values = means.map((value) => (value - darkLevel) / (brightLevel - darkLevel));
   const plateauCentre = means.length - 1 - Math.floor(half / 2) / 2;
-  const tilt = plateauSlope(values, half, means.length - 1);
-  // Ringing itself can tilt the line by less than half of this; a lesser tilt is left in.
-  const slope = Math.abs(tilt * (plateauCentre - half)) > LEAST_TILT ? tilt : 0;
+  const shadingPerPixel =
+    shadingSlope(image, edge, sideLines, reachPixels, (plateauCentre - half) / OVERSAMPLING) /
+    (brightLevel - darkLevel);
+  const slope = shadingPerPixel / OVERSAMPLING;
   return {
     distancesPixels,
     values: values.map((value, i) => value / (1 + slope * (Math.max(i, half) - plateauCentre))),
-    shadingPerPixel: slope * OVERSAMPLING,
+    shadingPerPixel,
     darkLevel,
     brightLevel,
   };
 }
 
-/** Change of the bright level from the plateau to the edge, of the jump, that counts as shading. */
+/**
+ * Changes of the bright level from the plateau to the edge, of the jump, that count as shading: ringing itself can tilt
+ * the line by half of the least, and beyond the most there is another edge.
+ */
 const LEAST_TILT = 0.01;
+const MOST_TILT = 0.2;
+/** Standard errors, from the lines' own slopes, that a slope must exceed. */
+const SURE_ERRORS = 2;
+/** Lines that the slope is taken from, against those of the profile: it needs no sharp edge. */
+const MORE_LINES = 3;
+const SLOPE_SAMPLES = 4; // per pixel
+
+/**
+ * The slope of the bright side that the lines around an edge agree on, in the image's unit per pixel; 0 where noise,
+ * ringing or another edge may have made it.
+ */
+function shadingSlope(
+  image: EdgeImage,
+  edge: Edge,
+  sideLines: number,
+  reachPixels: number,
+  toPlateauPixels: number,
+): number {
+  const { count } = alongAxis(image, edge.axis);
+  const most = Math.min(MORE_LINES * sideLines, edge.line, count - 1 - edge.line);
+  const slopes: number[] = [];
+  for (let t = -most; t <= most; t++) {
+    const bright = Float64Array.from({ length: Math.floor(reachPixels * SLOPE_SAMPLES) + 1 }, (_, i) =>
+      valueAcross(image, edge, t, i / SLOPE_SAMPLES),
+    );
+    slopes.push(SLOPE_SAMPLES * plateauSlope(bright));
+  }
+  const mean = slopes.reduce((sum, slope) => sum + slope, 0) / slopes.length;
+  const change = Math.abs(mean * toPlateauPixels) / (edge.brightLevel - edge.darkLevel);
+  if (!(change > LEAST_TILT && change < MOST_TILT) || slopes.length < 3) return 0;
+  const variance = slopes.reduce((sum, slope) => sum + (slope - mean) ** 2, 0) / (slopes.length - 1);
+  return Math.abs(mean) > SURE_ERRORS * Math.sqrt(variance / slopes.length) ? mean : 0;
+}
+
+/** The image beside the edge on line `edge.line + t`: so far from it at right angles, positive on the bright side. */
+function valueAcross(image: EdgeImage, edge: Edge, t: number, distancePixels: number): number {
+  const middle = edge.offsetPixels + edge.slope * t + edge.bend * t * t;
+  // Along a line, distances at right angles to the edge are stretched by the edge's tilt.
+  const stretch = (edge.rising ? 1 : -1) * Math.hypot(1, edge.slope + 2 * edge.bend * t);
+  return interpolated(image, edge.axis, edge.line + t, middle + stretch * distancePixels);
+}
 
 /**
  * Effective resolution and ringing of a profile: overshoot and undershoot are the first peak and the first trough behind
@@ -425,15 +463,18 @@ function plateau(values: Float64Array, from: number, to: number): number {
 /** Pixels of the bell that the ringing is smoothed away with: two periods of it, where a Hann bell passes nothing. */
 const BELL_PIXELS = 4;
 
-/** Slope per step of the bright side, from bell means that begin two pixels behind the edge: the line through them. */
-function plateauSlope(values: Float64Array, edge: number, last: number): number {
-  const half = (BELL_PIXELS / 2) * OVERSAMPLING;
-  const [from, to] = [edge + 2 * half, last - half];
+/**
+ * Slope per sample of the bright side, from bell means that begin two pixels behind the edge: the line through them.
+ * @param bright from the edge on, SLOPE_SAMPLES to a pixel
+ */
+function plateauSlope(bright: Float64Array): number {
+  const half = (BELL_PIXELS / 2) * SLOPE_SAMPLES;
+  const [from, to] = [2 * half, bright.length - 1 - half];
   const centre = (from + to) / 2;
   let product = 0;
   let square = 0;
   for (let i = from; i <= to; i++) {
-    product += (i - centre) * plateau(values, i - half, i + half);
+    product += (i - centre) * plateau(bright, i - half, i + half);
     square += (i - centre) ** 2;
   }
   return square > 0 ? product / square : 0;
